@@ -1,0 +1,2 @@
+// Package block holds block-sparse tensors with abelian charges.
+package block
