@@ -1,0 +1,132 @@
+package block
+
+import (
+	"errors"
+	"fmt"
+
+	"rundle/internal/dense"
+	"rundle/internal/task"
+)
+
+// ErrZero reports a tensor without a single element that is not zero, which has no singular vectors worth keeping.
+var ErrZero = errors.New("the tensor is zero")
+
+// SVDError reports the matrix whose singular values could not be found, and why.
+type SVDError struct {
+	Charge     Charge // of the bond
+	Rows, Cols int
+	Err        error
+}
+
+func (e *SVDError) Error() string {
+	return fmt.Sprintf("singular values of the %d×%d block of bond charge %v: %v", e.Rows, e.Cols, e.Charge, e.Err)
+}
+
+// Unwrap returns the cause.
+func (e *SVDError) Unwrap() error { return e.Err }
+
+// Spectrum holds the singular values kept across a bond.
+type Spectrum struct {
+	Axis      Axis        // the bond, flow In
+	Values    [][]float64 // per sector of Axis, decreasing
+	Discarded float64     // sum of the dropped squares over the sum of all
+	Norm      float64     // root of the sum of all squares, before dropping: the norm of the tensor
+}
+
+// SVD factors t across the bond after its first left axes, t = u diag(s) v up to what cut drops. u has the left axes and the bond (Out)
+// and total zero; v has the bond (In) and the other axes and the total of t; both are isometries on the bond. The values are not
+// normalized anew. Charges of which nothing is kept leave the bond. A zero tensor gives ErrZero, a failed block an *SVDError.
+func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, pool *task.Pool) (u *Tensor[T], s Spectrum, v *Tensor[T], err error) {
+	d := decompose(t, left, pool)
+	if err := d.failure(); err != nil {
+		return nil, Spectrum{}, nil, err
+	}
+	keep, discarded := cut.Select(d.values)
+	h := newHalves(d.plan, keep)
+	if len(h.bond.Sectors) == 0 {
+		return nil, Spectrum{}, nil, ErrZero
+	}
+	s = Spectrum{Axis: h.bond, Discarded: discarded, Norm: norm2(d.values)}
+	for i, k := range keep {
+		if k > 0 {
+			s.Values = append(s.Values, append([]float64(nil), d.values[i][:k]...))
+		}
+	}
+	u, v = New[T](h.left.Of), New[T](h.right.Of)
+	d.vectors(h, keep, u, v, pool)
+	return u, s, v, nil
+}
+
+// decomposition holds the factored matrices of a tensor, one a bond charge.
+type decomposition[T dense.Scalar] struct {
+	plan   *MatrixPlan
+	svd    []dense.SVD[T]
+	values [][]float64
+	errs   []error
+	order  []int // sectors, most work first
+	flops  float64
+}
+
+// svdCost is the work of a decomposition in units of rows*cols*min(rows, cols), an estimate for the hand-out to threads.
+const svdCost = 16
+
+func decompose[T dense.Scalar](t *Tensor[T], left int, pool *task.Pool) *decomposition[T] {
+	p := PlanMatrix(t.Structure, left)
+	n := len(p.Sectors)
+	d := &decomposition[T]{plan: p, svd: make([]dense.SVD[T], n), values: make([][]float64, n), errs: make([]error, n)}
+	work := make([]float64, n)
+	for i := range p.Sectors {
+		m := &p.Sectors[i]
+		work[i] = svdCost * float64(m.Rows) * float64(m.Cols) * float64(min(m.Rows, m.Cols))
+		d.flops += work[i]
+	}
+	d.order = task.ByWork(work)
+	ws := make([]Scratch[T], pool.Threads())
+	pool.Do(n, d.flops, func(worker, j int) {
+		i := d.order[j]
+		m := &p.Sectors[i]
+		a := ws[worker].Take(m.Rows * m.Cols)
+		Gather(p, i, a, m.Cols, t.Data)
+		if d.errs[i] = d.svd[i].Factor(m.Rows, m.Cols, a, m.Cols); d.errs[i] == nil {
+			d.values[i] = d.svd[i].Values()
+		}
+		ws[worker].Give(a)
+	})
+	return d
+}
+
+// failure returns the error of the first charge that has one.
+func (d *decomposition[T]) failure() error {
+	for i, err := range d.errs {
+		if m := &d.plan.Sectors[i]; err != nil {
+			return &SVDError{Charge: m.Charge, Rows: m.Rows, Cols: m.Cols, Err: err}
+		}
+	}
+	return nil
+}
+
+// vectors writes the first keep[i] singular vectors of each sector to u and v.
+func (d *decomposition[T]) vectors(h halves, keep []int, u, v *Tensor[T], pool *task.Pool) {
+	at := make([]int, len(keep)) // sector of the bond
+	bond := 0
+	for i, k := range keep {
+		at[i] = bond
+		if k > 0 {
+			bond++
+		}
+	}
+	ws := make([]Scratch[T], pool.Threads())
+	pool.Do(len(keep), d.flops, func(worker, j int) {
+		i := d.order[j]
+		k, m := keep[i], &d.plan.Sectors[i]
+		if k == 0 {
+			return
+		}
+		x, y := ws[worker].Take(m.Rows*k), ws[worker].Take(k*m.Cols)
+		d.svd[i].Vectors(k, x, k, y, m.Cols)
+		Scatter(h.left, at[i], u.Data, x, k)
+		Scatter(h.right, at[i], v.Data, y, m.Cols)
+		ws[worker].Give(x)
+		ws[worker].Give(y)
+	})
+}
