@@ -1,0 +1,30 @@
+// Package dense is the dense linear algebra below everything else: matrix products, QR and LQ, singular values, Hermitian eigenvalues,
+// for float64 and complex128.
+//
+// Storage. A matrix is a slice and a stride: element (i, j) of a is a[i*lda+j], row-major, lda at least the number of columns.
+// Elements between the rows are never read or written. Vectors are whole slices.
+//
+// Memory. Inputs are not modified and outputs are written in full; the two must not overlap unless a function says so. Scratch
+// memory comes from a Workspace or from the factorization object; both are ready as zero values, grow to the largest size met and
+// serve one goroutine at a time. No function keeps a slice it was given.
+//
+// Threads. Nothing here starts a goroutine: gonum's product, which would, is called in tiles below the size at which it does. Under
+// the tag netlib the library is told to use one thread. Results depend on the input and the kernels alone.
+//
+// Failure. A shape that does not fit panics with the shapes: it is the programmer's error. Input that is not finite, or an iteration
+// that does not converge, is a *NumericalError where a result could not be trusted (SVD, Eigen); products and QR hand such numbers
+// on instead. Matrices of extreme magnitude (1e160, 1e-160) are scaled by powers of two inside.
+//
+// Kernels. The plain Go loop in the comment of Gemm is the contract. The default build works over gonum (assembly on amd64 and arm64,
+// Go elsewhere and under gonum's tag noasm); the tag netlib adds a C BLAS and LAPACK through gonum's bindings and prefers them:
+//
+//	CGO_LDFLAGS="-lopenblas -llapacke" go build -tags netlib ./...
+//
+// The environment variable RUNDLE_KERNELS ("go", "netlib") overrides the choice; Kernels tells what is in use. The tag purego
+// asks for no assembly of this package's own; there is none yet.
+//
+// JacobiSVD and JacobiEigen are slow, short and another method: the oracle that tests compare with.
+//
+// Papers: Golub, Kahan, SIAM J. Numer. Anal. B 2, 205 (1965); Chan, ACM TOMS 8, 72 (1982); Demmel, Kahan, SIAM J. Sci. Stat. Comput.
+// 11, 873 (1990); Lehoucq, ACM TOMS 22, 393 (1996); Demmel, Veselic, SIAM J. Matrix Anal. Appl. 13, 1204 (1992).
+package dense

@@ -1,0 +1,61 @@
+package dense
+
+import "math"
+
+// A reflector is H = 1 - tau v v^H with v[0] = 1. For complex numbers H is unitary but not Hermitian: tau is complex so that the
+// number it leaves behind, H^H x = beta e_0, is real (LAPACK Working Note 72; Lehoucq 1996).
+
+// reflector overwrites x by v and returns beta and tau. An x that is already real beta times e_0 gives tau = 0.
+func reflector[T Scalar](x []T) (beta float64, tau T) {
+	rest := Norm(x[1:])
+	switch x := any(x).(type) {
+	case []float64:
+		alpha := x[0]
+		x[0] = 1
+		if rest == 0 {
+			return alpha, tau
+		}
+		beta = -math.Copysign(math.Hypot(alpha, rest), alpha)
+		*any(&tau).(*float64) = (beta - alpha) / beta
+		Scale(1/(alpha-beta), x[1:])
+	case []complex128:
+		alpha := x[0]
+		x[0] = 1
+		if rest == 0 && imag(alpha) == 0 {
+			return real(alpha), tau
+		}
+		beta = -math.Copysign(math.Hypot(math.Hypot(real(alpha), imag(alpha)), rest), real(alpha))
+		*any(&tau).(*complex128) = complex((beta-real(alpha))/beta, -imag(alpha)/beta)
+		Scale(1/(alpha-complex(beta, 0)), x[1:])
+	}
+	return beta, tau
+}
+
+// reflectLeft replaces the m×n matrix C by (1 - tau v v^H) C. vc is conj(v); work holds n numbers.
+func reflectLeft[T Scalar](m, n int, tau T, v, vc []T, c []T, ldc int, work []T) {
+	if tau == 0 {
+		return
+	}
+	matVec(Trans, m, n, c, ldc, vc, work[:n])
+	rankOne(m, n, -tau, v, work[:n], c, ldc)
+}
+
+// reflectRight replaces the m×n matrix C by C (1 - tau v v^H). vc is conj(v); work holds m numbers.
+func reflectRight[T Scalar](m, n int, tau T, v, vc []T, c []T, ldc int, work []T) {
+	if tau == 0 {
+		return
+	}
+	matVec(NoTrans, m, n, c, ldc, v, work[:m])
+	rankOne(m, n, -tau, work[:m], vc, c, ldc)
+}
+
+// safeScale returns a power of two that brings a matrix whose largest entry is top near 1, or 1 when squares and quotients of its
+// entries are harmless as they are (or nothing helps: zero, not finite).
+func safeScale(top float64) float64 {
+	const small, large = 1e-100, 1e100
+	if top == 0 || top > math.MaxFloat64 || top != top || (top >= small && top <= large) {
+		return 1
+	}
+	_, exp := math.Frexp(top)
+	return math.Ldexp(1, max(min(-exp, 1023), -1021))
+}
