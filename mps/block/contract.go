@@ -301,10 +301,10 @@ func RunContract[T dense.Scalar](p *ContractPlan, dst, a, b []T, ws *Scratch[T],
 	mustFit("contraction, first operand", p.A, a)
 	mustFit("contraction, second operand", p.B, b)
 	mustFit("contraction, result", p.Out, dst)
-	r := &runner[T]{}
-	if ws != nil {
-		r = &ws.run
+	if ws == nil {
+		ws = new(Scratch[T])
 	}
+	r := &ws.run
 	if p.permuteA != nil {
 		x := ws.Take(p.permuteA.Out.Size)
 		r.permute(p.permuteA, x, a, pool)
