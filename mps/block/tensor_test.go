@@ -12,7 +12,9 @@ import (
 	"rundle/internal/dense"
 )
 
-func TestDenseRoundTrip(t *testing.T) { checkBoth(t, denseRoundTrip[float64], denseRoundTrip[complex128]) }
+func TestDenseRoundTrip(t *testing.T) {
+	checkBoth(t, denseRoundTrip[float64], denseRoundTrip[complex128])
+}
 
 func denseRoundTrip[T dense.Scalar](t *rapid.T) {
 	x := drawTensor[T](t, drawStructure(t, 0, 5))
@@ -33,7 +35,9 @@ func denseRoundTrip[T dense.Scalar](t *rapid.T) {
 	}
 }
 
-func TestVectorOperations(t *testing.T) { checkBoth(t, vectorOperations[float64], vectorOperations[complex128]) }
+func TestVectorOperations(t *testing.T) {
+	checkBoth(t, vectorOperations[float64], vectorOperations[complex128])
+}
 
 func vectorOperations[T dense.Scalar](t *rapid.T) {
 	s := drawStructure(t, 0, 4)
