@@ -1,0 +1,222 @@
+package krylov
+
+import (
+	"fmt"
+	"math"
+
+	"rundle/internal/dense"
+)
+
+// Options bound the work of Lowest. The zero value means the defaults.
+type Options struct {
+	MaxVectors      int     // vectors of the Krylov space held at once; 0 means 32
+	MaxApplications int     // calls of apply in all; more than MaxVectors allows restarts from the best vector. 0 means MaxVectors
+	Tolerance       float64 // wanted norm of H x - value x, in units of H; 0 means 1e-12 of the largest value seen. Never below rounding
+}
+
+// Reason tells why Lowest stopped.
+type Reason int
+
+// The reasons. After the first two the pair is an eigenpair.
+const (
+	WithinTolerance Reason = iota // the residual is as small as wanted
+	Invariant                     // the Krylov space of the start is exhausted: the pair is the lowest in it
+	Exhausted                     // MaxApplications reached
+	ZeroStart                     // the start vector is zero, or is spanned by the vectors to stay orthogonal to; nothing was computed
+	NotFinite                     // the start or the operator gave NaN or Inf; x is not to be used
+)
+
+func (r Reason) String() string {
+	switch r {
+	case WithinTolerance:
+		return "within tolerance"
+	case Invariant:
+		return "invariant space"
+	case Exhausted:
+		return "exhausted"
+	case ZeroStart:
+		return "zero start"
+	case NotFinite:
+		return "not finite"
+	}
+	return fmt.Sprintf("Reason(%d)", int(r))
+}
+
+// Result is what Lowest reports; the vector itself replaces the start vector.
+type Result struct {
+	Value        float64 // <x|H|x>
+	Residual     float64 // norm of H x - value x, outside the span of against
+	Applications int     // calls of apply
+	Converged    bool    // Stopped is WithinTolerance or Invariant
+	Stopped      Reason
+}
+
+const (
+	defaultVectors   = 32
+	defaultTolerance = 1e-12
+	eps              = 0x1p-52
+	// breakdown times the size of H is where a new direction is rounding noise: a few tens of eps, found on operators that leave
+	// small spaces invariant (TestLowestInvariantSpace).
+	breakdown = 32 * eps
+	// floor times the size of H is the smallest residual that is waited for.
+	floor = 8 * eps
+)
+
+// Lowest finds the lowest eigenvalue of the Hermitian operator H on the orthogonal complement of the vectors in against, which must be
+// orthonormal, that is of PHP with their complement's projector P. apply writes H src to dst. The search starts from x, which need
+// not be normalized; on return x is the best vector found, of norm 1. The space searched is that of x, H x, H^2 x, ...: a
+// start without any part along the lowest eigenvector (by symmetry) does not find it.
+func Lowest[T dense.Scalar](apply func(dst, src []T), x []T, against [][]T, opt Options, w *Workspace[T]) Result {
+	for _, y := range against {
+		if len(y) != len(x) {
+			panic(fmt.Sprintf("krylov: start of length %d, vector to stay orthogonal to of length %d", len(x), len(y)))
+		}
+	}
+	if opt.MaxVectors <= 0 {
+		opt.MaxVectors = defaultVectors
+	}
+	if opt.MaxApplications <= 0 {
+		opt.MaxApplications = opt.MaxVectors
+	}
+	if w == nil {
+		w = new(Workspace[T])
+	}
+	r := run[T]{apply: apply, against: against, opt: opt, w: w}
+	if reason, ok := r.start(x); !ok {
+		return Result{Value: math.NaN(), Residual: math.NaN(), Stopped: reason}
+	}
+	for {
+		done := r.expand(x)
+		if r.result.Stopped != NotFinite {
+			r.best(x)
+		}
+		if done {
+			r.result.Converged = r.result.Stopped <= Invariant
+			return r.result
+		}
+	}
+}
+
+// run is one call of Lowest.
+type run[T dense.Scalar] struct {
+	apply   func(dst, src []T)
+	against [][]T
+	opt     Options
+	w       *Workspace[T]
+
+	size   int     // vectors in the space
+	scale  float64 // bound on the size of the projected H so far
+	result Result
+}
+
+// start projects and normalizes x in place.
+func (r *run[T]) start(x []T) (Reason, bool) {
+	before := dense.Norm(x)
+	if before == 0 {
+		return ZeroStart, false
+	}
+	if !finite(before) {
+		return NotFinite, false
+	}
+	divide(before, x)
+	if len(r.against) == 0 {
+		return 0, true
+	}
+	r.w.remove(r.against, x)
+	after := dense.Norm(x)
+	if after < 1e3*eps {
+		return ZeroStart, false
+	}
+	divide(after, x)
+	r.w.remove(r.against, x)
+	divide(dense.Norm(x), x)
+	return 0, true
+}
+
+// expand builds a Krylov space from the normalized x. It returns true when there is nothing left to do.
+func (r *run[T]) expand(x []T) bool {
+	w, n := r.w, len(x)
+	room := min(r.opt.MaxVectors, r.opt.MaxApplications-r.result.Applications)
+	rank := n - len(r.against) // no space is larger
+	w.reset(room)
+	r.size = 0
+	copy(w.vector(0, n), x)
+	for {
+		j := r.size
+		v, next := w.vector(j, n), w.vector(j+1, n)
+		r.apply(next, v)
+		r.result.Applications++
+		r.size++
+		w.remove(r.against, next)
+		alpha := dense.Real(w.orthogonalize(w.vectors[:r.size], next))
+		beta := dense.Norm(next)
+		if !finite(alpha) || !finite(beta) {
+			r.result.Value, r.result.Residual, r.result.Stopped = math.NaN(), math.NaN(), NotFinite
+			return true
+		}
+		w.alpha[j], w.beta[j] = alpha, beta
+		left := 0.0
+		if j > 0 {
+			left = w.beta[j-1]
+		}
+		r.scale = max(r.scale, math.Abs(alpha)+left+beta)
+		exhausted := beta <= breakdown*r.scale || r.size >= rank
+		full := r.size == room
+		if exhausted || full || r.size <= 32 || r.size%8 == 0 {
+			if done := r.judge(beta, exhausted); done || full {
+				return done || r.result.Applications >= r.opt.MaxApplications
+			}
+		}
+		divide(beta, next)
+	}
+}
+
+// judge solves the tridiagonal problem and decides whether its lowest pair is good enough.
+func (r *run[T]) judge(beta float64, exhausted bool) bool {
+	w, m := r.w, r.size
+	if err := dense.TridiagonalEigen(w.alpha[:m], w.beta[:m-1], w.values[:m], w.ritz[:m*m]); err != nil {
+		r.result.Value, r.result.Residual, r.result.Stopped = math.NaN(), math.NaN(), NotFinite
+		return true
+	}
+	r.result.Value = w.values[0]
+	r.result.Residual = beta * math.Abs(w.ritz[(m-1)*m])
+	tolerance := r.opt.Tolerance
+	if tolerance <= 0 {
+		tolerance = defaultTolerance * max(math.Abs(w.values[0]), math.Abs(w.values[m-1]))
+	}
+	switch {
+	case exhausted:
+		r.result.Stopped = Invariant
+	case r.result.Residual <= max(tolerance, floor*r.scale):
+		r.result.Stopped = WithinTolerance
+	default:
+		r.result.Stopped = Exhausted
+		return false
+	}
+	return true
+}
+
+// best writes the lowest vector of the space to x.
+func (r *run[T]) best(x []T) {
+	m := r.size
+	for i := range m {
+		r.w.coef[i] = dense.FromFloat[T](r.w.ritz[i*m])
+	}
+	clear(x)
+	combine(r.w.coef[:m], r.w.vectors[:m], x)
+	divide(dense.Norm(x), x)
+}
+
+func finite(x float64) bool { return !math.IsNaN(x) && !math.IsInf(x, 0) }
+
+// divide divides x by s; a division, not a product with 1/s, which overflows for subnormal s.
+func divide[T dense.Scalar](s float64, x []T) {
+	if s < 0x1p-1000 {
+		d := dense.FromFloat[T](s)
+		for i := range x {
+			x[i] /= d
+		}
+		return
+	}
+	dense.Scale(dense.FromFloat[T](1/s), x)
+}
