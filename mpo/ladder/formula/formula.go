@@ -1,7 +1,8 @@
 package formula
 
-// Functions holds the functions of a formula and how many arguments each takes. sum and prod are syntax of their own (Fold).
-var Functions = map[string]int{"exp": 1, "sin": 1, "cos": 1, "sqrt": 1, "abs": 1, "bessel": 2}
+// Functions holds the functions of a formula and how many arguments each takes. sum and prod are syntax of their own (Fold);
+// uniform and normal, random numbers, have a meaning in profiles only, which the evaluator checks.
+var Functions = map[string]int{"exp": 1, "sin": 1, "cos": 1, "sqrt": 1, "abs": 1, "bessel": 2, "uniform": 2, "normal": 2}
 
 // Reserved says whether a name is part of the syntax and can name nothing else.
 func Reserved(name string) bool {
