@@ -35,7 +35,7 @@ func tiledReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b 
 		kk := min(tileK, k-l0)
 		for j0 := 0; j0 < n; j0 += tileN {
 			nn := min(tileN, n-j0)
-			bt, ldbt := b[l0*ldb+j0:], ldb
+			bt, ldbt := b, ldb
 			switch {
 			case opB.transposes() && dots:
 				bt = b[j0*ldb+l0:]
@@ -45,6 +45,8 @@ func tiledReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b 
 			case dots:
 				bt, ldbt = p.b[:], kk
 				transposeReal(kk, nn, b[l0*ldb+j0:], ldb, bt, kk)
+			default:
+				bt = b[l0*ldb+j0:]
 			}
 			for i0 := 0; i0 < m; i0 += tileM {
 				mm := min(tileM, m-i0)
