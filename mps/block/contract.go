@@ -185,8 +185,9 @@ func (d *side) matrix(b *Block) (free, contracted int) {
 	return free, contracted
 }
 
-// pair lists the products of blocks with equal contracted sectors, by the block of Out to which they add.
-func (p *ContractPlan) pair(sa, sb side) [][]gemm {
+// pair lists the products of blocks with equal contracted sectors, in the order of the blocks of Out to which they add, and where
+// the stretch of each block of Out begins.
+func (p *ContractPlan) pair(sa, sb side) (sorted []gemm, start []int) {
 	key := func(d *side, b *Block) (c [MaxAxes]int32) {
 		for i, k := range d.contracted {
 			c[i] = int32(b.Sectors[k])
@@ -198,7 +199,9 @@ func (p *ContractPlan) pair(sa, sb side) [][]gemm {
 		k := key(&sb, &sb.s.Blocks[j])
 		partners[k] = append(partners[k], j)
 	}
-	products := make([][]gemm, len(p.Out.Blocks))
+	var products []gemm
+	var target []int
+	start = make([]int, len(p.Out.Blocks)+1)
 	var sectors [MaxAxes]int
 	for i := range sa.s.Blocks {
 		x := &sa.s.Blocks[i]
@@ -223,10 +226,21 @@ func (p *ContractPlan) pair(sa, sb side) [][]gemm {
 			if sb.op == dense.Trans {
 				g.ldb = k
 			}
-			products[to] = append(products[to], g)
+			products = append(products, g)
+			target = append(target, to)
+			start[to+1]++
 		}
 	}
-	return products
+	for to := range p.Out.Blocks {
+		start[to+1] += start[to]
+	}
+	sorted = make([]gemm, len(products))
+	next := slices.Clone(start)
+	for i, to := range target {
+		sorted[next[to]] = products[i]
+		next[to]++
+	}
+	return sorted, start
 }
 
 // A chain is split along the longer side of its result when it is worth several tasks, so that a tensor of few large blocks
@@ -238,11 +252,12 @@ const (
 )
 
 // build splits the chains and stores them, largest first.
-func (p *ContractPlan) build(products [][]gemm) {
-	var gemms []gemm
-	var chains []chain
-	var work []float64
-	for to, list := range products {
+func (p *ContractPlan) build(sorted []gemm, start []int) {
+	gemms := make([]gemm, 0, len(sorted))
+	chains := make([]chain, 0, len(start))
+	work := make([]float64, 0, len(start))
+	for to := range p.Out.Blocks {
+		list := sorted[start[to]:start[to+1]]
 		if len(list) == 0 {
 			p.empty = append(p.empty, to)
 			continue
@@ -263,7 +278,7 @@ func (p *ContractPlan) build(products [][]gemm) {
 			}
 		}
 	}
-	p.gemms = make([]gemm, 0, len(gemms))
+	p.gemms, p.chains = make([]gemm, 0, len(gemms)), make([]chain, 0, len(chains))
 	for _, i := range task.ByWork(work) {
 		c := chains[i]
 		at := len(p.gemms)

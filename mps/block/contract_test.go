@@ -136,6 +136,23 @@ func TestEmptyContributions(t *testing.T) {
 	assert.False(t, math.IsNaN(dense.Norm(dst)))
 }
 
+// TestChainsLargestFirst holds the order in which the pool hands out work.
+func TestChainsLargestFirst(t *testing.T) {
+	_, _, p := environmentStep[float64](t, 32)
+	last, total := math.Inf(1), 0.0
+	for _, c := range p.chains {
+		work := 0.0
+		for i := c.from; i < c.to; i++ {
+			assert.Equal(t, p.gemms[c.from].c, p.gemms[i].c, "one result a chain")
+			work += p.gemms[i].flops()
+		}
+		assert.LessOrEqual(t, work, last)
+		last, total = work, total+work
+	}
+	assert.Equal(t, p.Flops(), total)
+	assert.Len(t, p.chains, len(p.Out.Blocks)-len(p.empty))
+}
+
 // TestSplitChains runs a product of one large block in parts, long rows and long columns, and all transposes.
 func TestSplitChains(t *testing.T) {
 	for _, size := range [][3]int{{420, 250, 300}, {250, 420, 300}} {

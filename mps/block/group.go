@@ -45,10 +45,12 @@ func (r Rule) String() string {
 
 // Group is a product of up to four abelian charges. It is comparable; the zero value is the trivial group, whose only charge is zero.
 type Group struct {
-	names  [MaxCharges]string
+	names  string // joined by nameEnd: small values are passed by copy in inner loops
 	moduli [MaxCharges]int32
 	n      int8
 }
+
+const nameEnd = "\x00"
 
 // maxModulus keeps sums of two charges inside int32.
 const maxModulus = 1 << 30
@@ -63,7 +65,11 @@ func NewGroup(rules ...Rule) (Group, error) {
 		if r.Modulus < 0 || r.Modulus == 1 || r.Modulus > maxModulus {
 			return Group{}, fmt.Errorf("charge %q has modulus %d; expected 0 for U(1) or 2..%d for Z_q", r.Name, r.Modulus, maxModulus)
 		}
-		g.names[i], g.moduli[i] = r.Name, int32(r.Modulus)
+		if strings.Contains(r.Name, nameEnd) {
+			return Group{}, fmt.Errorf("charge name %q contains a NUL byte", r.Name)
+		}
+		g.names += r.Name + nameEnd
+		g.moduli[i] = int32(r.Modulus)
 	}
 	g.n = int8(len(rules))
 	return g, nil
@@ -77,7 +83,7 @@ func (g Group) Rule(i int) Rule {
 	if i < 0 || i >= int(g.n) {
 		panic(fmt.Sprintf("block: rule %d of a group with %d charges", i, g.n))
 	}
-	return Rule{Name: g.names[i], Modulus: int(g.moduli[i])}
+	return Rule{Name: strings.Split(g.names, nameEnd)[i], Modulus: int(g.moduli[i])}
 }
 
 // Add returns a + b.

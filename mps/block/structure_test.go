@@ -19,6 +19,8 @@ func TestNewGroup(t *testing.T) {
 	}{
 		{"none", nil, ""},
 		{"four of each kind", []Rule{{"N", 0}, {"Sz", 0}, {"P", 2}, {"Q", 3}}, ""},
+		{"unnamed", []Rule{{}, {"", 2}}, ""},
+		{"NUL in a name", []Rule{{"a\x00b", 0}}, `"a\x00b" contains a NUL`},
 		{"five", make([]Rule, 5), "5 charges given; at most 4"},
 		{"modulus one", []Rule{{"N", 0}, {"P", 1}}, `charge "P" has modulus 1`},
 		{"negative modulus", []Rule{{"P", -2}}, "modulus -2"},

@@ -144,6 +144,7 @@ func TestScratch(t *testing.T) {
 	assert.Equal(t, 42.0, y[0], "the same slab again")
 	assert.Len(t, s.Take(97), 97)
 	s.Give(make([]float64, 101)) // not a size of ours
+	assert.Len(t, s.Take(110), 110)
 	assert.Nil(t, s.Take(0))
 	var none *Scratch[float64]
 	none.Give(none.Take(5))
