@@ -3,9 +3,11 @@ package block
 import (
 	"fmt"
 	"math"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
+	"github.com/stretchr/testify/require"
 	"pgregory.net/rapid"
 
 	"rundle/internal/dense"
@@ -51,7 +53,7 @@ func permuteDense[T dense.Scalar](x array[T], order []int) array[T] {
 	return out
 }
 
-// TestPermuteLargeBlocks has blocks wider than the tiles, all orders of four axes, on one thread and three.
+// TestPermuteLargeBlocks has blocks wider than the tiles, in all orders of four axes.
 func TestPermuteLargeBlocks(t *testing.T) {
 	var axes []Axis
 	for _, d := range []int{9, 2, 19, 11} {
@@ -62,11 +64,19 @@ func TestPermuteLargeBlocks(t *testing.T) {
 	for order := range orders(4) {
 		want := permuteDense(full, order)
 		requireClose(t, want, denseOf(Permute(x, order...)), 0, fmt.Sprint(order))
-		p := PlanPermute(x.Structure, order...)
-		out := New[float64](p.Out)
-		RunPermute(p, out.Data, x.Data, task.New(3))
-		assert.Equal(t, Permute(x, order...).Data, out.Data)
 	}
+}
+
+// TestPermuteOnThreads moves enough for the pool to start its threads.
+func TestPermuteOnThreads(t *testing.T) {
+	a := NewAxis(In, Sector{Charge{0}, 60}, Sector{Charge{1}, 100})
+	x := Random[float64](NewStructure(mustGroup(t, 2), []Axis{a, a, a}, Charge{}), fixed(6))
+	require.Greater(t, copyCost*float64(x.Size), float64(task.Threshold))
+	p := PlanPermute(x.Structure, 2, 0, 1)
+	out := New[float64](p.Out)
+	RunPermute(p, out.Data, x.Data, task.New(3))
+	assert.True(t, slices.Equal(Permute(x, 2, 0, 1).Data, out.Data))
+	assert.True(t, slices.Equal(Permute(&Tensor[float64]{p.Out, out.Data}, 1, 2, 0).Data, x.Data))
 }
 
 // orders yields all permutations of 0..n-1.

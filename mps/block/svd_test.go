@@ -237,7 +237,8 @@ func TestSVDLeavesOutSectors(t *testing.T) {
 }
 
 func TestSVDOnThreads(t *testing.T) {
-	x := typicalTheta[float64](t, 200)
+	x := typicalTheta[float64](t, 320)
+	require.Greater(t, decompose(x, 2, nil).flops, float64(task.Threshold))
 	cut := Cut{Bond: 60}
 	u, s, v, err := SVD(x, 2, cut, nil)
 	require.NoError(t, err)
