@@ -13,7 +13,8 @@ type Number struct {
 	Weights [][]int // Weights[site][state]
 }
 
-func newNumber(name string, modulus int, sites []Site, weight func(i int, s Site, state int) int) Number {
+// NewNumber tabulates the weights of a conserved number.
+func NewNumber(name string, modulus int, sites []Site, weight func(i int, s Site, state int) int) Number {
 	w := make([][]int, len(sites))
 	for i, s := range sites {
 		w[i] = make([]int, s.Dim())
@@ -27,7 +28,7 @@ func newNumber(name string, modulus int, sites []Site, weight func(i int, s Site
 // Particles counts fermions, electrons and bosons on the given sites, or on
 // all of them if none is given.
 func Particles(sites []Site, on ...int) Number {
-	return newNumber("N", 0, sites, func(i int, s Site, state int) int {
+	return NewNumber("N", 0, sites, func(i int, s Site, state int) int {
 		if len(on) > 0 && !slices.Contains(on, i) {
 			return 0
 		}
@@ -40,7 +41,7 @@ func Particles(sites []Site, on ...int) Number {
 
 // UpParticles and DownParticles count one component of the electrons.
 func UpParticles(sites []Site) Number {
-	return newNumber("N_up", 0, sites, func(_ int, s Site, state int) int {
+	return NewNumber("N_up", 0, sites, func(_ int, s Site, state int) int {
 		if s.Kind != KindElectron {
 			return 0
 		}
@@ -50,7 +51,7 @@ func UpParticles(sites []Site) Number {
 
 // DownParticles counts electrons of component down.
 func DownParticles(sites []Site) Number {
-	return newNumber("N_down", 0, sites, func(_ int, s Site, state int) int {
+	return NewNumber("N_down", 0, sites, func(_ int, s Site, state int) int {
 		if s.Kind != KindElectron {
 			return 0
 		}
@@ -60,7 +61,7 @@ func DownParticles(sites []Site) Number {
 
 // TwiceSz is 2 S^z of all spins and electrons.
 func TwiceSz(sites []Site) Number {
-	return newNumber("2Sz", 0, sites, func(_ int, s Site, state int) int {
+	return NewNumber("2Sz", 0, sites, func(_ int, s Site, state int) int {
 		switch s.Kind {
 		case KindSpin:
 			return s.Param - 2*state
@@ -73,7 +74,7 @@ func TwiceSz(sites []Site) Number {
 
 // ClockCharge is the sum of the clock positions modulo q.
 func ClockCharge(sites []Site, q int) Number {
-	return newNumber("Q", q, sites, func(_ int, s Site, state int) int {
+	return NewNumber("Q", q, sites, func(_ int, s Site, state int) int {
 		if s.Kind != KindClock {
 			return 0
 		}

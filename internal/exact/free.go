@@ -115,7 +115,7 @@ func (q *Quadratic) Lowest(odd bool) (*Gaussian, error) {
 	for _, e := range energies {
 		g.Energy -= e / 2
 	}
-	g.Gap, g.Odd = energies[0], odd
+	g.Gap, g.Odd, g.paired = energies[0], odd, true
 	if n > 1 {
 		g.Gap += energies[1] // of the same parity: two more quasiparticles
 	}

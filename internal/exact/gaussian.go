@@ -12,6 +12,7 @@ type Gaussian struct {
 	Gap    float64 // to the next state of the same particle number or parity
 	Odd    bool    // parity of the particle number
 	n      int
+	paired bool
 	hop    []complex128 // <c_i^+ c_j>
 	pair   []complex128 // <c_i c_j>
 }
@@ -73,10 +74,21 @@ func (g *Gaussian) contract(x, y Op) complex128 {
 	}
 }
 
-// Occupations returns the eigenvalues of the correlation matrix of the given
-// modes (Peschel 2003): for m modes the 2m numbers zeta and 1 - zeta.
+// Occupations returns the eigenvalues zeta of the correlation matrix of the
+// given modes (Peschel 2003), one a mode; with pairing, zeta and 1 - zeta of
+// each.
 func (g *Gaussian) Occupations(modes []int) ([]float64, error) {
 	m := len(modes)
+	if !g.paired {
+		a := make([]complex128, m*m)
+		for i, x := range modes {
+			for j, y := range modes {
+				a[i*m+j] = g.hop[x*g.n+y]
+			}
+		}
+		values, _, err := eigenHermitian(m, a)
+		return values, err
+	}
 	a := make([]complex128, 4*m*m)
 	for i, x := range modes {
 		for j, y := range modes { // rows (c^+, c), columns (c, c^+)
@@ -109,9 +121,9 @@ func (g *Gaussian) sum(modes []int, f func(float64) float64) (float64, error) {
 	}
 	var s float64
 	for _, z := range values {
-		s += f(z) / 2
+		s += f(z)
 	}
-	return s, nil
+	return s * float64(len(modes)) / float64(max(1, len(values))), nil
 }
 
 // Entropies returns the entropy of every cut of the modes into those before

@@ -118,7 +118,7 @@ func lanczos[N number](apply func(dst, src []N), start []N, locked [][]N) (float
 			}
 		}
 	}
-	return 0, nil, errors.New("Lanczos did not converge")
+	return 0, nil, errors.New("no convergence of the Lanczos iteration")
 }
 
 // extend takes next into the basis and finds the new next.

@@ -173,26 +173,24 @@ func (m *Matrix) push(column map[int]complex128) {
 
 // settle checks Hermiticity and finds out whether the matrix is real.
 func (m *Matrix) settle() error {
-	real := true
+	allReal := true
 	for j := range m.dim {
 		for k := m.start[j]; k < m.start[j+1]; k++ {
 			i, v := m.row[k], m.val[k]
 			if back := cmplx.Conj(m.At(j, i)); cmplx.Abs(v-back) > 1e-12*(1+cmplx.Abs(v)) {
 				return fmt.Errorf("exact: not Hermitian: element (%d,%d) is %v, conjugate of (%d,%d) is %v", i, j, v, j, i, back)
 			}
-			real = real && math.Abs(imag(v)) <= 1e-15*cmplx.Abs(v)
+			allReal = allReal && math.Abs(imag(v)) <= 1e-15*cmplx.Abs(v)
 		}
 	}
-	if real {
+	if allReal {
 		m.real = make([]float64, len(m.val))
 		for k, v := range m.val {
-			m.real[k] = realPart(v)
+			m.real[k] = real(v)
 		}
 	}
 	return nil
 }
-
-func realPart(z complex128) float64 { return real(z) }
 
 // Dim returns the dimension.
 func (m *Matrix) Dim() int { return m.dim }
