@@ -31,14 +31,18 @@ func Eigen[T Scalar](n int, a []T, lda int, values []float64, v []T, ldv int, w 
 	scale := safeScale(top)
 	copyMatrix(n, n, scale, s, n, s, n)
 
-	e, tau, z := w.reals.take(n), w.elems.take(n), w.reals.take(n*n)
+	ldz := n + 1 // Dsteqr runs down columns: a stride that is a power of two would map them onto one cache line
+	e, tau, z := w.reals.take(n), w.elems.take(n), w.reals.take(n*ldz)
 	tridiagonalize(n, s, values, e, tau, w)
-	identity(n, z)
-	if !lapackRef.Dsteqr(lapack.EVOrig, n, values, e[:n-1], z, n, w.reals.take(max(1, 2*n-2))) {
+	clear(z)
+	for i := range n {
+		z[i*ldz+i] = 1
+	}
+	if !lapackRef.Dsteqr(lapack.EVOrig, n, values, e[:n-1], z, ldz, w.reals.take(max(1, 2*n-2))) {
 		return &NumericalError{eigenRoutine, n, n, "the iteration did not converge"}
 	}
 	for i := range n {
-		widenColumn(v[i*ldv:i*ldv+n], z[i*n:], 1)
+		widenColumn(v[i*ldv:i*ldv+n], z[i*ldz:], 1)
 	}
 	applyTridiagonalReflectors(n, s, tau, v, ldv, w)
 	if scale != 1 {

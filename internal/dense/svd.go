@@ -49,13 +49,8 @@ func (f *SVD[T]) Factor(m, n int, a []T, lda int) error {
 		return err
 	}
 	s := safeScale(top)
-	var ok bool
-	if f.direct = useNetlib(); f.direct {
-		ok = f.factorNetlib(s, a, lda)
-	} else {
-		ok = f.factorGo(s, a, lda)
-	}
-	if !ok {
+	f.direct = useNetlib() && f.factorNetlib(s, a, lda)
+	if !f.direct && !f.factorGo(s, a, lda) {
 		f.m, f.n, f.cols, f.values = 0, 0, 0, f.values[:0]
 		return &NumericalError{svdRoutine, m, n, "the iteration did not converge"}
 	}

@@ -1,0 +1,87 @@
+//go:build netlib
+
+package dense
+
+/*
+// OpenBLAS starts threads of its own unless told otherwise; other libraries do not have the function.
+void openblas_set_num_threads(int) __attribute__((weak));
+static void one_thread(void) { if (openblas_set_num_threads) openblas_set_num_threads(1); }
+*/
+import "C"
+
+import (
+	"sync"
+
+	"gonum.org/v1/gonum/blas"
+	blaslib "gonum.org/v1/netlib/blas/netlib"
+	"gonum.org/v1/netlib/lapack/lapacke"
+)
+
+const haveNetlib = true
+
+var cblas blaslib.Implementation
+
+// oneThread is called before the library is.
+var oneThread = sync.OnceFunc(func() { C.one_thread() })
+
+func (op Op) blas() blas.Transpose {
+	switch op {
+	case Trans:
+		return blas.Trans
+	case ConjTrans:
+		return blas.ConjTrans
+	}
+	return blas.NoTrans
+}
+
+func netlibReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
+	oneThread()
+	cblas.Dgemm(opA.blas(), opB.blas(), m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
+}
+
+// netlibComplex copies a factor that is only conjugated: BLAS has no such operation.
+func netlibComplex(opA, opB Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
+	oneThread()
+	if opA == ConjNoTrans {
+		a, lda = conjugated(m, k, a, lda), k
+	}
+	if opB == ConjNoTrans {
+		b, ldb = conjugated(k, n, b, ldb), n
+	}
+	cblas.Zgemm(opA.blas(), opB.blas(), m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
+}
+
+func conjugated(m, n int, a []complex128, lda int) []complex128 {
+	out := make([]complex128, m*n)
+	for i := range m {
+		Conjugate(out[i*n:(i+1)*n], a[i*lda:i*lda+n])
+	}
+	return out
+}
+
+// netlibSVD decomposes the m×n matrix a, which it destroys, by divide and conquer (gesdd): s decreasing, u m×min(m,n), vh min(m,n)×n.
+func netlibSVD[T Scalar](m, n int, a []T, s []float64, u, vh []T) bool {
+	oneThread()
+	k := min(m, n)
+	iwork := make([]int32, 8*k)
+	switch a := any(a).(type) {
+	case []float64:
+		u, vh := any(u).([]float64), any(vh).([]float64)
+		query := make([]float64, 1)
+		if !lapacke.Dgesdd('S', m, n, a, n, s, u, k, vh, n, query, -1, iwork) {
+			return false
+		}
+		work := make([]float64, int(query[0]))
+		return lapacke.Dgesdd('S', m, n, a, n, s, u, k, vh, n, work, len(work), iwork)
+	case []complex128:
+		u, vh := any(u).([]complex128), any(vh).([]complex128)
+		query := make([]complex128, 1)
+		rwork := make([]float64, k*max(5*k+7, 2*max(m, n)+2*k+1))
+		if !lapacke.Zgesdd('S', m, n, a, n, s, u, k, vh, n, query, -1, rwork, iwork) {
+			return false
+		}
+		work := make([]complex128, int(real(query[0])))
+		return lapacke.Zgesdd('S', m, n, a, n, s, u, k, vh, n, work, len(work), rwork, iwork)
+	}
+	return false
+}
