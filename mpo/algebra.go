@@ -66,7 +66,8 @@ func Add[T dense.Scalar](a, b *Operator[T]) *Operator[T] {
 	if a.Charge() != b.Charge() {
 		panic(fmt.Sprintf("mpo: sum of operators of charges %v and %v", a.Charge(), b.Charge()))
 	}
-	m, other := open(a), open(b)
+	m, entries := number(a)
+	other, more := number(b)
 	shift := make([]int32, len(m.joints))
 	for i := range m.joints {
 		j, k := &m.joints[i], &other.joints[i]
@@ -74,29 +75,30 @@ func Add[T dense.Scalar](a, b *Operator[T]) *Operator[T] {
 		j.charges = append(j.charges, k.charges[crossing:]...)
 		j.vacant, j.done = j.vacant || k.vacant, j.done || k.done
 	}
-	for i, cells := range other.cells {
-		have := m.passes(i)
-		for _, x := range cells {
-			if x.l == x.r && x.l < crossing && have[x.l] {
+	for i := range entries {
+		have := passes(entries[i])
+		for _, e := range more[i] {
+			if e.Left == e.Right && e.Left < crossing && have[e.Left] {
 				continue // the identity that both share
 			}
-			if x.l >= crossing {
-				x.l += shift[i]
+			if e.Left >= crossing {
+				e.Left += shift[i]
 			}
-			if x.r >= crossing {
-				x.r += shift[i+1]
+			if e.Right >= crossing {
+				e.Right += shift[i+1]
 			}
-			m.cells[i] = append(m.cells[i], x)
+			entries[i] = append(entries[i], e)
 		}
+		m.cells[i], m.bases[i] = units(settle(entries[i]), a.Phys[i].Dim())
 	}
 	return m.finish(Options{}.settle())
 }
 
-// passes reports which of the fixed indices go on over site i.
-func (m *automaton[T]) passes(i int) (yes [crossing]bool) {
-	for _, x := range m.cells[i] {
-		if x.l == x.r && x.l < crossing {
-			yes[x.l] = true
+// passes reports which of the fixed indices go on over a site.
+func passes[T dense.Scalar](entries []Entry[T]) (yes [crossing]bool) {
+	for _, e := range entries {
+		if e.Left == e.Right && e.Left < crossing {
+			yes[e.Left] = true
 		}
 	}
 	return yes
@@ -105,7 +107,7 @@ func (m *automaton[T]) passes(i int) (yes [crossing]bool) {
 // finish trims, compresses and writes the operator.
 func (m *automaton[T]) finish(opt Options) *Operator[T] {
 	for i := range m.cells {
-		m.cells[i] = gather(m.cells[i])
+		m.cells[i] = gather(m.cells[i], noise)
 	}
 	if !m.trim() {
 		m.clear()
@@ -134,25 +136,28 @@ func shift[T dense.Scalar](o *Operator[T], shares []T) *automaton[T] {
 	if o.Charge() != (block.Charge{}) {
 		panic(fmt.Sprintf("mpo: multiple of the identity added to an operator of charge %v", o.Charge()))
 	}
-	m := open(o)
+	m, entries := number(o)
 	first, last := len(shares), -1
 	for i, c := range shares {
 		if c != dense.FromFloat[T](0) {
 			first, last = min(first, i), max(last, i)
-			m.cells[i] = append(m.cells[i], cell[T]{vacant, done, 0, c})
 		}
 	}
 	one := dense.FromFloat[T](1)
-	for i := range m.cells {
-		have := m.passes(i)
-		if i < last && !have[vacant] {
-			m.cells[i] = append(m.cells[i], cell[T]{vacant, vacant, 0, one})
-			m.joints[i+1].vacant = true
+	for i, c := range shares {
+		have := passes(entries[i])
+		for s := range int32(o.Phys[i].Dim()) {
+			if i < last && !have[vacant] {
+				m.joints[i+1].vacant = true
+				entries[i] = append(entries[i], Entry[T]{vacant, vacant, s, s, one})
+			}
+			if i > first && !have[done] {
+				m.joints[i].done = true
+				entries[i] = append(entries[i], Entry[T]{done, done, s, s, one})
+			}
+			entries[i] = append(entries[i], Entry[T]{vacant, done, s, s, c})
 		}
-		if i > first && !have[done] {
-			m.cells[i] = append(m.cells[i], cell[T]{done, done, 0, one})
-			m.joints[i].done = true
-		}
+		m.cells[i], m.bases[i] = units(settle(entries[i]), o.Phys[i].Dim())
 	}
 	return m
 }
@@ -161,14 +166,8 @@ func shift[T dense.Scalar](o *Operator[T], shares []T) *automaton[T] {
 func Product[T dense.Scalar](a, b *Operator[T]) *Operator[T] {
 	mustMatch("product", a, b)
 	m := newAutomaton[T](a.Group, append([]block.Axis(nil), a.Phys...), a.Group.Add(a.Charge(), b.Charge()))
-	units := make(map[int]*basis[T])
 	index := map[[2]int32]int32{{0, 0}: vacant} // pairs of indices on the bond before the site
 	for i := range a.Sites {
-		d := a.Phys[i].Dim()
-		if units[d] == nil {
-			units[d] = matrixUnits[T](d)
-		}
-		m.bases[i] = units[d]
 		index = m.multiply(i, a, b, index)
 	}
 	return m.finish(Options{}.settle())
@@ -195,7 +194,6 @@ func (m *automaton[T]) multiply(i int, a, b *Operator[T], before map[[2]int32]in
 		behind[p] = n
 		return n
 	}
-	d := int32(m.phys[i].Dim())
 	byLeft := make(map[int32][]Entry[T])
 	for _, f := range b.Sites[i] {
 		byLeft[f.Left] = append(byLeft[f.Left], f)
@@ -204,15 +202,17 @@ func (m *automaton[T]) multiply(i int, a, b *Operator[T], before map[[2]int32]in
 	for _, p := range sortedPairs(before) {
 		partners[p[0]] = append(partners[p[0]], p[1])
 	}
+	var product []Entry[T]
 	for _, e := range a.Sites[i] {
 		for _, lb := range partners[e.Left] {
 			for _, f := range byLeft[lb] {
 				if f.Out == e.In {
-					m.cells[i] = appendUnit(m.cells[i], before[[2]int32{e.Left, lb}], number([2]int32{e.Right, f.Right}), e.Out, f.In, d, e.Value*f.Value)
+					product = append(product, Entry[T]{before[[2]int32{e.Left, lb}], number([2]int32{e.Right, f.Right}), e.Out, f.In, e.Value * f.Value})
 				}
 			}
 		}
 	}
+	m.cells[i], m.bases[i] = units(settle(product), m.phys[i].Dim())
 	return behind
 }
 

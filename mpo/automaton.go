@@ -84,8 +84,9 @@ func (m *automaton[T]) mirror() {
 	}
 }
 
-// gather sorts cells by left index, basis element and right index, adds up equal ones and drops what cancels.
-func gather[T dense.Scalar](cells []cell[T]) []cell[T] {
+// gather sorts cells by left index, basis element and right index, adds up equal ones and drops what cancels to the given
+// part of the summed magnitudes.
+func gather[T dense.Scalar](cells []cell[T], tolerance float64) []cell[T] {
 	slices.SortStableFunc(cells, func(a, b cell[T]) int {
 		return cmp.Or(cmp.Compare(a.l, b.l), cmp.Compare(a.k, b.k), cmp.Compare(a.r, b.r))
 	})
@@ -96,7 +97,7 @@ func gather[T dense.Scalar](cells []cell[T]) []cell[T] {
 			c.v += cells[i].v
 			size += dense.Abs(cells[i].v)
 		}
-		if dense.Abs(c.v) > noise*size {
+		if dense.Abs(c.v) > tolerance*size {
 			out = append(out, c)
 		}
 	}
@@ -192,9 +193,7 @@ func (m *automaton[T]) operator() *Operator[T] {
 	for i, cells := range m.cells {
 		var entries []Entry[T]
 		for _, c := range cells {
-			for _, e := range m.bases[i].elements[c.k] {
-				entries = append(entries, Entry[T]{Left: names[i][c.l], Right: names[i+1][c.r], Out: e.out, In: e.in, Value: c.v * e.v})
-			}
+			entries = m.bases[i].write(entries, names[i][c.l], names[i+1][c.r], c)
 		}
 		o.Sites[i] = settle(entries)
 	}
@@ -230,6 +229,15 @@ func (j *joint) sorted() (Bond, []int32) {
 
 // open writes an operator as an automaton over matrix units, to be worked on. It copies.
 func open[T dense.Scalar](o *Operator[T]) *automaton[T] {
+	m, entries := number(o)
+	for i := range entries {
+		m.cells[i], m.bases[i] = units(entries[i], o.Phys[i].Dim())
+	}
+	return m
+}
+
+// number returns an automaton with the bonds of an operator and no cells, and the operator's entries in its numbers.
+func number[T dense.Scalar](o *Operator[T]) (*automaton[T], [][]Entry[T]) {
 	m := newAutomaton[T](o.Group, slices.Clone(o.Phys), o.Charge())
 	names := make([][]int32, len(o.Bonds))
 	for b, bond := range o.Bonds {
@@ -248,17 +256,13 @@ func open[T dense.Scalar](o *Operator[T]) *automaton[T] {
 			}
 		}
 	}
-	units := make(map[int]*basis[T])
+	numbered := make([][]Entry[T], o.Len())
 	for i, entries := range o.Sites {
-		d := o.Phys[i].Dim()
-		if units[d] == nil {
-			units[d] = matrixUnits[T](d)
+		numbered[i] = slices.Clone(entries)
+		for j := range entries {
+			e := &numbered[i][j]
+			e.Left, e.Right = names[i][e.Left], names[i+1][e.Right]
 		}
-		m.bases[i] = units[d]
-		for _, e := range entries {
-			m.cells[i] = appendUnit(m.cells[i], names[i][e.Left], names[i+1][e.Right], e.Out, e.In, int32(d), e.Value)
-		}
-		m.cells[i] = gather(m.cells[i])
 	}
-	return m
+	return m, numbered
 }

@@ -7,9 +7,11 @@ import (
 	"rundle/mpo/ladder"
 )
 
-// basis is a set of linearly independent local operators, the identity first. Its elements are sparse matrices.
+// basis is a set of linearly independent local operators, number 0 the identity: a list of sparse matrices, or without a list
+// the matrix units on d states, of which that of the reference state is replaced by the identity.
 type basis[T dense.Scalar] struct {
 	elements [][]element[T]
+	d, ref   int32
 }
 
 type element[T dense.Scalar] struct {
@@ -23,30 +25,52 @@ type part[T dense.Scalar] struct {
 	v T
 }
 
-// matrixUnits returns the basis of all operators on d states: the identity and the matrix units |out><in| without the last.
-// Unit (out, in) is element 1 + out*d + in.
-func matrixUnits[T dense.Scalar](d int) *basis[T] {
-	one := dense.FromFloat[T](1)
-	b := &basis[T]{elements: make([][]element[T], d*d)}
-	for s := range d {
-		b.elements[0] = append(b.elements[0], element[T]{int32(s), int32(s), one})
+// write appends the matrix elements of a cell.
+func (b *basis[T]) write(to []Entry[T], left, right int32, c cell[T]) []Entry[T] {
+	switch {
+	case b.elements != nil:
+		for _, e := range b.elements[c.k] {
+			to = append(to, Entry[T]{left, right, e.out, e.in, c.v * e.v})
+		}
+	case c.k == 0:
+		for s := range b.d {
+			to = append(to, Entry[T]{left, right, s, s, c.v})
+		}
+	default:
+		to = append(to, Entry[T]{left, right, (c.k - 1) / b.d, (c.k - 1) % b.d, c.v})
 	}
-	for k := 1; k < d*d; k++ {
-		b.elements[k] = []element[T]{{int32((k - 1) / d), int32((k - 1) % d), one}}
-	}
-	return b
+	return to
 }
 
-// appendUnit appends v |out><in| in the basis of matrix units: the last one is the identity less all other diagonal units.
-func appendUnit[T dense.Scalar](cells []cell[T], l, r, out, in, d int32, v T) []cell[T] {
-	if out != d-1 || in != d-1 {
-		return append(cells, cell[T]{l, r, 1 + out*d + in, v})
+// units writes entries between numbered indices as cells over matrix units. Diagonal elements are written as differences to
+// those of the reference state: it is the state whose own are smallest, lest they lose digits.
+func units[T dense.Scalar](entries []Entry[T], d int) ([]cell[T], *basis[T]) {
+	size := make([]float64, d)
+	for _, e := range entries {
+		if e.Out == e.In {
+			size[e.Out] = max(size[e.Out], dense.Abs(e.Value))
+		}
 	}
-	cells = append(cells, cell[T]{l, r, 0, v})
-	for s := range d - 1 {
-		cells = append(cells, cell[T]{l, r, 1 + s*d + s, -v})
+	b := &basis[T]{d: int32(d)}
+	for s, x := range size {
+		if x < size[b.ref] {
+			b.ref = int32(s)
+		}
 	}
-	return cells
+	cells := make([]cell[T], 0, len(entries))
+	for _, e := range entries {
+		if e.Out != b.ref || e.In != b.ref {
+			cells = append(cells, cell[T]{e.Left, e.Right, 1 + e.Out*b.d + e.In, e.Value})
+			continue
+		}
+		cells = append(cells, cell[T]{e.Left, e.Right, 0, e.Value})
+		for s := range b.d {
+			if s != b.ref {
+				cells = append(cells, cell[T]{e.Left, e.Right, 1 + s*b.d + s, -e.Value})
+			}
+		}
+	}
+	return gather(cells, noise), b
 }
 
 // dependent is the part of an operator's norm below which what lies outside the span of others counts as rounding.

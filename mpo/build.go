@@ -15,7 +15,7 @@ type Options struct {
 	// those it hangs together with. 0: 1e-13.
 	Tolerance float64
 	// Work bounds the operations of a single rank decision. Strings that hang together in a larger set are kept as the
-	// vertex cover has them, at most as many as the operator rank if their couplings are not tuned. 0: 4e9.
+	// vertex cover has them, at most as many as the operator rank if their couplings are not tuned. 0: 2e11, some 4000 strings.
 	Work float64
 	// Raw leaves out the compression: the bonds are those of the vertex covers.
 	Raw bool
@@ -26,7 +26,7 @@ func (o Options) settle() Options {
 		o.Tolerance = 1e-13
 	}
 	if o.Work == 0 {
-		o.Work = 4e9
+		o.Work = 2e11
 	}
 	return o
 }

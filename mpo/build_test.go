@@ -152,12 +152,6 @@ func svdRank(a []complex128, m, n int, floor float64) int {
 	return count / 2
 }
 
-type buildCase struct {
-	name   string
-	sum    *sum
-	sample func(*rand.Rand) func() complex128
-}
-
 // families are the mixes of sites on which random sums are drawn.
 func families() map[string]func() (block.Group, []kindTable) {
 	repeat := func(k kindTable, n int) []kindTable {
@@ -209,11 +203,17 @@ func checkBuild[T dense.Scalar](t *testing.T, s *sum) *Operator[T] {
 	t.Helper()
 	o, err := Build[T](s.Strings, Options{})
 	require.NoError(t, err)
+	requireOperator(t, s.dense(), o)
+	return o
+}
+
+// requireOperator compares an operator with its matrix: the elements, and the bonds with the operator rank.
+func requireOperator[T dense.Scalar](t *testing.T, h []complex128, o *Operator[T]) {
+	t.Helper()
 	requireValid(t, o)
-	h := s.dense()
 	requireClose(t, h, toComplex(o.Dense()), 1e-13)
 	if biggest(h) == 0 {
-		return o
+		return
 	}
 	for b := 1; b < o.Len(); b++ {
 		bond := o.Bonds[b]
@@ -226,5 +226,4 @@ func checkBuild[T dense.Scalar](t *testing.T, s *sum) *Operator[T] {
 		}
 		require.Equal(t, want, bond.Dim(), "bond %d of %v", b, o.BondDims())
 	}
-	return o
 }

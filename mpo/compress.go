@@ -123,7 +123,7 @@ func (r *reducer[T]) run() []int {
 		}
 	}
 	r.follow()
-	r.cells[r.site] = gather(r.out)
+	r.cells[r.site] = gather(r.out, noise)
 	r.joints[r.site+1].charges = r.charges
 	return r.reach
 }
@@ -132,7 +132,7 @@ func (r *reducer[T]) identityRow(c cell[T]) bool { return r.takes && c.l == vaca
 
 // split files the site's cells by column.
 func (r *reducer[T]) split() {
-	r.cells[r.site] = gather(r.cells[r.site])
+	r.cells[r.site] = gather(r.cells[r.site], noise)
 	n := len(r.joints[r.site+1].charges)
 	r.columns, r.like, r.ones, r.kept = make([][]cell[T], n), make([]multiple[T], n), make([]T, n), make([]T, n)
 	for _, c := range r.cells[r.site] {
@@ -331,9 +331,9 @@ func (r *reducer[T]) follow() {
 		for _, im := range r.images[c] {
 			next = append(next, cell[T]{im.index, x.r, x.k, ratio * im.v * x.v})
 		}
-		if rest := r.ones[x.l] - ratio*r.kept[c]; rest != dense.FromFloat[T](0) {
+		if rest := r.ones[x.l] - ratio*r.kept[c]; dense.Abs(rest) > r.opt.Tolerance*dense.Abs(r.ones[x.l]) {
 			next = append(next, cell[T]{vacant, x.r, x.k, rest * x.v})
 		}
 	}
-	r.cells[r.site+1] = gather(next)
+	r.cells[r.site+1] = gather(next, r.opt.Tolerance) // what cancels here has gone through rounded eliminations
 }
