@@ -41,7 +41,8 @@ func JacobiSVD[T Scalar](m, n int, a []T, lda int, s []float64, u []T, ldu int, 
 		}
 		Scale(FromFloat[T](scale), x[j*length:(j+1)*length])
 	}
-	if !orthogonalize(k, length, x, y) {
+	floor := noise * Norm(x)
+	if !orthogonalize(k, length, floor, x, y) {
 		return &NumericalError{svdRoutine, m, n, "the rotations did not converge"}
 	}
 	norms := make([]float64, k)
@@ -50,7 +51,7 @@ func JacobiSVD[T Scalar](m, n int, a []T, lda int, s []float64, u []T, ldu int, 
 		norms[j], order[j] = Norm(x[j*length:(j+1)*length]), j
 	}
 	slices.SortStableFunc(order, func(i, j int) int { return -compare(norms[i], norms[j]) })
-	left := completeBasis(k, length, x, norms, order)
+	left := completeBasis(k, length, floor, x, norms, order)
 	for to, j := range order {
 		s[to] = norms[j] / scale
 		for i := range length {
@@ -81,8 +82,11 @@ func compare(x, y float64) int {
 	return 0
 }
 
+// noise times the norm of a matrix is where columns count as zero: in a rank-deficient one they only shrink from sweep to sweep.
+const noise = 0x1p-70
+
 // orthogonalize rotates pairs of the k rows of x (columns of the matrix) until all are orthogonal, and y along with them.
-func orthogonalize[T Scalar](k, length int, x, y []T) bool {
+func orthogonalize[T Scalar](k, length int, floor float64, x, y []T) bool {
 	for range jacobiSweeps {
 		quiet := true
 		for p := range k {
@@ -90,7 +94,7 @@ func orthogonalize[T Scalar](k, length int, x, y []T) bool {
 				xp, xq := x[p*length:(p+1)*length], x[q*length:(q+1)*length]
 				np, nq := Norm(xp), Norm(xq)
 				z := Dot(xp, xq)
-				if g := Abs(z); g > 0x1p-53*math.Sqrt(float64(length))*np*nq && g > 0 {
+				if min(np, nq) > floor && Abs(z) > 0x1p-53*math.Sqrt(float64(length))*np*nq {
 					quiet = false
 					c, sn := rotation(np*np, nq*nq, z)
 					rotate(c, sn, xp, xq)
@@ -126,14 +130,14 @@ func rotate[T Scalar](c float64, s T, x, y []T) {
 	}
 }
 
-// completeBasis returns the rows of x in the given order, normalized; rows that are zero are replaced by unit vectors made
-// orthogonal to those before them.
-func completeBasis[T Scalar](k, length int, x []T, norms []float64, order []int) []T {
+// completeBasis returns the rows of x in the given order, normalized; rows that count as zero are replaced by unit vectors
+// made orthogonal to those before them.
+func completeBasis[T Scalar](k, length int, floor float64, x []T, norms []float64, order []int) []T {
 	out := make([]T, k*length)
 	next := 0
 	for to, j := range order {
 		row := out[to*length : (to+1)*length]
-		if norms[j] > 0 {
+		if norms[j] > floor {
 			for i := range row {
 				row[i] = x[j*length+i] / FromFloat[T](norms[j])
 			}
