@@ -94,7 +94,7 @@ func orthogonalize[T Scalar](k, length int, floor float64, x, y []T) bool {
 				xp, xq := x[p*length:(p+1)*length], x[q*length:(q+1)*length]
 				np, nq := Norm(xp), Norm(xq)
 				z := Dot(xp, xq)
-				if min(np, nq) > floor && Abs(z) > 0x1p-53*math.Sqrt(float64(length))*np*nq {
+				if min(np, nq) > floor && Abs(z) > 0x1p-52*math.Sqrt(float64(length))*np*nq {
 					quiet = false
 					c, sn := rotation(np*np, nq*nq, z)
 					rotate(c, sn, xp, xq)
