@@ -42,13 +42,16 @@ type rules interface {
 	exponential(x []Weighted) ([]Weighted, error)
 }
 
-// local is the operator algebra of one kind of site with its caches, safe for concurrent use.
+// local is the operator algebra of one kind of site with its caches, safe for concurrent use. It adds to the basis of the rules the
+// compounds: interned sums of basis elements that change the labels alike.
 type local struct {
 	rules
-	mu       sync.RWMutex
-	products map[[2]OpID][]Weighted
-	adjoints map[OpID][]Weighted
-	matrices map[OpID][]complex128
+	mu        sync.RWMutex
+	products  map[[2]OpID][]Weighted
+	adjoints  map[OpID][]Weighted
+	matrices  map[OpID][]complex128
+	compounds [][]Weighted
+	bySize    map[compoundKey][]OpID
 }
 
 func newLocal(r rules) *local {
@@ -57,6 +60,7 @@ func newLocal(r rules) *local {
 		products: make(map[[2]OpID][]Weighted),
 		adjoints: make(map[OpID][]Weighted),
 		matrices: make(map[OpID][]complex128),
+		bySize:   make(map[compoundKey][]OpID),
 	}
 }
 
@@ -71,15 +75,15 @@ func (l *local) multiply(a, b OpID) ([]Weighted, error) {
 	}
 	l.mu.Lock()
 	defer l.mu.Unlock()
-	raw, err := l.mul(a, b)
+	w, err := l.product(a, b)
 	if err != nil {
 		return nil, err
 	}
-	w = mergeWeighted(raw)
 	l.products[key] = w
 	return w, nil
 }
 
+// conjugate returns the adjoint of a; the result is shared.
 func (l *local) conjugate(a OpID) ([]Weighted, error) {
 	l.mu.RLock()
 	w, ok := l.adjoints[a]
@@ -89,11 +93,10 @@ func (l *local) conjugate(a OpID) ([]Weighted, error) {
 	}
 	l.mu.Lock()
 	defer l.mu.Unlock()
-	raw, err := l.adjoint(a)
+	w, err := l.adjointOf(a)
 	if err != nil {
 		return nil, err
 	}
-	w = mergeWeighted(raw)
 	l.adjoints[a] = w
 	return w, nil
 }
@@ -107,7 +110,7 @@ func (l *local) cachedMatrix(a OpID) []complex128 {
 	}
 	l.mu.Lock()
 	defer l.mu.Unlock()
-	m = l.matrix(a)
+	m = l.matrixOf(a)
 	l.matrices[a] = m
 	return m
 }
@@ -115,7 +118,7 @@ func (l *local) cachedMatrix(a OpID) []complex128 {
 func (l *local) write(a OpID, at string) string {
 	l.mu.RLock()
 	defer l.mu.RUnlock()
-	return l.format(a, at)
+	return l.writeOp(a, at)
 }
 
 // exponentiate guards exponential, which may intern new elements.

@@ -10,11 +10,11 @@ import (
 )
 
 // A boson element is (b^+)^p f(n) b^q with f(n) = exp(polynomial of n): the bits of p, of q and of the number of f, from
-// the lowest. f number 0 is 1, so elements without an exponential mean the same on every ladder.
+// the lowest; the highest bit marks compounds. f number 0 is 1, so elements without an exponential mean the same on every ladder.
 const (
 	powerBits    = 7
 	MaxPower     = 1<<powerBits - 1 // largest power of b or b^+ in a product
-	functionBits = 32 - 2*powerBits
+	functionBits = 31 - 2*powerBits
 	maxFunctions = 1 << functionBits
 )
 

@@ -185,13 +185,13 @@ func (s Site) StateLabels(state int) []int {
 }
 
 // Raise returns by how much op changes each label, in the units of StateLabels (clock: 0..q-1).
-func (s Site) Raise(op OpID) []int { return s.ops.raise(op) }
+func (s Site) Raise(op OpID) []int { return s.ops.raise(s.ops.leader(op)) }
 
 // Odd reports whether op anticommutes with the odd operators of other sites.
-func (s Site) Odd(op OpID) bool { return s.ops.odd(op) }
+func (s Site) Odd(op OpID) bool { return s.ops.odd(s.ops.leader(op)) }
 
 // Diagonal reports whether op is diagonal in the site's states.
-func (s Site) Diagonal(op OpID) bool { return s.ops.diagonal(op) }
+func (s Site) Diagonal(op OpID) bool { return s.ops.diagonal(s.ops.leader(op)) }
 
 // Mul returns a·b in the basis, like elements merged, sorted by element. The slice is shared: do not change it. Boson products beyond the
 // largest power panic.
