@@ -18,7 +18,7 @@ import (
 // entry is a coefficient n of variable at.
 type entry struct {
 	at int32
-	n  whole
+	n  exact
 }
 
 // phase is an angle modulo pi, in (-pi/2, pi/2], with a bound of its rounding error.
@@ -34,7 +34,7 @@ func phaseOf(angle float64) phase {
 }
 
 // plus returns p + k q.
-func (p phase) plus(k whole, q phase) phase {
+func (p phase) plus(k exact, q phase) phase {
 	if q == (phase{}) || k.isZero() {
 		return p
 	}
@@ -46,7 +46,7 @@ func (p phase) plus(k whole, q phase) phase {
 }
 
 // over returns p / k, one of the k solutions of k x = p.
-func (p phase) over(k whole) phase {
+func (p phase) over(k exact) phase {
 	f := k.float()
 	return phase{angle: p.angle / f, err: p.err / math.Abs(f)}
 }
@@ -67,7 +67,7 @@ type relation struct {
 // with y_g free (modulus 0) or, for angles, a multiple of pi/modulus. For integers the image is the class of the unit vector of v in
 // the quotient Z^n / <relations>, a direct sum of Z_modulus (Z where the modulus is 0).
 type solution struct {
-	moduli []whole
+	moduli []exact
 	image  [][]entry
 	shift  []phase
 	bad    []int // relations that contradict earlier ones; -1 for a contradiction found among several
@@ -77,8 +77,13 @@ type solution struct {
 type elimination struct {
 	known []*relation // known[v]: x_v = sum terms + rhs; nil: v is free
 	uses  []int64     // how many definitions lean on v, roughly
-	acc   []whole     // scratch, zero between calls
+	limit int32       // variables from here on are tags, never defined
+	acc   []exact     // scratch, zero between calls
 	hit   []int32
+}
+
+func newElimination(n, limit int) *elimination {
+	return &elimination{known: make([]*relation, n), uses: make([]int64, n), limit: int32(limit), acc: make([]exact, n)}
 }
 
 // deferred is a relation without a unit coefficient.
@@ -89,7 +94,7 @@ type deferred struct {
 
 // solveRelations eliminates relations between n variables. Short relations first give the sparsest result.
 func solveRelations(n int, relations []relation) *solution {
-	e := &elimination{known: make([]*relation, n), uses: make([]int64, n), acc: make([]whole, n)}
+	e := newElimination(n, n)
 	s := &solution{}
 	order := make([]int, len(relations))
 	for i := range order {
@@ -125,7 +130,7 @@ func (e *elimination) take(d deferred, rest []deferred, s *solution) []deferred 
 	}
 	pivot := -1
 	for i, t := range d.terms {
-		if t.n.isUnit() && (pivot < 0 || e.uses[t.at] <= e.uses[d.terms[pivot].at]) {
+		if t.at < e.limit && t.n.isUnit() && (pivot < 0 || e.uses[t.at] <= e.uses[d.terms[pivot].at]) {
 			pivot = i
 		}
 	}
@@ -194,13 +199,13 @@ func (e *elimination) resolve(v int32) {
 	e.known[v] = &relation{terms: e.drain(), rhs: rhs}
 }
 
-func (e *elimination) add(terms []entry, k whole) {
+func (e *elimination) add(terms []entry, k exact) {
 	for _, t := range terms {
 		e.addOne(t.at, t.n.times(k))
 	}
 }
 
-func (e *elimination) addOne(v int32, n whole) {
+func (e *elimination) addOne(v int32, n exact) {
 	if e.acc[v].isZero() {
 		e.hit = append(e.hit, v)
 	}
@@ -218,7 +223,7 @@ func (e *elimination) drain() []entry {
 		if !e.acc[v].isZero() {
 			out = append(out, entry{v, e.acc[v]})
 		}
-		e.acc[v] = whole{}
+		e.acc[v] = exact{}
 	}
 	e.hit = e.hit[:0]
 	return out
@@ -237,11 +242,11 @@ func (e *elimination) finish(rest []deferred, s *solution) {
 	}
 	for v := range n {
 		if e.known[v] == nil && !done[v] {
-			s.image[v] = []entry{{int32(len(s.moduli)), wholeOf(1)}}
-			s.moduli = append(s.moduli, whole{})
+			s.image[v] = []entry{{int32(len(s.moduli)), exactOf(1)}}
+			s.moduli = append(s.moduli, exact{})
 		}
 	}
-	out := elimination{acc: make([]whole, len(s.moduli))}
+	out := elimination{acc: make([]exact, len(s.moduli))}
 	for v := range n {
 		if e.known[v] == nil {
 			continue
@@ -260,7 +265,7 @@ func (e *elimination) finish(rest []deferred, s *solution) {
 }
 
 // reduced brings the entries below the moduli and drops those that vanish.
-func reduced(terms []entry, moduli []whole) []entry {
+func reduced(terms []entry, moduli []exact) []entry {
 	out := terms[:0:0]
 	for _, t := range terms {
 		if r := t.n.residue(moduli[t.at]); !r.isZero() {
@@ -276,7 +281,7 @@ func merge(rest []deferred, s *solution) []deferred {
 	var out []deferred
 	for _, d := range rest {
 		if d.terms[0].n.sign() < 0 {
-			flipped := relation{rhs: phase{}.plus(wholeOf(-1), d.rhs)}
+			flipped := relation{rhs: phase{}.plus(exactOf(-1), d.rhs)}
 			for _, t := range d.terms {
 				flipped.terms = append(flipped.terms, entry{t.at, t.n.neg()})
 			}
@@ -289,7 +294,7 @@ func merge(rest []deferred, s *solution) []deferred {
 			out = append(out, d)
 			continue
 		}
-		if !d.rhs.plus(wholeOf(-1), out[i].rhs).vanishes() {
+		if !d.rhs.plus(exactOf(-1), out[i].rhs).vanishes() {
 			s.bad = append(s.bad, d.source)
 		}
 	}
@@ -350,13 +355,13 @@ func (c component) solve(s *solution) {
 	for i, v := range c.vars {
 		place[v] = i
 	}
-	m := smithMatrix{cols: len(c.vars), right: make([][]whole, len(c.vars))}
+	m := smithMatrix{cols: len(c.vars), right: make([][]exact, len(c.vars))}
 	for i := range m.right {
-		m.right[i] = make([]whole, m.cols)
-		m.right[i][i] = wholeOf(1)
+		m.right[i] = make([]exact, m.cols)
+		m.right[i][i] = exactOf(1)
 	}
 	for _, d := range c.rows {
-		row := make([]whole, m.cols)
+		row := make([]exact, m.cols)
 		for _, t := range d.terms {
 			row[place[t.at]] = t.n
 		}
@@ -370,7 +375,7 @@ func (c component) solve(s *solution) {
 	}
 	for i := range m.cols {
 		y := phase{}
-		modulus := whole{}
+		modulus := exact{}
 		if i < len(diagonal) {
 			modulus, y = diagonal[i], m.rhs[i].over(diagonal[i])
 		}
@@ -395,14 +400,14 @@ func (c component) solve(s *solution) {
 // smithMatrix is a dense integer matrix on its way to diagonal form U M V; right accumulates V, and U acts on the right-hand sides.
 type smithMatrix struct {
 	cols  int
-	rows  [][]whole
+	rows  [][]exact
 	rhs   []phase
-	right [][]whole
+	right [][]exact
 }
 
 // diagonalize returns the nonzero diagonal of U M V, positive; V is left in right. The entries need not divide one another.
-func (m *smithMatrix) diagonalize() []whole {
-	var diagonal []whole
+func (m *smithMatrix) diagonalize() []exact {
+	var diagonal []exact
 	for t := 0; t < len(m.rows) && t < m.cols; t++ {
 		if !m.bringPivot(t) {
 			break
@@ -412,7 +417,7 @@ func (m *smithMatrix) diagonalize() []whole {
 		}
 		if m.rows[t][t].sign() < 0 {
 			m.rows[t][t] = m.rows[t][t].neg()
-			m.rhs[t] = phase{}.plus(wholeOf(-1), m.rhs[t])
+			m.rhs[t] = phase{}.plus(exactOf(-1), m.rhs[t])
 		}
 		diagonal = append(diagonal, m.rows[t][t])
 	}

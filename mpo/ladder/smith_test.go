@@ -25,7 +25,7 @@ func sparse(m [][]int64, rhs func(i int) phase) []relation {
 		out[i].rhs = rhs(i)
 		for v, x := range row {
 			if x != 0 {
-				out[i].terms = append(out[i].terms, entry{int32(v), wholeOf(x)})
+				out[i].terms = append(out[i].terms, entry{int32(v), exactOf(x)})
 			}
 		}
 	}
@@ -159,7 +159,7 @@ func TestSolutionWithLargeIntegers(t *testing.T) {
 	const n = 100
 	var r []relation
 	for v := range n - 1 {
-		r = append(r, relation{terms: []entry{{int32(v), wholeOf(3)}, {int32(v + 1), wholeOf(-1)}}})
+		r = append(r, relation{terms: []entry{{int32(v), exactOf(3)}, {int32(v + 1), exactOf(-1)}}})
 	}
 	s := solveRelations(n, r)
 	require.Len(t, s.moduli, 1)
@@ -173,7 +173,7 @@ func TestSolutionOfManyFreeVariables(t *testing.T) {
 	require.Len(t, s.moduli, n)
 	var clock []relation
 	for v := range n {
-		clock = append(clock, relation{terms: []entry{{int32(v), wholeOf(3)}}})
+		clock = append(clock, relation{terms: []entry{{int32(v), exactOf(3)}}})
 	}
 	s = solveRelations(n, clock)
 	require.Len(t, s.moduli, n)
@@ -185,7 +185,7 @@ func TestWholeAgreesWithBigIntegers(t *testing.T) {
 		rapid.SampledFrom([]int64{math.MaxInt64, math.MinInt64 + 1, 1 << 32, -1 << 31}))
 	rapid.Check(t, func(t *rapid.T) {
 		x, y := number.Draw(t, "x"), number.Draw(t, "y")
-		a, b := wholeOf(x), wholeOf(y)
+		a, b := exactOf(x), exactOf(y)
 		bx, by := big.NewInt(x), big.NewInt(y)
 		require.Equal(t, new(big.Int).Add(bx, by).String(), a.plus(b).String())
 		require.Equal(t, new(big.Int).Mul(bx, by).String(), a.times(b).String())
@@ -194,7 +194,7 @@ func TestWholeAgreesWithBigIntegers(t *testing.T) {
 		if y != 0 {
 			rest := a.plus(a.nearest(b).times(b).neg())
 			require.LessOrEqual(t, rest.plus(rest).cmpAbs(b), 0)
-			m := wholeFrom(new(big.Int).Abs(by))
+			m := exactFrom(new(big.Int).Abs(by))
 			require.Equal(t, new(big.Int).Mod(bx, m.big()).String(), a.residue(m).String())
 		}
 		square := a.times(a).times(a)

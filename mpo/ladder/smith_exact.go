@@ -6,34 +6,34 @@ import (
 	"math/bits"
 )
 
-// whole is an integer of any size: an int64 as long as it fits, a big.Int beyond. The zero value is zero. Values are immutable.
-type whole struct {
+// exact is an integer of any size: an int64 as long as it fits, a big.Int beyond. The zero value is zero. Values are immutable.
+type exact struct {
 	small int64
 	large *big.Int // nil while the value fits into small
 }
 
-func wholeOf(n int64) whole { return whole{small: n} }
+func exactOf(n int64) exact { return exact{small: n} }
 
-func wholeFrom(b *big.Int) whole {
+func exactFrom(b *big.Int) exact {
 	if b.IsInt64() && b.Int64() != math.MinInt64 {
-		return whole{small: b.Int64()}
+		return exact{small: b.Int64()}
 	}
-	return whole{large: b}
+	return exact{large: b}
 }
 
-func (a whole) big() *big.Int {
+func (a exact) big() *big.Int {
 	if a.large != nil {
 		return a.large
 	}
 	return big.NewInt(a.small)
 }
 
-func (a whole) isZero() bool { return a.large == nil && a.small == 0 }
+func (a exact) isZero() bool { return a.large == nil && a.small == 0 }
 
 // isUnit reports whether the value is +1 or -1.
-func (a whole) isUnit() bool { return a.large == nil && (a.small == 1 || a.small == -1) }
+func (a exact) isUnit() bool { return a.large == nil && (a.small == 1 || a.small == -1) }
 
-func (a whole) sign() int {
+func (a exact) sign() int {
 	if a.large != nil {
 		return a.large.Sign()
 	}
@@ -46,39 +46,39 @@ func (a whole) sign() int {
 	return 0
 }
 
-func (a whole) neg() whole {
+func (a exact) neg() exact {
 	if a.large != nil {
-		return wholeFrom(new(big.Int).Neg(a.large))
+		return exactFrom(new(big.Int).Neg(a.large))
 	}
-	return whole{small: -a.small} // small is never MinInt64
+	return exact{small: -a.small} // small is never MinInt64
 }
 
-func (a whole) plus(b whole) whole {
+func (a exact) plus(b exact) exact {
 	if a.large == nil && b.large == nil {
 		s := a.small + b.small
 		overflow := (a.small >= 0) == (b.small >= 0) && (s >= 0) != (a.small >= 0)
 		if !overflow && s != math.MinInt64 {
-			return whole{small: s}
+			return exact{small: s}
 		}
 	}
-	return wholeFrom(new(big.Int).Add(a.big(), b.big()))
+	return exactFrom(new(big.Int).Add(a.big(), b.big()))
 }
 
-func (a whole) times(b whole) whole {
+func (a exact) times(b exact) exact {
 	if a.large == nil && b.large == nil {
 		hi, lo := bits.Mul64(magnitude(a.small), magnitude(b.small))
 		if hi == 0 && lo <= math.MaxInt64 {
 			if (a.small < 0) != (b.small < 0) {
-				return whole{small: -int64(lo)}
+				return exact{small: -int64(lo)}
 			}
-			return whole{small: int64(lo)}
+			return exact{small: int64(lo)}
 		}
 	}
-	return wholeFrom(new(big.Int).Mul(a.big(), b.big()))
+	return exactFrom(new(big.Int).Mul(a.big(), b.big()))
 }
 
 // nearest returns the quotient of a/b (b != 0) rounded to the nearest integer, so that |a - q b| <= |b|/2.
-func (a whole) nearest(b whole) whole {
+func (a exact) nearest(b exact) exact {
 	x, y := a.big(), b.big()
 	double := new(big.Int).Lsh(x, 1)
 	shift := new(big.Int).Abs(y)
@@ -86,11 +86,11 @@ func (a whole) nearest(b whole) whole {
 		double.Neg(double)
 	}
 	double.Add(double, shift) // floor((2a' + |b|) / 2|b|), a' with the sign of b taken in
-	return wholeFrom(new(big.Int).Div(double, shift.Lsh(shift, 1)))
+	return exactFrom(new(big.Int).Div(double, shift.Lsh(shift, 1)))
 }
 
 // residue returns a modulo m > 0 in 0..m-1; m = 0 leaves a as it is.
-func (a whole) residue(m whole) whole {
+func (a exact) residue(m exact) exact {
 	if m.isZero() {
 		return a
 	}
@@ -99,13 +99,13 @@ func (a whole) residue(m whole) whole {
 		if r < 0 {
 			r += m.small
 		}
-		return whole{small: r}
+		return exact{small: r}
 	}
-	return wholeFrom(new(big.Int).Mod(a.big(), m.big()))
+	return exactFrom(new(big.Int).Mod(a.big(), m.big()))
 }
 
 // cmpAbs compares absolute values.
-func (a whole) cmpAbs(b whole) int {
+func (a exact) cmpAbs(b exact) int {
 	if a.large == nil && b.large == nil {
 		x, y := magnitude(a.small), magnitude(b.small)
 		switch {
@@ -120,10 +120,10 @@ func (a whole) cmpAbs(b whole) int {
 }
 
 // int64 returns the value if it fits.
-func (a whole) int64() (int64, bool) { return a.small, a.large == nil }
+func (a exact) int64() (int64, bool) { return a.small, a.large == nil }
 
 // float returns the value as a float64; beyond 2^53 it is rounded.
-func (a whole) float() float64 {
+func (a exact) float() float64 {
 	if a.large == nil {
 		return float64(a.small)
 	}
@@ -131,7 +131,7 @@ func (a whole) float() float64 {
 	return f
 }
 
-func (a whole) String() string { return a.big().String() }
+func (a exact) String() string { return a.big().String() }
 
 func magnitude(n int64) uint64 {
 	if n < 0 {
