@@ -188,34 +188,3 @@ func (l *local) writeOp(a OpID, at string) string {
 	}
 	return "(" + strings.Join(s, " + ") + ")"
 }
-
-// writeOut appends the terms of in to out, with compounds written out where that gives at most maxSpread terms.
-func (m *multiplier) writeOut(out, in *list) error {
-	for i, c := range in.coef {
-		f := in.term(i)
-		size, some := 1, false
-		for _, x := range f {
-			if x.Op.compound() && size <= maxSpread {
-				some = true
-				size *= len(m.ladder.Site(int(x.Site)).ops.spread(x.Op))
-			}
-		}
-		if !some || size > maxSpread {
-			out.add(c, f)
-			continue
-		}
-		m.slots = m.slots[:0]
-		for _, x := range f {
-			s := slot{factor: x}
-			if x.Op.compound() {
-				s.sum = m.ladder.Site(int(x.Site)).ops.spread(x.Op)
-			}
-			m.slots = append(m.slots, s)
-		}
-		m.prefix = m.prefix[:0]
-		if err := m.expand(out, c, 0); err != nil {
-			return err
-		}
-	}
-	return nil
-}

@@ -1,8 +1,8 @@
 package ladder
 
 import (
-	"fmt"
 	"math/cmplx"
+	"slices"
 )
 
 // electronRules: element u + 4d is the element u of the mode up left of the element d of the mode down.
@@ -119,107 +119,12 @@ func (r electronRules) exponential(x []Weighted) ([]Weighted, error) {
 	return []Weighted{{d[0], 0}, {d[1] - d[0], up}, {d[2] - d[0], down}, {d[3] - d[1] - d[2] + d[0], up + down}}, nil
 }
 
-// singleRules is the two-component fermion without double occupation, in Hubbard's projected operators (Hubbard 1965):
-// every c_up stands for c_up (1 - n_down), and so on. The nine elements are 1 and the matrix units |p><q| except |0><0| = 1 - n.
-type singleRules struct{}
+// singleRules is the two-component fermion without double occupation: the algebra of electronRules, of which only matrices are cut.
+type singleRules struct{ electronRules }
 
-// singleUnits[op] is |out><in| in the states |0>, |up>, |down>.
-var singleUnits = [9][2]int{{}, {1, 1}, {2, 2}, {0, 1}, {1, 0}, {0, 2}, {2, 0}, {1, 2}, {2, 1}}
+func (singleRules) dim() int { return 3 }
 
-var singleNames = [9]string{"1", "n_up", "n_down", "c_up", "c_up^+", "c_down", "c_down^+", "S^+", "S^-"}
-
-// singleUnit returns |out><in| in the basis.
-func singleUnit(out, in int) []Weighted {
-	if out == 0 && in == 0 {
-		return []Weighted{{1, 0}, {-1, 1}, {-1, 2}}
-	}
-	for op := OpID(1); op < 9; op++ {
-		if singleUnits[op] == [2]int{out, in} {
-			return []Weighted{{1, op}}
-		}
-	}
-	panic(fmt.Sprintf("ladder: no element |%d><%d|", out, in))
-}
-
-func (singleRules) dim() int                { return 3 }
-func (singleRules) labels() []Label         { return electronRules{}.labels() }
-func (singleRules) stateLabels(s int) []int { return electronRules{}.stateLabels(s) }
-
-func (singleRules) mul(a, b OpID) ([]Weighted, error) {
-	if a == 0 {
-		return []Weighted{{1, b}}, nil
-	}
-	if b == 0 {
-		return []Weighted{{1, a}}, nil
-	}
-	p, q := singleUnits[a], singleUnits[b]
-	if p[1] != q[0] {
-		return nil, nil
-	}
-	return singleUnit(p[0], q[1]), nil
-}
-
-func (singleRules) adjoint(a OpID) ([]Weighted, error) {
-	if a == 0 {
-		return []Weighted{{1, 0}}, nil
-	}
-	return singleUnit(singleUnits[a][1], singleUnits[a][0]), nil
-}
-
-func (singleRules) raise(a OpID) []int {
-	p, q := electronOccupations[singleUnits[a][0]], electronOccupations[singleUnits[a][1]]
-	return []int{p[0] - q[0], p[1] - q[1]}
-}
-
-func (singleRules) odd(a OpID) bool      { return (singleUnits[a][0] == 0) != (singleUnits[a][1] == 0) }
-func (singleRules) diagonal(a OpID) bool { return singleUnits[a][0] == singleUnits[a][1] }
-
-func (singleRules) matrix(a OpID) []complex128 {
-	m := make([]complex128, 9)
-	if a == 0 {
-		m[0], m[4], m[8] = 1, 1, 1
-		return m
-	}
-	m[3*singleUnits[a][0]+singleUnits[a][1]] = 1
-	return m
-}
-
-func (singleRules) format(a OpID, at string) string {
-	if a == 0 {
-		return "1"
-	}
-	return singleNames[a] + at
-}
-
-func (singleRules) symbol(name, super string) ([]Weighted, bool) {
-	symbol := name
-	if super != "" {
-		symbol += "^" + super
-	}
-	switch symbol {
-	case "n":
-		return []Weighted{{1, 1}, {1, 2}}, true
-	case "S^z":
-		return []Weighted{{0.5, 1}, {-0.5, 2}}, true
-	case "S^x":
-		return []Weighted{{0.5, 7}, {0.5, 8}}, true
-	case "S^y":
-		return []Weighted{{-0.5i, 7}, {0.5i, 8}}, true
-	}
-	for op := OpID(1); op < 9; op++ {
-		if singleNames[op] == symbol {
-			return []Weighted{{1, op}}, true
-		}
-	}
-	return nil, false
-}
-
-func (singleRules) symbols() string { return electronSymbols }
-
-func (r singleRules) exponential(x []Weighted) ([]Weighted, error) {
-	d := diagonalValues(r, x)
-	for i := range d {
-		d[i] = cmplx.Exp(d[i])
-	}
-	return []Weighted{{d[0], 0}, {d[1] - d[0], 1}, {d[2] - d[0], 2}}, nil
+func (r singleRules) matrix(a OpID) []complex128 {
+	full := r.electronRules.matrix(a)
+	return slices.Concat(full[0:3], full[4:7], full[8:11])
 }

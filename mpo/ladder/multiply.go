@@ -131,3 +131,40 @@ func (m *multiplier) adjoint(out *list, c complex128, a []Factor) error {
 }
 
 func (m *multiplier) odd(f Factor) bool { return m.ladder.Site(int(f.Site)).Odd(f.Op) }
+
+// writeOut appends the terms of in to out in the form in which polynomials leave the evaluation: compounds written out where that gives
+// at most maxSpread terms, and products left out of which the cut of an electron site leaves nothing.
+func (m *multiplier) writeOut(out, in *list) error {
+	for i, c := range in.coef {
+		f := in.term(i)
+		size, some, gone := 1, false, false
+		for _, x := range f {
+			site := m.ladder.Site(int(x.Site))
+			if x.Op.compound() && size <= maxSpread {
+				some = true
+				size *= len(site.ops.spread(x.Op))
+			}
+			gone = gone || site.single && site.Vanishes(x.Op)
+		}
+		if gone {
+			continue
+		}
+		if !some || size > maxSpread {
+			out.add(c, f)
+			continue
+		}
+		m.slots = m.slots[:0]
+		for _, x := range f {
+			s := slot{factor: x}
+			if x.Op.compound() {
+				s.sum = m.ladder.Site(int(x.Site)).ops.spread(x.Op)
+			}
+			m.slots = append(m.slots, s)
+		}
+		m.prefix = m.prefix[:0]
+		if err := m.expand(out, c, 0); err != nil {
+			return err
+		}
+	}
+	return nil
+}

@@ -1,6 +1,9 @@
 package ladder
 
-import "fmt"
+import (
+	"fmt"
+	"slices"
+)
 
 // Limits of the site kinds.
 const (
@@ -63,8 +66,9 @@ type ElectronOption func(*Site)
 // Double(false) forbids double occupation; Double(true) is the default.
 func Double(allowed bool) ElectronOption { return func(s *Site) { s.single = !allowed } }
 
-// Electron is a two-component fermion: states |0>, |up>, |down>, |up,down> = c_up^+ c_down^+ |0>. With Double(false) the last state is missing
-// and every operator X stands for P X P, P the projector on at most one particle: c_up^+ c_up is n_up, but c_up c_up^+ is 1 - n.
+// Electron is a two-component fermion: states |0>, |up>, |down>, |up,down> = c_up^+ c_down^+ |0>. With Double(false) the last state is missing.
+// A formula then still means the full algebra, and what it becomes is cut, as for bosons: c_up c_up^+ is 1 - n_up, and
+// c_up^+ c_down^+ is nothing.
 func Electron(options ...ElectronOption) Site {
 	s := Site{kind: KindElectron}
 	for _, o := range options {
@@ -214,6 +218,11 @@ func (s Site) Adjoint(a OpID) []Weighted {
 
 // Matrix returns <out|op|in> as a Dim×Dim row-major array in the order of the site's states, cut after normal ordering. The slice is shared.
 func (s Site) Matrix(op OpID) []complex128 { return s.ops.cachedMatrix(op) }
+
+// Vanishes reports whether nothing is left of op after the cut, as of n_up n_down without double occupation.
+func (s Site) Vanishes(op OpID) bool {
+	return !slices.ContainsFunc(s.Matrix(op), func(z complex128) bool { return z != 0 })
+}
 
 // Format writes op on a site as a formula would: "b^+[a,3]".
 func (s Site) Format(op OpID, leg string, rung int) string {
