@@ -79,6 +79,7 @@ type source struct {
 	data   []byte
 	lines  []int // offset of each line's first byte
 	faults []*fault
+	known  []string // names that formulas may use, for hints
 }
 
 type fault struct {

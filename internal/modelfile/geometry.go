@@ -40,7 +40,11 @@ func (r *reader) readLadder() {
 	parts := []ladder.Part{ladder.Across(across)}
 	for _, l := range legs {
 		if _, err := ladder.New(int(rungs), ladder.Open, l.part); err != nil {
-			r.blame(err, l.table.byKey["name"].value.at, l.values()...)
+			at := l.table.byKey["name"].value.at
+			if e := l.table.byKey["rungs"]; e != nil && strings.Contains(err.Error(), "rung") {
+				at = e.value.at
+			}
+			r.blame(err, at, l.values()...)
 			good = false
 		}
 		parts = append(parts, l.part)
@@ -101,6 +105,7 @@ func (r *reader) readLegs(rungs int, known bool) (legs []leg, good bool) {
 				first[name] = e
 			}
 			s.name = fmt.Sprintf("[[leg]] %q", name)
+			r.known = append(r.known, name)
 		}
 		site, placed := s.site()
 		options, ranged := s.rungs(rungs, known)

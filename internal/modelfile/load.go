@@ -1,6 +1,7 @@
 package modelfile
 
 import (
+	"bytes"
 	"errors"
 	"fmt"
 	"io"
@@ -41,7 +42,7 @@ func Parse(file string, data []byte) (*Model, error) {
 	if len(data) > MaxSize {
 		return nil, fmt.Errorf("%s: larger than %d MiB; expected a model file in TOML", file, MaxSize>>20)
 	}
-	src := newSource(file, data)
+	src := newSource(file, bytes.TrimPrefix(data, []byte("\ufeff"))) // some editors begin a file with this mark
 	root := parse(src)
 	if root == nil || len(src.faults) > 0 {
 		return nil, src.err()

@@ -138,8 +138,8 @@ m:23:14: single = in a condition (equality is written ==)`},
 m:22:11: key "each" in [[term]] "repulsion" is a string; expected a table of indices, as in each = { l = "legs" }`},
 		{"each over nothing known", "{ l = \"legs\" }", "{ l = \"leg\" }", `
 m:22:17: index "l" runs over "leg" (expected "legs", "rungs", a range such as "1..rungs-1" or a list)`},
-		{"each over a mixed list", "{ l = \"legs\" }", "{ l = [\"a\", 3] }", `
-m:22:23: index "l" runs over a list with a whole number; expected names of legs or whole numbers, not both`},
+		{"each over a mixed list", "{ l = \"legs\" }", "{ l = [\"a\", 3.5] }", `
+m:22:23: index "l" runs over a list with a number; expected names of legs or whole numbers`},
 		{"each over an empty list", "{ l = \"legs\" }", "{ l = [] }", `
 m:22:17: index "l" runs over an empty list`},
 		{"term without formula", "formula = \"-J b^+[a,j+1] b[a,j] + h.c.\"", "", `

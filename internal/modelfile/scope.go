@@ -18,8 +18,12 @@ func (r *reader) readScope() {
 		r.fault(constants.at, "", "%d constants and profiles; expected at most %d", n, maxConstants)
 		return
 	}
+	broken := map[string]bool{}
 	for _, e := range constants.table.entries {
-		good = r.readConstant(constants, e) && good
+		r.names[e.key] = e
+		if dependsOn(e.value, broken) || !r.readConstant(constants, e) {
+			broken[e.key], good = true, false
+		}
 	}
 	for _, e := range profiles.table.entries {
 		p, ok := r.readProfile(profiles, e)
@@ -32,6 +36,7 @@ func (r *reader) readScope() {
 		}
 		good = good && ok
 		r.profiles = append(r.profiles, p)
+		r.known = append(r.known, e.key)
 	}
 	if !good {
 		return
@@ -46,7 +51,6 @@ func (r *reader) readScope() {
 
 // readConstant reads a number or evaluates a formula of earlier constants.
 func (r *reader) readConstant(s *section, e *entry) bool {
-	r.names[e.key] = e
 	v := e.value
 	x := v.float
 	switch v.kind {
@@ -81,7 +85,21 @@ func (r *reader) readConstant(s *section, e *entry) bool {
 		}
 	}
 	r.constants[e.key] = x
+	r.known = append(r.known, e.key)
 	return true
+}
+
+// dependsOn reports whether a formula uses one of the names: those at fault already, which need no second error.
+func dependsOn(v *value, names map[string]bool) bool {
+	if v.kind != text {
+		return false
+	}
+	for name := range namesIn(v.text) {
+		if names[name] {
+			return true
+		}
+	}
+	return false
 }
 
 // ahead adds a hint where a constant is used before the line that defines it.
@@ -125,7 +143,11 @@ func (r *reader) readProfile(s *section, e *entry) (ladder.Profile, bool) {
 	switch v.kind {
 	case text:
 		p.Formula = v.text
-		return p, r.syntax(v, formula.Parse)
+		if _, err := formula.Parse(v.text); err != nil {
+			r.blame(err, v.at, v)
+			return p, false
+		}
+		return p, true
 	case list:
 		for _, item := range v.items {
 			if item.kind != integer && item.kind != float {

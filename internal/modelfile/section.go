@@ -13,7 +13,7 @@ type section struct {
 	name  string // as errors show it: "[ladder]", "[[leg]]"
 	at    int
 	table *table
-	known []string
+	asked []string
 }
 
 // sections lists the keys of the top level.
@@ -61,8 +61,8 @@ func (s *section) several(key string) []*section {
 
 // lookup returns the entry of a key, nil if absent.
 func (s *section) lookup(key string) *entry {
-	if !slices.Contains(s.known, key) {
-		s.known = append(s.known, key)
+	if !slices.Contains(s.asked, key) {
+		s.asked = append(s.asked, key)
 	}
 	return s.table.byKey[key]
 }
@@ -91,8 +91,8 @@ func (s *section) label() string {
 // done refuses the keys that nothing asked for.
 func (s *section) done() {
 	for _, e := range s.table.entries {
-		if !slices.Contains(s.known, e.key) {
-			s.fault(e.at, hint(e.key, "keys here", s.known), "unknown key %q in %s", e.key, s.label())
+		if !slices.Contains(s.asked, e.key) {
+			s.fault(e.at, hint(e.key, "keys here", s.asked), "unknown key %q in %s", e.key, s.label())
 		}
 	}
 }

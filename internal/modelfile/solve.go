@@ -3,6 +3,7 @@ package modelfile
 import (
 	"errors"
 	"math"
+	"strconv"
 	"strings"
 
 	"rundle/mpo/ladder"
@@ -84,7 +85,7 @@ func (r *reader) checkSector() {
 		if e := solve.table.byKey["charges"]; e != nil {
 			at = e.value.at
 			for _, item := range e.value.items {
-				if mentions(err, item.text) {
+				if mentions(err, strconv.Quote(item.text)) {
 					at = item.at
 					break
 				}
@@ -97,8 +98,12 @@ func (r *reader) checkSector() {
 	if _, err := frames.Target(r.model.Sector); err != nil {
 		at := sector.at
 		for _, e := range sector.table.entries {
-			if mentions(err, e.key) {
+			if mentions(err, strconv.Quote(e.key)) {
 				at = e.at
+				break
+			}
+			if mentions(err, " "+e.key+" = ") {
+				at = e.value.at
 				break
 			}
 		}
@@ -106,12 +111,12 @@ func (r *reader) checkSector() {
 	}
 }
 
-// mentions reports whether an error quotes a name or speaks of a value of it.
-func mentions(err error, name string) bool {
+// mentions reports whether an error's message, hints aside, holds the words.
+func mentions(err error, words string) bool {
 	msg := err.Error()
 	var l *ladder.Error
 	if errors.As(err, &l) {
 		msg = l.Msg
 	}
-	return strings.Contains(msg, "\""+name+"\"") || strings.Contains(msg, " "+name+" =")
+	return strings.Contains(msg, words)
 }

@@ -5,9 +5,12 @@ import (
 	"strings"
 )
 
-// nearest returns the candidate that word is most likely a slip of, "" if none is close.
+// nearest returns the candidate that word is most likely a slip of, "" if none is close. One letter is a slip of its other case only.
 func nearest(word string, candidates []string) string {
 	best, least := "", 1+max(1, len(word)/3)
+	if len(word) == 1 {
+		least = 1
+	}
 	for _, c := range candidates {
 		if len(c) > 2*len(word)+2 || len(word) > 2*len(c)+2 {
 			continue

@@ -3,6 +3,8 @@ package modelfile
 import (
 	"errors"
 	"fmt"
+	"strconv"
+	"strings"
 
 	"rundle/mpo/ladder"
 	"rundle/mpo/ladder/formula"
@@ -86,24 +88,19 @@ func (s *section) indexValues(index *entry) any {
 		s.fault(v.at, "", "index %q runs over an empty list", index.key)
 		return nil
 	}
-	var numbers []int
-	var names []string
+	all := make([]any, 0, len(v.items))
 	for _, item := range v.items {
 		switch item.kind {
 		case integer:
-			numbers = append(numbers, int(item.integer))
+			all = append(all, int(item.integer))
 		case text:
-			names = append(names, item.text)
-		}
-		if item.kind != v.items[0].kind || item.kind != integer && item.kind != text {
-			s.fault(item.at, "", "index %q runs over a list with %s; expected names of legs or whole numbers, not both", index.key, item.kind)
+			all = append(all, item.text)
+		default:
+			s.fault(item.at, "", "index %q runs over a list with %s; expected names of legs or whole numbers", index.key, item.kind)
 			return nil
 		}
 	}
-	if names != nil {
-		return names
-	}
-	return numbers
+	return all
 }
 
 // buildHamiltonian sums the terms. If that fails each term is tried alone, which finds all faulty ones.
@@ -151,13 +148,28 @@ func (r *reader) blameTerm(s *section, err error) {
 	if e := s.table.byKey["formula"]; e != nil {
 		at = e.value.at
 	}
-	var l *ladder.Error
-	if each := s.table.byKey["each"]; each != nil && errors.As(err, &l) {
-		for _, index := range each.value.table.entries {
-			if l.Part == fmt.Sprintf("each %q", index.key) {
-				at = index.at
-			}
-		}
+	if e := s.table.byKey["each"]; e != nil {
+		at = indexAtFault(e.value.table, err, at)
 	}
 	r.blame(err, at, s.values()...)
+}
+
+// indexAtFault is the index of each that an error is about, or the item of its list that the error quotes; else at.
+func indexAtFault(each *table, err error, at int) int {
+	var l *ladder.Error
+	if !errors.As(err, &l) {
+		return at
+	}
+	for _, index := range each.entries {
+		if l.Part != fmt.Sprintf("each %q", index.key) {
+			continue
+		}
+		for _, item := range index.value.items {
+			if item.kind == text && strings.Contains(l.Msg, strconv.Quote(item.text)) {
+				return item.at
+			}
+		}
+		return index.at
+	}
+	return at
 }

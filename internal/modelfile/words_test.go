@@ -6,8 +6,8 @@ import (
 )
 
 func TestNearest(t *testing.T) {
-	keys := []string{"name", "site", "max", "rungs", "observable_precision"}
-	for word, want := range map[string]string{"nam": "name", "Rungs": "rungs", "rugns": "rungs", "mx": "max", "observable-precision": "observable_precision", "colour": "", "x": ""} {
+	keys := []string{"name", "site", "max", "rungs", "observable_precision", "J"}
+	for word, want := range map[string]string{"nam": "name", "Rungs": "rungs", "rugns": "rungs", "mx": "max", "observable-precision": "observable_precision", "colour": "", "x": "", "j": "J", "k": ""} {
 		if got := nearest(word, keys); got != want {
 			t.Errorf("nearest(%q) = %q, want %q", word, got, want)
 		}
