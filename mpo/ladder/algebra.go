@@ -129,8 +129,12 @@ func (l *local) exponentiate(x []Weighted) ([]Weighted, error) {
 	return mergeWeighted(w), err
 }
 
-// cancelled is the share of the summed magnitudes below which a sum counts as exactly cancelled.
-const cancelled = 1e-15
+// cancelled is the share of the summed magnitudes below which a sum of terms counts as exactly cancelled; sums within a site
+// carry the rounding of its basis too.
+const (
+	cancelled      = 1e-15
+	cancelledLocal = 1e-14
+)
 
 // mergeWeighted sorts by element, adds like elements, and drops what cancels.
 func mergeWeighted(w []Weighted) []Weighted {
@@ -146,7 +150,7 @@ func mergeWeighted(w []Weighted) []Weighted {
 			sum += w[i].Coef
 			size += cmplx.Abs(w[i].Coef)
 		}
-		if sum != 0 && !(cmplx.Abs(sum) <= cancelled*size) {
+		if sum != 0 && !(cmplx.Abs(sum) <= cancelledLocal*size) {
 			out = append(out, Weighted{sum, op})
 		}
 	}

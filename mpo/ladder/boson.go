@@ -167,17 +167,17 @@ func (c diagonalExp) close(d diagonalExp) bool {
 	return true
 }
 
-// at returns the function at n.
+// at returns the function at n. Angles are counted in half turns, so that exp(i*pi*n) is a sign at every n.
 func (c diagonalExp) at(n int) complex128 {
-	sum, binomial := complex128(0), 1.0
+	size, turns, binomial := 0.0, 0.0, 1.0
 	for k, z := range c {
 		if binomial = binomial * float64(n-k) / float64(k+1); binomial == 0 {
 			break
 		}
-		y := math.Remainder(binomial*imag(z), 2*math.Pi)
-		sum += complex(binomial*real(z), y)
+		size += binomial * real(z)
+		turns += math.Remainder(binomial*(imag(z)/math.Pi), 2)
 	}
-	return expOf(sum)
+	return expOf(complex(size, math.Pi*math.Remainder(turns, 2)))
 }
 
 // adjoint: ((b^+)^p f b^q)^+ = (b^+)^q f* b^p.

@@ -5,6 +5,7 @@ type multiplier struct {
 	ladder *Ladder
 	slots  []slot
 	prefix []Factor
+	drop   bool // leave out what the cut of an electron site leaves nothing of
 }
 
 // slot is a place in a product: one factor, or where both terms act on a site the sum that their product is.
@@ -91,7 +92,9 @@ func (m *multiplier) expand(out *list, c complex128, k int) error {
 		k++
 	}
 	if k == len(m.slots) {
-		out.add(c, m.prefix)
+		if !m.drop || !m.gone(m.prefix) {
+			out.add(c, m.prefix)
+		}
 		return out.full()
 	}
 	depth := len(m.prefix)
@@ -135,22 +138,21 @@ func (m *multiplier) odd(f Factor) bool { return m.ladder.Site(int(f.Site)).Odd(
 // writeOut appends the terms of in to out in the form in which polynomials leave the evaluation: compounds written out where that gives
 // at most maxSpread terms, and products left out of which the cut of an electron site leaves nothing.
 func (m *multiplier) writeOut(out, in *list) error {
+	m.drop = true
+	defer func() { m.drop = false }()
 	for i, c := range in.coef {
 		f := in.term(i)
-		size, some, gone := 1, false, false
+		size, some := 1, false
 		for _, x := range f {
-			site := m.ladder.Site(int(x.Site))
 			if x.Op.compound() && size <= maxSpread {
 				some = true
-				size *= len(site.ops.spread(x.Op))
+				size *= len(m.ladder.Site(int(x.Site)).ops.spread(x.Op))
 			}
-			gone = gone || site.single && site.Vanishes(x.Op)
-		}
-		if gone {
-			continue
 		}
 		if !some || size > maxSpread {
-			out.add(c, f)
+			if !m.gone(f) {
+				out.add(c, f)
+			}
 			continue
 		}
 		m.slots = m.slots[:0]
@@ -167,4 +169,14 @@ func (m *multiplier) writeOut(out, in *list) error {
 		}
 	}
 	return nil
+}
+
+// gone reports whether the cut of an electron site leaves nothing of a product.
+func (m *multiplier) gone(f []Factor) bool {
+	for _, x := range f {
+		if site := m.ladder.Site(int(x.Site)); site.single && site.Vanishes(x.Op) {
+			return true
+		}
+	}
+	return false
 }

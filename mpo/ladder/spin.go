@@ -210,7 +210,20 @@ func (s *spinRules) mul(x, y OpID) ([]Weighted, error) {
 		}
 		d[t] = complex(v1[min(out, mid)]*v2[min(mid, in)], 0)
 	}
-	return s.expand(r, d), nil
+	w := s.expand(r, d)
+	for i := range w {
+		w[i].Coef = complex(snap(real(w[i].Coef)), 0)
+	}
+	return w, nil
+}
+
+// snap rounds to a fraction with a small denominator what is one up to rounding, so that products of spins cancel exactly.
+func snap(x float64) float64 {
+	const denominator = 48
+	if r := math.Round(x * denominator); math.Abs(x*denominator-r) < 1e-14*math.Abs(r) {
+		return r / denominator
+	}
+	return x
 }
 
 // expand writes a band with the given matrix elements in the basis, leaving out what only rounding put there.
