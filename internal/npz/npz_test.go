@@ -318,6 +318,27 @@ func TestOpenNamesTheFile(t *testing.T) {
 	require.NoError(t, r.Close())
 }
 
+func TestDigest(t *testing.T) {
+	var digests []uint32
+	b := archive(t, func(w *Writer) {
+		digests = append(digests, w.Digest())
+		require.NoError(t, Write(w, "b", nil, []float64{1}))
+		digests = append(digests, w.Digest())
+		require.NoError(t, Write(w, "a", nil, []float64{1}))
+		digests = append(digests, w.Digest())
+		require.NoError(t, w.WriteText("meta", fmt.Sprint(w.Digest())))
+	})
+	r := read(t, b)
+	require.Equal(t, digests, []uint32{r.Digest("meta", "a", "b"), r.Digest("meta", "a"), r.Digest("meta")})
+	require.NotEqual(t, digests[0], digests[1])
+	require.NotEqual(t, digests[1], digests[2])
+	swapped := archive(t, func(w *Writer) {
+		require.NoError(t, Write(w, "a", nil, []float64{1}))
+		require.NoError(t, Write(w, "b", nil, []float64{2}))
+	})
+	require.NotEqual(t, digests[2], read(t, swapped).Digest())
+}
+
 type failAfter struct{ n int }
 
 func (f *failAfter) Write(b []byte) (int, error) {

@@ -80,6 +80,18 @@ func (r *Reader) Names() []string { return slices.Clone(r.names) }
 // Has reports whether there is an array of this name.
 func (r *Reader) Has(name string) bool { return r.entries[name] != nil }
 
+// Digest returns the checksum of all arrays but those named, as Writer.Digest gave it. It reads the directory only; each array
+// is held against it when read.
+func (r *Reader) Digest(without ...string) uint32 {
+	sums := make(map[string]uint32)
+	for name, f := range r.entries {
+		if !slices.Contains(without, name) {
+			sums[name] = f.CRC32
+		}
+	}
+	return digest(sums)
+}
+
 // Info returns kind and shape of an array. The data are not read and the checksum is not verified.
 func (r *Reader) Info(name string) (Info, error) {
 	var info Info

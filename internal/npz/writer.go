@@ -6,19 +6,21 @@ import (
 	"fmt"
 	"hash/crc32"
 	"io"
+	"maps"
 	"math"
+	"slices"
 	"strings"
 )
 
 // Writer writes the arrays of an .npz archive one after the other.
 type Writer struct {
-	zip   *zip.Writer
-	names map[string]bool
+	zip  *zip.Writer
+	sums map[string]uint32 // checksum by array
 }
 
 // NewWriter returns a writer of an archive. Without Close the archive cannot be read.
 func NewWriter(w io.Writer) *Writer {
-	return &Writer{zip: zip.NewWriter(w), names: make(map[string]bool)}
+	return &Writer{zip: zip.NewWriter(w), sums: make(map[string]uint32)}
 }
 
 // Write appends an array: its name, which may contain slashes, its shape, and its elements in C order.
@@ -47,15 +49,15 @@ func (w *Writer) entry(name string, h Info, fill func(io.Writer) error) error {
 	if name == "" || len(name) > maxHeader/2 || strings.HasPrefix(name, "/") || strings.ContainsAny(name, "\x00\\") {
 		return fmt.Errorf("npz: array name %q; expected a relative, slash-separated name", name)
 	}
-	if w.names[name] {
+	if _, ok := w.sums[name]; ok {
 		return fmt.Errorf("npz: array %q is written twice", name)
 	}
-	w.names[name] = true
 	sum, head := crc32.NewIEEE(), h.header()
 	sum.Write(head)
 	if err := fill(sum); err != nil {
 		return err
 	}
+	w.sums[name] = sum.Sum32()
 	to, err := createStored(w.zip, name+".npy", uint64(len(head))+uint64(h.bytes()), sum.Sum32())
 	if err == nil {
 		_, err = to.Write(head)
@@ -85,6 +87,18 @@ func createStored(z *zip.Writer, name string, size uint64, crc uint32) (io.Write
 	to, err := z.CreateRaw(h)
 	h.Extra = nil
 	return to, err
+}
+
+// Digest returns a checksum of all arrays written so far, their names and contents: the CRC-32 of a line "name checksum" for each,
+// sorted by name, the array's CRC-32 in eight hexadecimal digits.
+func (w *Writer) Digest() uint32 { return digest(w.sums) }
+
+func digest(sums map[string]uint32) uint32 {
+	all := crc32.NewIEEE()
+	for _, name := range slices.Sorted(maps.Keys(sums)) {
+		fmt.Fprintf(all, "%s %08x\n", name, sums[name])
+	}
+	return all.Sum32()
 }
 
 // Close writes the directory of the archive. It does not close the underlying writer.
