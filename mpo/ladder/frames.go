@@ -40,7 +40,7 @@ type Frames struct {
 
 // FrameOptions changes the choice of frames. The zero value finds the best.
 type FrameOptions struct {
-	Charges    []string // names of the charges to use; nil: chosen
+	Charges    []string // names of the charges to use; nil: chosen, empty: none
 	Complex    bool     // no real gauge: complex arithmetic although the Hamiltonian may be real
 	NoRotation bool     // keep the user's local axes
 }
@@ -79,9 +79,7 @@ func (h *Hamiltonian) Frames(opt FrameOptions) (*Frames, error) {
 		h: h, lb: lb, rot: best.rot, charges: best.choice.charges, others: best.choice.left,
 	}
 	f.name()
-	if err := f.build(best.angles); err != nil {
-		return nil, err
-	}
+	f.build(best.angles)
 	return f, nil
 }
 
@@ -260,7 +258,7 @@ func (f *Frames) name() {
 }
 
 // build writes the frame of every site; equal frames share their slices.
-func (f *Frames) build(angles []float64) error {
+func (f *Frames) build(angles []float64) {
 	lb := f.lb
 	f.Sites = make([]block.Frame, lb.sites())
 	shared := make(map[string]block.Frame)
@@ -289,6 +287,36 @@ func (f *Frames) build(angles []float64) error {
 		}
 		f.Sites[i] = fr
 	}
+}
+
+// Bind joins frames read from a file to their Hamiltonian, so that sectors can be named; an error if it is not theirs.
+func (f *Frames) Bind(h *Hamiltonian) error {
+	l := h.Poly.Ladder()
+	if err := f.check(l); err != nil {
+		return err
+	}
+	lb := newLabelling(l)
+	rot, err := f.rotationsOn(lb)
+	if err != nil {
+		return err
+	}
+	names := make([]string, len(f.Charges))
+	for i, c := range f.Charges {
+		names[i] = c.Name
+	}
+	t, err := lb.try(h.Poly, rot, FrameOptions{Charges: names, Complex: true})
+	if err != nil {
+		return h.explain(lb, err)
+	}
+	g := &Frames{h: h, lb: lb, rot: rot, charges: t.choice.charges, others: t.choice.left}
+	g.name()
+	g.build(nil)
+	for i, s := range g.Sites {
+		if g.Group != f.Group || !slices.Equal(s.Charges, f.Sites[i].Charges) || !slices.Equal(s.Order, f.Sites[i].Order) {
+			return fmt.Errorf("the frame of site %d belongs to another Hamiltonian: its charges differ", i)
+		}
+	}
+	f.h, f.lb, f.rot, f.charges, f.others = g.h, g.lb, g.rot, g.charges, g.others
 	return nil
 }
 

@@ -388,6 +388,11 @@ func TestFrames(t *testing.T) {
 		{"boson ladder, generic flux", func(t *testing.T) *Hamiltonian {
 			return newForm(t, 2, Leg("a", Boson(2)), Leg("b", Boson(2))).fluxLadder(2, "b", 0.8*math.Pi, true)
 		}, "N: U(1)", false, 0},
+		{"one leg turned", func(t *testing.T) *Hamiltonian {
+			f := newForm(t, 2, Leg("a", Spin(1)), Leg("b", Spin(1)))
+			return f.hamiltonian(f.mul(f.op("S", "z", "a", 0), f.op("S", "z", "a", 1)), f.op("S", "x", "a", 0), f.op("S", "x", "a", 1),
+				f.chainTerms("b", 1, "S^+", "S^-"), f.mul(f.op("S", "x", "a", 0), f.op("S", "z", "b", 0)))
+		}, "Sz_b: U(1) × P: Z_2", true, 1},
 		{"uncoupled legs", func(t *testing.T) *Hamiltonian {
 			return newForm(t, 3, Leg("a", Boson(1)), Leg("b", Boson(1))).fluxLadder(3, "b", 0.8, false)
 		}, "N: U(1) × N_a: U(1)", true, 0},
@@ -413,6 +418,9 @@ func TestFrames(t *testing.T) {
 			require.NoError(t, json.Unmarshal(data, &read))
 			require.Equal(t, f.Sites, read.Sites)
 			requireFrame(t, &read, h.Poly)
+			require.NoError(t, read.Bind(h))
+			_, err = read.Target(nil)
+			require.NoError(t, err)
 
 			g, err := h.Frames(FrameOptions{Complex: true})
 			require.NoError(t, err)
@@ -428,6 +436,7 @@ func TestStringsOfObservables(t *testing.T) {
 	fermions := newForm(t, 2, Leg("a", Fermion()), Leg("b", Electron()))
 	clocks := newForm(t, 3, Leg("a", Clock(5)))
 	bosons := newForm(t, 2, Leg("a", Boson(3)), Leg("b", Fermion()))
+	large := newForm(t, 2, Leg("a", Spin(7)))
 	mixed := bosons.hamiltonian(hermitian(bosons.mul(bosons.op("b", "+", "a", 0), bosons.op("b", "", "a", 1)).Scale(cmplx.Rect(1, 0.3))),
 		hermitian(bosons.mul(bosons.op("c", "+", "b", 0), bosons.op("c", "", "b", 1)).Scale(1i)))
 	two := fermions.hamiltonian(hermitian(fermions.mul(fermions.op("c", "+", "a", 0), fermions.op("c", "", "a", 1)).Scale(1i)),
@@ -440,6 +449,7 @@ func TestStringsOfObservables(t *testing.T) {
 		{"spin x", spins.isingZ(3), spins.op("S", "x", "a", 1)},
 		{"spin y z", spins.isingZ(3), spins.mul(spins.op("S", "y", "a", 0), spins.op("S", "z", "a", 2))},
 		{"spin power", spins.isingZ(3), spins.mul(spins.op("S", "+", "a", 0), spins.op("S", "+", "a", 0), spins.op("S", "z", "a", 0), spins.op("S", "z", "a", 1))},
+		{"large spin", large.xyz(2, 0.5, 0.8, 1, "x"), large.mul(large.op("S", "+", "a", 0), large.op("S", "z", "a", 0), large.op("S", "x", "a", 0), large.op("S", "z", "a", 1), large.op("S", "-", "a", 1))},
 		{"odd fermion", two, fermions.op("c_down", "+", "b", 1)},
 		{"fermion pair", two, fermions.mul(fermions.op("c", "", "a", 0), fermions.op("n_up", "", "b", 0), fermions.op("c_up", "+", "b", 1))},
 		{"three odd", two, fermions.mul(fermions.op("c", "", "a", 0), fermions.op("c_up", "", "b", 0), fermions.op("c_down", "+", "b", 1))},

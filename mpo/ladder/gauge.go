@@ -78,8 +78,7 @@ func (lb *labelling) flip(steps []step) bool {
 		return false
 	}
 	for i := range steps {
-		steps[i].n = -steps[i].n
-		steps[i].n = lb.centred(steps[i])
+		steps[i].n = lb.centred(step{steps[i].at, -steps[i].n})
 	}
 	return true
 }

@@ -14,7 +14,8 @@ import (
 // not named is free.
 type Sector map[string]any
 
-// Target is a sector in terms of the group's charges.
+// Target is a sector in terms of the group's charges. Where it leaves charges open, Totals lists what they may be: the wanted values may also tie
+// open charges together (N_b where the group holds N and N_a).
 type Target struct {
 	Charge block.Charge // zero where free
 	Free   []bool       // per charge of the group: the sector leaves it open
@@ -28,7 +29,7 @@ type wanted struct {
 	value int32 // as stored
 }
 
-// Target checks names and values, and that the ladder holds such a state.
+// Target checks names and values, and that the ladder holds such a state. Frames read from a file must have been bound.
 func (f *Frames) Target(s Sector) (Target, error) {
 	t := Target{Free: make([]bool, f.Group.Len())}
 	if f.lb == nil {
@@ -44,6 +45,10 @@ func (f *Frames) Target(s Sector) (Target, error) {
 		if c == nil {
 			msg := fmt.Sprintf("sector: %s", f.h.whyNot(f.lb, f.rot, name))
 			return t, &Error{Msg: msg, Hint: conservedHint(f.conservedNames())}
+		}
+		if adds(f.charges, c) {
+			return t, &Error{Msg: fmt.Sprintf("sector: %s is conserved, but it is not among the charges in use and does not follow from them", name),
+				Hint: "in use: " + strings.Join(namesOf(f.charges), ", ") + "; choose others with charges"}
 		}
 		v, err := f.value(c, s[name])
 		if err != nil {

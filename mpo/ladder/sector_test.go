@@ -188,3 +188,47 @@ func TestTotalsStartInTheMiddle(t *testing.T) {
 		require.Equal(t, int32(3), c[1])
 	}
 }
+
+// The user's words: formulas as values, and the term that breaks a charge by its name.
+func TestSectorInWords(t *testing.T) {
+	l, err := New(4, Open, Leg("a", Boson(2)), Leg("b", Boson(2)), Leg("s", Spin(1)))
+	require.NoError(t, err)
+	h, err := l.Hamiltonian(Constants{"K": 1},
+		Term{Name: "leg hopping", Formula: "b^+[l,j+1] b[l,j] + h.c.", Each: Each{"l": []string{"a", "b"}}},
+		Term{Name: "rung hopping", Formula: "-K b^+[a,j] b[b,j] + h.c."},
+		Term{Formula: "S^z[s,j] S^z[s,j+1]"}, Term{Formula: "S^x[s,j]"})
+	require.NoError(t, err)
+	f, err := h.Frames(FrameOptions{})
+	require.NoError(t, err)
+	require.Equal(t, "N: U(1) × P: Z_2", f.Group.String())
+	require.Equal(t, "parity: 0 where the product of exp(i pi n) and exp(i pi (s - S^x)) is +1", f.Charges[1].Description)
+	target, err := f.Target(Sector{"N": "rungs/2 + 1"})
+	require.NoError(t, err)
+	require.Equal(t, block.Charge{3}, target.Charge)
+	require.Equal(t, []bool{false, true}, target.Free)
+	_, err = f.Target(Sector{"N_a": 1})
+	require.ErrorContains(t, err, `N_a is not conserved: term "rung hopping" changes it (conserved: N, P`)
+	_, err = f.Target(Sector{"Sx": 1})
+	require.ErrorContains(t, err, `Sx is not conserved: term "S^z[s,j] S^z[s,j+1]" changes it`)
+	_, err = f.Target(Sector{"N": "rungs/8"})
+	require.ErrorContains(t, err, "sector N = rungs/8: expected a whole number")
+	_, err = f.Target(Sector{"N": "rungs +"})
+	require.ErrorContains(t, err, "sector N = rungs +")
+
+	g, err := h.Frames(FrameOptions{Charges: []string{"P"}})
+	require.NoError(t, err)
+	require.True(t, g.Missing)
+	_, err = g.Target(Sector{"N": 1})
+	require.ErrorContains(t, err, "N is conserved, but it is not among the charges in use and does not follow from them (in use: P")
+}
+
+func TestBindRefusesForeignFrames(t *testing.T) {
+	coupled := newForm(t, 3, Leg("a", Boson(2)), Leg("b", Boson(2)))
+	apart, err := coupled.fluxLadder(3, "b", 0, false).Frames(FrameOptions{})
+	require.NoError(t, err)
+	require.ErrorContains(t, apart.Bind(coupled.fluxLadder(3, "b", 0, true)), `charge "N_a" cannot be used`)
+	require.ErrorContains(t, apart.Bind(newForm(t, 2, Leg("a", Boson(2))).hamiltonian()), "do not fit a ladder")
+	var unbound Frames
+	_, err = unbound.Target(nil)
+	require.ErrorContains(t, err, "must be bound")
+}

@@ -190,7 +190,6 @@ type tableWriter struct {
 	frame *block.Frame
 	local *localTable
 	sign  []float64 // (-1)^n of each stored state; nil: no fermions
-	plain []opRef   // by local operator: even places; index 2*op+sign, hidden ones apart
 	index map[opKey]opRef
 }
 
