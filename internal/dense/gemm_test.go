@@ -5,6 +5,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"runtime"
+	"sync"
 	"sync/atomic"
 	"testing"
 
@@ -210,6 +211,7 @@ func TestGemmStartsNoGoroutine(t *testing.T) {
 }
 
 func TestGemmAllocatesNothing(t *testing.T) {
+	use(t, goKernels) // calls into C allocate
 	a, c := random[float64](64*64), make([]float64, 64*64)
 	z, d := random[complex128](64*64), make([]complex128, 64*64)
 	assert.Zero(t, testing.AllocsPerRun(100, func() {
@@ -217,4 +219,24 @@ func TestGemmAllocatesNothing(t *testing.T) {
 		Gemm(NoTrans, ConjTrans, 64, 64, 64, 1, z, 64, z, 64, 0, d, 64)
 		Gemm(NoTrans, ConjTrans, 2, 2, 2, 1, z, 64, z, 64, 0, d, 64)
 	}))
+}
+
+// TestGemmFromManyGoroutines: the copies of tiles are shared by turns, never at once. The race detector looks on.
+func TestGemmFromManyGoroutines(t *testing.T) {
+	const n, callers = 40, 8
+	z := random[complex128](n * n)
+	results := make([][]complex128, callers)
+	var wait sync.WaitGroup
+	for i := range results {
+		wait.Go(func() {
+			results[i] = make([]complex128, n*n)
+			for range 5 {
+				Gemm(Trans, ConjTrans, n, n, n, 1, z, n, z, n, 0, results[i], n)
+			}
+		})
+	}
+	wait.Wait()
+	for _, r := range results[1:] {
+		assert.Equal(t, results[0], r)
+	}
 }

@@ -211,12 +211,19 @@ func eachKernels(t *testing.T, f func(t *testing.T)) {
 	if haveNetlib {
 		sets = append(sets, netlibKernels)
 	}
-	saved := kernels
-	defer func() { kernels = saved }()
 	for _, set := range sets {
-		kernels = func() (kernelSet, error) { return set, nil }
-		t.Run(string(set), f)
+		t.Run(string(set), func(t *testing.T) {
+			use(t, set)
+			f(t)
+		})
 	}
+}
+
+// use switches to a set of kernels until the test ends.
+func use(t *testing.T, set kernelSet) {
+	saved := kernels
+	kernels = func() (kernelSet, error) { return set, nil }
+	t.Cleanup(func() { kernels = saved })
 }
 
 // shapes are the m×n that factorizations are tested on.

@@ -16,7 +16,6 @@ type arena[E any] struct {
 func (a *arena[E]) take(n int) []E {
 	if a.used+n > len(a.buf) {
 		a.buf = make([]E, max(2*len(a.buf), a.used+n))
-		a.used = 0
 	}
 	piece := a.buf[a.used : a.used+n : a.used+n]
 	a.used += n
