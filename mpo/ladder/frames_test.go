@@ -563,3 +563,49 @@ func TestGaugeOfRandomLadders(t *testing.T) {
 		}
 	}
 }
+
+// Random Hamiltonians on mixed ladders, and random observables: the stored form is the user's, seen through the unitary.
+func TestFramesOfRandomHamiltonians(t *testing.T) {
+	rng := rand.New(rand.NewPCG(11, 5))
+	sites := []Site{Fermion(), Electron(), Electron(Double(false)), Boson(2), Spin(1), Spin(2), Clock(3), Clock(4)}
+	words := map[Kind][][2]string{
+		KindFermion: {{"c", ""}, {"c", "+"}, {"n", ""}}, KindElectron: {{"c_up", ""}, {"c_down", "+"}, {"n_up", ""}, {"S", "+"}},
+		KindBoson: {{"b", ""}, {"b", "+"}, {"n", ""}}, KindSpin: {{"S", "z"}, {"S", "+"}, {"S", "x"}, {"S", "y"}}, KindClock: {{"Z", ""}, {"X", ""}, {"X", "+"}},
+	}
+	counts := map[bool]int{}
+	for range 60 {
+		f := newForm(t, 1+rng.IntN(2), Leg("a", sites[rng.IntN(len(sites))]), Leg("b", sites[rng.IntN(len(sites))]))
+		if f.l.Rungs() == 2 && f.l.Site(0).Dim()*f.l.Site(1).Dim() > 9 {
+			continue
+		}
+		draw := func() *Polynomial {
+			for {
+				p := One(f.l)
+				for range 1 + rng.IntN(3) {
+					leg := []string{"a", "b"}[rng.IntN(2)]
+					site, _ := f.l.LegSite(leg)
+					w := words[site.Kind()][rng.IntN(len(words[site.Kind()]))]
+					p = f.mul(p, f.op(w[0], w[1], leg, rng.IntN(f.l.Rungs())))
+				}
+				if _, odd := p.Odd(); !odd && p.NumTerms() > 0 {
+					return p
+				}
+			}
+		}
+		var ps []*Polynomial
+		for range 1 + rng.IntN(4) {
+			ps = append(ps, hermitian(draw().Scale(cmplx.Rect(1, rng.Float64()*7))))
+		}
+		h := f.hamiltonian(ps...)
+		fr, err := h.Frames(FrameOptions{})
+		require.NoError(t, err)
+		counts[fr.Real]++
+		s, err := fr.Strings(h.Poly)
+		require.NoError(t, err)
+		require.Equal(t, fr.Real, s.Real || len(s.Coef) == 0)
+		requireFrame(t, fr, h.Poly)
+		requireFrame(t, fr, draw())
+	}
+	require.Greater(t, counts[true], 5)
+	require.Greater(t, counts[false], 5)
+}
