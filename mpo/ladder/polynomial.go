@@ -21,6 +21,9 @@ type Factor struct {
 	Op   OpID
 }
 
+// key orders factors, above 0.
+func (f Factor) key() uint64 { return (uint64(f.Site)+1)<<32 | uint64(f.Op) }
+
 // Polynomial is a sum of terms on a ladder: a coefficient times a product of basis elements in the order of the sites, identities left
 // out, fermionic signs already in the coefficient. Terms are sorted by their factors and each product occurs once. A Polynomial never
 // changes once made, and may be shared.
@@ -90,23 +93,31 @@ func compareFactors(a, b []Factor) int {
 // merged returns the terms sorted, like products added in the order given, and cancelled ones dropped.
 func (l *list) merged() list {
 	type head struct {
-		key   uint64 // first factor, so that most comparisons stay in this array
-		index uint32
+		first, second uint64 // factors, so that most comparisons stay in this array
+		index         uint32
 	}
 	n := len(l.coef)
 	heads := make([]head, n)
 	for i := range heads {
 		heads[i].index = uint32(i)
-		if f := l.term(i); len(f) > 0 {
-			heads[i].key = (uint64(f[0].Site)+1)<<32 | uint64(f[0].Op)
+		f := l.term(i)
+		if len(f) > 0 {
+			heads[i].first = f[0].key()
+		}
+		if len(f) > 1 {
+			heads[i].second = f[1].key()
 		}
 	}
 	slices.SortFunc(heads, func(a, b head) int {
-		if a.key != b.key {
-			return cmp.Compare(a.key, b.key)
-		}
-		if c := compareFactors(l.term(int(a.index)), l.term(int(b.index))); c != 0 {
-			return c
+		switch {
+		case a.first != b.first:
+			return cmp.Compare(a.first, b.first)
+		case a.second != b.second:
+			return cmp.Compare(a.second, b.second)
+		case a.second != 0:
+			if c := compareFactors(l.term(int(a.index))[2:], l.term(int(b.index))[2:]); c != 0 {
+				return c
+			}
 		}
 		return cmp.Compare(a.index, b.index)
 	})
