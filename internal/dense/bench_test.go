@@ -18,13 +18,6 @@ func reportFlops(b *testing.B, flops float64) {
 	b.ReportMetric(flops*float64(b.N)/b.Elapsed().Seconds()/1e9, "Gflop/s")
 }
 
-func kind[T Scalar]() string {
-	if IsComplex[T]() {
-		return "complex"
-	}
-	return "real"
-}
-
 func random[T Scalar](n int) []T {
 	x := make([]T, n)
 	Random(rand.New(rand.NewPCG(uint64(n), 1)), x)
