@@ -16,6 +16,9 @@ type leg struct {
 	part ladder.Part
 }
 
+// maxLegs bounds the legs of a file: the search for conserved charges works with a number of particles on each.
+const maxLegs = 256
+
 // readLadder reads [ladder] and [[leg]].
 func (r *reader) readLadder() {
 	s := r.single("ladder")
@@ -90,6 +93,10 @@ func (r *reader) readLegs(rungs int, known bool) (legs []leg, good bool) {
 		if r.table.byKey["leg"] == nil {
 			r.fault(0, "add [[leg]] with name = \"a\" and site = \"fermion\"", "no [[leg]] section")
 		}
+		return nil, false
+	}
+	if len(all) > maxLegs {
+		r.fault(all[maxLegs].at, "", "%d legs; expected at most %d", len(all), maxLegs)
 		return nil, false
 	}
 	good = true

@@ -294,6 +294,13 @@ func TestManyFaults(t *testing.T) {
 	}
 }
 
+func TestManyLegs(t *testing.T) {
+	_, err := Parse("m", []byte("[ladder]\nrungs = 1\n[[term]]\nformula = \"1\"\n"+strings.Repeat("[[leg]]\n", maxLegs+1)))
+	if want := "m:261:1: 257 legs; expected at most 256"; err == nil || err.Error() != want {
+		t.Errorf("got %v, want %s", err, want)
+	}
+}
+
 func TestCaret(t *testing.T) {
 	_, err := Parse("m", []byte(change(t, "\"U/2 n", "\"é*(U/2 n")))
 	faults := Faults(err)
