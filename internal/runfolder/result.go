@@ -74,7 +74,7 @@ type State struct {
 	Energy          float64                  `json:"energy"`    // <H> of the saved state
 	EnergyLimit     float64                  `json:"energy_limit"`
 	EnergyError     float64                  `json:"energy_error"`
-	Variance        float64                  `json:"variance"`
+	Variance        *float64                 `json:"variance,omitempty"` // nil where it was left out
 	DiscardedWeight float64                  `json:"discarded_weight"`
 	LargestBond     int                      `json:"largest_bond"`
 	TopOccupation   *float64                 `json:"top_occupation,omitempty"` // nil without bosons
@@ -116,11 +116,11 @@ type Level struct {
 
 // Resources says what the run took.
 type Resources struct {
-	WallSeconds     float64 `json:"wall_seconds"`
-	CPUSeconds      float64 `json:"cpu_seconds"`
-	PeakMemoryBytes int64   `json:"peak_memory_bytes"`
-	GemmFlops       float64 `json:"gemm_flops"`
-	Threads         int     `json:"threads"`
-	Kernels         string  `json:"kernels"`
-	Version         string  `json:"version"`
+	WallSeconds     float64  `json:"wall_seconds"`
+	CPUSeconds      float64  `json:"cpu_seconds"`
+	PeakMemoryBytes int64    `json:"peak_memory_bytes"`
+	GemmFlops       *float64 `json:"gemm_flops,omitempty"` // nil where nothing counts them
+	Threads         int      `json:"threads"`
+	Kernels         string   `json:"kernels"`
+	Version         string   `json:"version"`
 }

@@ -15,7 +15,7 @@ import (
 
 // sample fills every field, so that the schema's every property occurs.
 func sample() *Result {
-	top := 0.0
+	top, variance, flops := 0.0, 2e-10, 1e12
 	return &Result{
 		Format: ResultFormat,
 		Model: Model{
@@ -25,7 +25,7 @@ func sample() *Result {
 		},
 		States: []State{{
 			Sector: Numbers{"N": 4, "Sz": -0.5}, Index: 0, Multiplet: 1,
-			Energy: -3.25, EnergyLimit: -3.2501, EnergyError: 1e-9, Variance: 2e-10, DiscardedWeight: 1e-12,
+			Energy: -3.25, EnergyLimit: -3.2501, EnergyError: 1e-9, Variance: &variance, DiscardedWeight: 1e-12,
 			LargestBond: 40, TopOccupation: &top, Sweeps: 7, Verdict: Suspect, Reason: "boson cutoff", Seconds: 0.5,
 			Observations: map[string][]Observation{
 				"density": {{At: At{"j": 3, "l": "a"}, Value: Number(0.46), Error: 1e-9}},
@@ -37,7 +37,7 @@ func sample() *Result {
 				Spectrum: []Level{{Xi: 0.2, Charge: Numbers{"N": 2}}},
 			}}},
 		}},
-		Resources: Resources{1.5, 2.5, 1 << 30, 1e12, 2, "go", "0.1.0"},
+		Resources: Resources{1.5, 2.5, 1 << 30, &flops, 2, "go", "0.1.0"},
 	}
 }
 
@@ -187,7 +187,7 @@ func TestNotFinite(t *testing.T) {
 		{`states[0].observations["density"][0].value[0]`, func(r *Result) { r.States[0].Observations["density"][0].Value.Re = nan }},
 		{`states[0].observations["phase"][0].value[1]`, func(r *Result) { r.States[0].Observations["phase"][0].Value.Im = nan }},
 		{"states[0].entanglement.cuts[0].spectrum[0].xi", func(r *Result) { r.States[0].Entanglement.Cuts[0].Spectrum[0].Xi = math.Inf(-1) }},
-		{"resources.gemm_flops", func(r *Result) { r.Resources.GemmFlops = nan }},
+		{"resources.gemm_flops", func(r *Result) { *r.Resources.GemmFlops = nan }},
 	} {
 		t.Run(row.field, func(t *testing.T) {
 			r := sample()
