@@ -39,7 +39,7 @@
 // charges and L sites it holds
 //
 //	meta                  JSON: format ("rundle-state/1"), arithmetic ("real" or "complex"), sites (L), center, group (names and moduli of the
-//	                      charges), frames, scope, checksum (CRC-32 of all block data in order)
+//	                      charges), frames, scope, digest (npz.Writer.Digest of the other arrays)
 //	bond_0000 .. bond_L   sectors × (1+D) int64: a row for each sector of the bond left of that site (bond_L: right edge), its dimension and its charges
 //	site_0003/axis        the same table for the states of site 3
 //	site_0003/blocks      blocks × 3 int64: rows of bond_0003, site_0003/axis and bond_0004 that each block belongs to
