@@ -164,13 +164,20 @@ func shift[T dense.Scalar](o *Operator[T], shares []T) *automaton[T] {
 
 // Product returns a·b: b acts first. Its bonds are compressed to the operator rank.
 func Product[T dense.Scalar](a, b *Operator[T]) *Operator[T] {
+	o, _ := product(a, b, Options{}.settle())
+	return o
+}
+
+// product returns a·b and what its compression left out, in couplings.
+func product[T dense.Scalar](a, b *Operator[T], opt Options) (o *Operator[T], dropped float64) {
 	mustMatch("product", a, b)
 	m := newAutomaton[T](a.Group, append([]block.Axis(nil), a.Phys...), a.Group.Add(a.Charge(), b.Charge()))
 	index := map[[2]int32]int32{{0, 0}: vacant} // pairs of indices on the bond before the site
 	for i := range a.Sites {
 		index = m.multiply(i, a, b, index)
 	}
-	return m.finish(Options{}.settle())
+	o = m.finish(opt)
+	return o, m.dropped
 }
 
 // multiply fills site i of the product of a and b and returns the pairs of indices behind it.

@@ -16,6 +16,8 @@ type automaton[T dense.Scalar] struct {
 	bases  []*basis[T] // one per site
 	cells  [][]cell[T] // one list per site, any order
 	joints []joint     // one per bond
+
+	dropped float64 // sum of what the compression left out, in couplings
 }
 
 // The fixed indices; crossing strings are numbered from crossing on.
@@ -87,9 +89,7 @@ func (m *automaton[T]) mirror() {
 // gather sorts cells by left index, basis element and right index, adds up equal ones and drops what cancels to the given
 // part of the summed magnitudes.
 func gather[T dense.Scalar](cells []cell[T], tolerance float64) []cell[T] {
-	slices.SortStableFunc(cells, func(a, b cell[T]) int {
-		return cmp.Or(cmp.Compare(a.l, b.l), cmp.Compare(a.k, b.k), cmp.Compare(a.r, b.r))
-	})
+	cells = sortedCells(cells)
 	out := cells[:0]
 	for i := 0; i < len(cells); {
 		c, size := cells[i], dense.Abs(cells[i].v)
@@ -100,6 +100,34 @@ func gather[T dense.Scalar](cells []cell[T], tolerance float64) []cell[T] {
 		if dense.Abs(c.v) > tolerance*size {
 			out = append(out, c)
 		}
+	}
+	return out
+}
+
+// sortedCells returns the cells in order: a counting sort by left index, then one comparison a pair inside each.
+func sortedCells[T dense.Scalar](cells []cell[T]) []cell[T] {
+	var last int32
+	for _, c := range cells {
+		last = max(last, c.l)
+	}
+	at := make([]int, last+2)
+	for _, c := range cells {
+		at[c.l+1]++
+	}
+	for l := range last + 1 {
+		at[l+1] += at[l]
+	}
+	out := make([]cell[T], len(cells))
+	for _, c := range cells {
+		out[at[c.l]] = c
+		at[c.l]++
+	}
+	start := 0
+	for _, end := range at[:last+1] { // each now points behind its own
+		slices.SortFunc(out[start:end], func(a, b cell[T]) int {
+			return cmp.Compare(uint64(a.k)<<32|uint64(a.r), uint64(b.k)<<32|uint64(b.r))
+		})
+		start = end
 	}
 	return out
 }

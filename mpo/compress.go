@@ -268,7 +268,7 @@ func (r *reducer[T]) examine(columns []int32) *elimination[T] {
 	if e.independent(r.opt) {
 		return nil
 	}
-	e.reduce(r.opt.Tolerance)
+	r.dropped += math.Ldexp(e.reduce(r.opt.Tolerance), top)
 	return e
 }
 

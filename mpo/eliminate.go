@@ -242,8 +242,8 @@ func smallestPivot[T dense.Scalar](a []T, m, n int) float64 {
 }
 
 // reduce eliminates with the largest pivot of the whole matrix each time (Gauss-Jordan on columns) until what is left is below
-// the tolerance, and sets pivots and result.
-func (e *elimination[T]) reduce(tolerance float64) {
+// the tolerance, and sets pivots and result. It returns the norm of what is left.
+func (e *elimination[T]) reduce(tolerance float64) (rest float64) {
 	m, n := len(e.rows), len(e.columns)
 	a := make([]T, n*m) // a column of the matrix is a row of a
 	for c, col := range e.columns {
@@ -284,12 +284,22 @@ func (e *elimination[T]) reduce(tolerance float64) {
 	for j := range rank {
 		var col []rowValue[T]
 		for i, x := range a[j*m : (j+1)*m] {
-			if dense.Abs(x) > tolerance {
+			if s := dense.Abs(x); s > tolerance {
 				col = append(col, rowValue[T]{int32(i), x})
+			} else {
+				rest = math.Hypot(rest, s)
 			}
 		}
 		e.result = append(e.result, col)
 	}
+	for c := rank; c < n; c++ {
+		for i, x := range a[c*m : (c+1)*m] {
+			if !used[i] {
+				rest = math.Hypot(rest, dense.Abs(x))
+			}
+		}
+	}
+	return rest
 }
 
 // ldexp returns x times 2^e.

@@ -93,7 +93,7 @@ const noise = 8 * 0x1p-52
 
 // settle sorts entries, adds up those with equal indices and drops what cancels.
 func settle[T dense.Scalar](all []Entry[T]) []Entry[T] {
-	slices.SortStableFunc(all, func(a, b Entry[T]) int {
+	slices.SortFunc(all, func(a, b Entry[T]) int {
 		return cmp.Or(cmp.Compare(a.Left, b.Left), cmp.Compare(a.Right, b.Right), cmp.Compare(a.Out, b.Out), cmp.Compare(a.In, b.In))
 	})
 	out := all[:0]
