@@ -81,7 +81,7 @@ func (r *bosonRules) times(f1, s1, f2, s2 int) (f int, scale complex128, err err
 		c1[i] += c
 	}
 	f, err = r.intern(c1)
-	return f, cmplx.Exp(k1 + k2), err
+	return f, expOf(k1 + k2), err
 }
 
 // shifted rewrites sum_k c_k C(n+s,k) in binomials of n (Vandermonde): C(n+s,k) = sum_m C(n,m) C(s,k-m); constant is the part of m = 0.

@@ -127,7 +127,7 @@ func (r *clockRules) symbols() string { return "Z, Z^+, X, X^+" }
 func (r *clockRules) exponential(x []Weighted) ([]Weighted, error) {
 	d := diagonalValues(r, x)
 	for i := range d {
-		d[i] = cmplx.Exp(d[i])
+		d[i] = expOf(d[i])
 	}
 	return r.expand(d), nil
 }

@@ -1,9 +1,6 @@
 package ladder
 
-import (
-	"math/cmplx"
-	"slices"
-)
+import "slices"
 
 // electronRules: element u + 4d is the element u of the mode up left of the element d of the mode down.
 type electronRules struct{}
@@ -113,7 +110,7 @@ func (electronRules) symbols() string { return electronSymbols }
 func (r electronRules) exponential(x []Weighted) ([]Weighted, error) {
 	d := diagonalValues(r, x)
 	for i := range d {
-		d[i] = cmplx.Exp(d[i])
+		d[i] = expOf(d[i])
 	}
 	const up, down = modeNumber, 4 * modeNumber
 	return []Weighted{{d[0], 0}, {d[1] - d[0], up}, {d[2] - d[0], down}, {d[3] - d[1] - d[2] + d[0], up + down}}, nil

@@ -2,6 +2,7 @@ package ladder
 
 import (
 	"errors"
+	"fmt"
 	"math"
 	"math/cmplx"
 )
@@ -86,6 +87,9 @@ func scale(v value, c complex128) value {
 // mergeAbove is the number of terms above which a product is merged at once, so that powers do not pile up duplicates.
 const mergeAbove = 64
 
+// maxProduct bounds the terms of one product of sums (and their factors, by four times as many).
+const maxProduct = 4_000_000
+
 func (f *frame) product(x, y value) (value, error) {
 	switch {
 	case x.ops == nil:
@@ -100,8 +104,8 @@ func (f *frame) product(x, y value) (value, error) {
 				return value{}, err
 			}
 		}
-		if err := out.full(); err != nil {
-			return value{}, err
+		if len(out.coef) > maxProduct || len(out.factors) > 4*maxProduct {
+			return value{}, fmt.Errorf("a product of more than %d million terms", maxProduct/1_000_000)
 		}
 	}
 	if len(out.coef) > mergeAbove {

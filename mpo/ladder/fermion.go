@@ -1,7 +1,5 @@
 package ladder
 
-import "math/cmplx"
-
 // The basis of one fermionic mode: 1, c, c^+, n = c^+ c.
 const (
 	modeOne OpID = iota
@@ -64,7 +62,7 @@ func (fermionRules) symbols() string { return "c, c^+, n" }
 
 func (r fermionRules) exponential(x []Weighted) ([]Weighted, error) {
 	d := diagonalValues(r, x)
-	e0, e1 := cmplx.Exp(d[0]), cmplx.Exp(d[1])
+	e0, e1 := expOf(d[0]), expOf(d[1])
 	return []Weighted{{e0, modeOne}, {e1 - e0, modeNumber}}, nil
 }
 

@@ -13,6 +13,9 @@ import (
 // MaxTerms bounds the terms of a polynomial, also before merging.
 const MaxTerms = 20_000_000
 
+// maxFactors bounds their factors together: 1.3 GB.
+const maxFactors = 8 * MaxTerms
+
 var errTooMany = errors.New("more than 20 million terms")
 
 // Factor is a basis element on a site.
@@ -72,7 +75,7 @@ func (l *list) addAll(m *list, c complex128) {
 
 // full reports an error before the slabs grow beyond what is allowed.
 func (l *list) full() error {
-	if len(l.coef) > MaxTerms || len(l.factors) > 1<<30 {
+	if len(l.coef) > MaxTerms || len(l.factors) > maxFactors {
 		return errTooMany
 	}
 	return nil

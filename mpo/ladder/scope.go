@@ -91,7 +91,7 @@ func (s *Scope) number(src *source) (float64, error) {
 	switch {
 	case v.ops != nil:
 		return 0, at.fail("", "an operator where a number is expected")
-	case imag(v.z) != 0:
+	case math.Abs(imag(v.z)) > 1e-14*math.Abs(real(v.z)): // roots of negative numbers leave rounding
 		return 0, at.fail("", "expected a real number, got %s", formatNumber(v.z))
 	case !finite(v.z):
 		return 0, at.fail("", "the result is not a finite number")
