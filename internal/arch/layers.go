@@ -4,7 +4,7 @@ package arch
 // module. Imports go down; packages on one line do not import each other.
 // A trailing "/..." takes in the packages below.
 var layers = [][]string{
-	{"examples/...", "internal/bench/..."},
+	{"examples/...", "internal/bench/...", "internal/acceptance"},
 	{"cmd/rundle"},
 	{"internal/report"},
 	{"internal/survey"},

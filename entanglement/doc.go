@@ -1,0 +1,6 @@
+// Package entanglement reads the entanglement of a matrix-product state: entropies and spectra, with charges, at every cut.
+//
+// Cut b lies after site b, counting from 0, in rung-major site order. Entropies are in nats. The entanglement spectrum is
+// xi = -ln(lambda^2) with lambda the normalized Schmidt values (Li, Haldane 2008). Charges are those of the sites left of the
+// cut, in the user's units.
+package entanglement
