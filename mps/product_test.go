@@ -85,6 +85,17 @@ func randomStates[T dense.Scalar](t *rapid.T) {
 	require.NoError(t, err)
 	require.Equal(t, c, again)
 
+	bonds, err := ExpectedBonds(g, axes, total, bond)
+	require.NoError(t, err)
+	require.Len(t, bonds, len(axes)+1)
+	for i, a := range bonds {
+		require.LessOrEqual(t, a.Dim(), bond)
+		require.Equal(t, block.In, a.Flow)
+		if i > 0 && i < len(axes) {
+			require.GreaterOrEqual(t, a.Dim(), c.Bond(i-1).Dim(), "a random state may lose bond states, never gain any")
+		}
+	}
+
 	// With room for everything the state fills its sector: no bond is narrower than the smaller side allows.
 	full, err := Random[T](g, axes, total, 1000, rand.New(rand.NewPCG(seed, 0)))
 	require.NoError(t, err)

@@ -2,7 +2,6 @@ package mps
 
 import (
 	"errors"
-	"fmt"
 	"math"
 	"math/rand/v2"
 
@@ -17,14 +16,10 @@ func Random[T dense.Scalar](g block.Group, axes []block.Axis, total block.Charge
 	if len(axes) == 0 {
 		return nil, errors.New("mps: a random state of no sites; expected at least one")
 	}
-	if bond < 1 {
-		return nil, fmt.Errorf("mps: a random state of bond dimension %d; expected at least 1", bond)
-	}
-	layers, err := sectorLayers(g, axes, g.Normalize(total), bond, max(512, 4*bond))
+	bonds, err := ExpectedBonds(g, axes, total, bond)
 	if err != nil {
 		return nil, err
 	}
-	bonds := bondSectors(g, axes, layers, bond)
 	c := &Chain[T]{Group: g, Sites: make([]*block.Tensor[T], len(axes))}
 	for i, a := range axes {
 		s := block.NewStructure(g, []block.Axis{bonds[i], a, bonds[i+1].Reversed()}, block.Charge{})
