@@ -130,7 +130,7 @@ func TestRandomRefuses(t *testing.T) {
 
 // Long chains, extreme fillings and several charges: the bond is used up and the search through the charges stays small.
 func TestRandomOnLongChains(t *testing.T) {
-	two := make([]block.Axis, 400)
+	two := make([]block.Axis, 200)
 	for i := range two {
 		two[i] = block.NewAxis(block.In, block.Sector{Dim: 1}, block.Sector{Charge: block.Charge{1, 1}, Dim: 1},
 			block.Sector{Charge: block.Charge{1, -1}, Dim: 1}, block.Sector{Charge: block.Charge{2, 0}, Dim: 1})
@@ -146,10 +146,10 @@ func TestRandomOnLongChains(t *testing.T) {
 		total block.Charge
 		bond  int // reached in the middle
 	}{
-		{"one particle", groups[1], uniform(2000, 0, 1), block.Charge{1}, 2},
+		{"one particle", groups[1], uniform(1200, 0, 1), block.Charge{1}, 2},
 		{"half filling", groups[1], uniform(500, 0, 1), block.Charge{250}, 20},
-		{"nearly full", groups[1], uniform(2000, 0, 1), block.Charge{1997}, 8},
-		{"two charges", groups[4], two, block.Charge{400, 6}, 20},
+		{"nearly full", groups[1], uniform(800, 0, 1), block.Charge{797}, 8},
+		{"two charges", groups[4], two, block.Charge{200, 6}, 20},
 		{"no charges", groups[0], uniform(300, 0, 0), block.Charge{}, 20},
 		{"empty sites", groups[1], ragged, block.Charge{37}, 20},
 	} {
