@@ -136,6 +136,11 @@ const (
 	cancelledLocal = 1e-14
 )
 
+// cancels reports whether a sum of terms with summed magnitudes size is zero up to rounding; one that is not finite is not.
+func cancels(sum complex128, size, share float64) bool {
+	return sum == 0 || cmplx.Abs(sum) <= share*size && !math.IsInf(size, 0)
+}
+
 // mergeWeighted sorts by element, adds like elements, and drops what cancels.
 func mergeWeighted(w []Weighted) []Weighted {
 	if len(w) == 0 {
@@ -150,7 +155,7 @@ func mergeWeighted(w []Weighted) []Weighted {
 			sum += w[i].Coef
 			size += cmplx.Abs(w[i].Coef)
 		}
-		if sum != 0 && !(cmplx.Abs(sum) <= cancelledLocal*size) {
+		if !cancels(sum, size, cancelledLocal) {
 			out = append(out, Weighted{sum, op})
 		}
 	}

@@ -41,7 +41,7 @@ func newFrame(l *Ladder, slots int) *frame {
 }
 
 // maxSteps bounds the work of one term.
-const maxSteps = 200_000_000
+const maxSteps = 50_000_000
 
 func (f *frame) begin() {
 	f.used, f.wrapped, f.touched = 0, false, f.touched[:0]
@@ -234,12 +234,15 @@ func (b *binary) eval(f *frame) (value, error) {
 	}
 	switch b.op {
 	case '+':
-		return f.add(x, y), nil
+		return b.checked(f.add(x, y))
 	case '-':
-		return f.add(x, scale(y, -1)), nil
+		return b.checked(f.add(x, scale(y, -1)))
 	case '*':
 		v, err := f.product(x, y)
-		return v, b.at.wrap(err)
+		if err != nil {
+			return value{}, b.at.wrap(err)
+		}
+		return b.checked(v)
 	case '/':
 		return b.divide(x, y)
 	case '%':
@@ -256,7 +259,7 @@ func (b *binary) divide(x, y value) (value, error) {
 		return value{}, b.at.fail("leave that place out with a condition", "division by zero")
 	}
 	if x.ops == nil {
-		return b.checked(x.z / y.z)
+		return b.checked(value{z: x.z / y.z})
 	}
 	return scale(x, 1/y.z), nil
 }
@@ -287,7 +290,7 @@ func (b *binary) power(f *frame, x, y value) (value, error) {
 		if x.z == 0 && real(y.z) < 0 {
 			return value{}, b.at.fail("", "0 to a negative power")
 		}
-		return b.checked(power(x.z, y.z))
+		return b.checked(value{z: power(x.z, y.z)})
 	}
 	n := real(y.z)
 	if imag(y.z) != 0 || n != math.Trunc(n) || n < 0 || n > maxExponent {
@@ -316,11 +319,12 @@ func (f *frame) copy(v value) value {
 	return value{ops: out}
 }
 
-func (b *binary) checked(z complex128) (value, error) {
-	if !finite(z) {
+// checked refuses numbers that are not finite; the coefficients of operators are checked at the end.
+func (b *binary) checked(v value) (value, error) {
+	if v.ops == nil && !finite(v.z) {
 		return value{}, b.at.fail("", "the result is not a finite number")
 	}
-	return value{z: z}, nil
+	return v, nil
 }
 
 // call is a function of one or two numbers, or exp of operators.
@@ -400,6 +404,10 @@ type fold struct {
 	at       origin
 }
 
+func (s *fold) tooMany() error {
+	return s.at.fail("shorten the range", "more than %d million steps of sums and products", maxSteps/1_000_000)
+}
+
 func (s *fold) eval(f *frame) (value, error) {
 	from, err := s.from.eval(f)
 	if err != nil {
@@ -408,6 +416,9 @@ func (s *fold) eval(f *frame) (value, error) {
 	to, err := s.to.eval(f)
 	if err != nil {
 		return value{}, err
+	}
+	if to-from > maxSteps {
+		return value{}, s.tooMany()
 	}
 	outer := f.vars[s.slot]
 	defer func() { f.vars[s.slot] = outer }()
@@ -418,7 +429,7 @@ func (s *fold) eval(f *frame) (value, error) {
 	var a, b list // own storage: what the body leaves in the frame's lists is given back after each step
 	for k := from; k <= to; k++ {
 		if f.steps++; f.steps > maxSteps {
-			return value{}, s.at.fail("shorten the range", "more than %d million steps of sums and products", maxSteps/1_000_000)
+			return value{}, s.tooMany()
 		}
 		f.vars[s.slot] = float64(k)
 		mark := f.used

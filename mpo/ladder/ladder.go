@@ -3,6 +3,7 @@ package ladder
 import (
 	"fmt"
 	"slices"
+	"strings"
 
 	"rundle/mpo/ladder/formula"
 )
@@ -211,6 +212,9 @@ func (l *Ladder) Warnings() []string {
 func plural(n int, what string) string {
 	if n == 1 {
 		return "1 " + what
+	}
+	if stem, ok := strings.CutSuffix(what, "ex"); ok {
+		return fmt.Sprintf("%d %sices", n, stem) // index
 	}
 	return fmt.Sprintf("%d %ss", n, what)
 }

@@ -34,17 +34,28 @@ type Place struct {
 }
 
 // maxPlaces bounds the assignments that are tried.
-const maxPlaces = 200_000_000
+const maxPlaces = 50_000_000
 
 // walk calls visit for every assignment that where allows, with the formula's value. Places that lack a site are left out.
 func (t *compiled) walk(f *frame, visit func(v value) error) error {
 	size := 1.0
 	for _, d := range t.domains {
-		if !d.ranged {
+		switch {
+		case !d.ranged:
 			size *= float64(len(d.values))
+		case !d.bound: // the bounds are numbers
+			lo, err := d.from.eval(f)
+			if err != nil {
+				return err
+			}
+			hi, err := d.to.eval(f)
+			if err != nil {
+				return err
+			}
+			size *= float64(max(0, hi-lo+1))
 		}
 	}
-	tooMany := t.at.fail("shorten the ranges of the indices", "more than %d million places", maxPlaces/1_000_000)
+	tooMany := t.at.fail("shorten the ranges; \"j+1..j+5\" is one, too", "more than %d million places", maxPlaces/1_000_000)
 	if size > maxPlaces {
 		return tooMany
 	}
@@ -243,7 +254,7 @@ func (r *ringPairs) see(c *compiled, f *frame, ops *list) {
 	}
 	if old.wrapped || f.wrapped {
 		if r.count++; r.count == 1 {
-			r.first = fmt.Sprintf("%s and %s", placeName(old.at), placeName(c.indices(f)))
+			r.first = fmt.Sprintf("(%s) and (%s)", placeName(old.at), placeName(c.indices(f)))
 		}
 	}
 }
@@ -261,7 +272,7 @@ func (t *compiled) warnings(places int, r *ringPairs) []string {
 		w = append(w, name+" has no place on this ladder")
 	}
 	if r.count > 0 {
-		w = append(w, fmt.Sprintf("%s counts %s twice on the ring, first at %s; end long ranges at rungs/2, or use where",
+		w = append(w, fmt.Sprintf("%s counts %s twice on the ring, first at %s; end a long range r at rungs/2, on an even ring with where = \"2*r < rungs or j < r\"",
 			name, plural(r.count, "set")+" of sites", r.first))
 	}
 	return w

@@ -140,7 +140,7 @@ func (l *list) merged() list {
 			sum += c
 			size += cmplx.Abs(c)
 		}
-		if sum != 0 && !(cmplx.Abs(sum) <= cancelled*size) {
+		if !cancels(sum, size, cancelled) {
 			out.add(sum, f)
 		}
 	}

@@ -198,7 +198,7 @@ func TestFermionSigns(t *testing.T) {
 func randomPolynomial(t *rapid.T, b *bitLadder) *Polynomial {
 	p := Zero(b.Ladder)
 	for range rapid.IntRange(0, 3).Draw(t, "terms") {
-		q := One(b.Ladder).Scale(complex(rapid.Float64Range(-2, 2).Draw(t, "re"), rapid.Float64Range(-2, 2).Draw(t, "im")))
+		q := One(b.Ladder).Scale(complex(float64(rapid.IntRange(-3, 3).Draw(t, "re")), float64(rapid.IntRange(1, 3).Draw(t, "im"))))
 		for range rapid.IntRange(0, 4).Draw(t, "degree") {
 			m := rapid.IntRange(0, b.modes-1).Draw(t, "mode")
 			var err error

@@ -37,6 +37,7 @@ type domain struct {
 	values   []float64
 	from, to whole // used where ranged
 	ranged   bool
+	bound    bool // the range depends on other indices
 }
 
 // compiled is a term ready to be evaluated.
@@ -128,7 +129,7 @@ func (c *compiler) domains(out *compiled, t Term, withJ bool) error {
 		}
 	}
 	if withJ {
-		c.addDomain(out, domain{name: "j", values: counting(c.scope.ladder.rungs)}, false)
+		c.addDomain(out, domain{name: "j", values: counting(c.scope.ladder.rungs)})
 	}
 	for len(names) > 0 {
 		ready := slices.IndexFunc(names, func(name string) bool {
@@ -151,10 +152,10 @@ func (c *compiler) domains(out *compiled, t Term, withJ bool) error {
 	return nil
 }
 
-func (c *compiler) addDomain(out *compiled, d domain, bound bool) {
+func (c *compiler) addDomain(out *compiled, d domain) {
 	d.slot = c.slots
 	c.slots++
-	c.indices[d.name] = index{slot: d.slot, leg: d.leg, moves: true, bound: bound, used: new(bool)}
+	c.indices[d.name] = index{slot: d.slot, leg: d.leg, moves: true, bound: d.bound, used: new(bool)}
 	out.domains = append(out.domains, d)
 }
 
@@ -176,7 +177,8 @@ func (c *compiler) addRange(out *compiled, name string, src *source, span [2]for
 	if d.to, err = c.whole(span[1]); err != nil {
 		return err
 	}
-	c.addDomain(out, d, c.depends(span[0], true) || c.depends(span[1], true))
+	d.bound = c.depends(span[0], true) || c.depends(span[1], true)
+	c.addDomain(out, d)
 	return nil
 }
 
@@ -224,7 +226,7 @@ func (c *compiler) addList(out *compiled, name string, v any) error {
 		}
 		d.leg, d.values = leg, append(d.values, x)
 	}
-	c.addDomain(out, d, false)
+	c.addDomain(out, d)
 	return nil
 }
 
