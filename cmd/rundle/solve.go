@@ -1,0 +1,78 @@
+package main
+
+import (
+	"path/filepath"
+
+	"rundle/internal/modelfile"
+	"rundle/internal/runfolder"
+	"rundle/internal/solve"
+)
+
+type solveCommand struct {
+	File   string `arg:"" help:"Model file (TOML)."`
+	Out    string `name:"out" placeholder:"DIR" help:"Run folder; default: the model file's name beside it, with .run."`
+	Fresh  bool   `name:"fresh" help:"Move the run that is there aside and begin anew."`
+	Start  string `name:"start" placeholder:"DIR" help:"Begin from the state of another run."`
+	Memory string `name:"memory" placeholder:"SIZE" help:"Cap on the memory of state and environments, such as \"8 GiB\"."`
+}
+
+func (k solveCommand) run(c *console) (int, error) {
+	opt := solve.Options{Dir: k.Out, Fresh: k.Fresh, StartDir: k.Start, Threads: c.threads, Version: release}
+	var err error
+	if k.Memory != "" {
+		if opt.Memory, err = modelfile.Size(k.Memory); err != nil {
+			return 0, &usageError{"--memory: " + err.Error(), ""}
+		}
+	}
+	m, err := load(k.File)
+	if err != nil {
+		return 0, err
+	}
+	for _, w := range m.Hamiltonian.Warnings() {
+		c.say("warning: %s", w)
+	}
+	show := newDisplay(c.stderr)
+	opt.OnProgress = show.update
+	out, err := solve.Run(c.ctx, m, opt)
+	show.close()
+	if err != nil {
+		return 0, err
+	}
+	return c.report(out)
+}
+
+// report prints what a run came to and returns its exit code.
+func (c *console) report(out *solve.Outcome) (int, error) {
+	for _, note := range out.Notes {
+		c.say("note: %s", note)
+	}
+	if out.Moved != "" {
+		c.say("the run that was there is now %s", out.Moved)
+	}
+	if out.Stopped {
+		c.say("stopped; the same command goes on from %s", filepath.Join(out.Dir, runfolder.CheckpointName))
+		if c.json {
+			return exitStopped, c.document(stoppedDocument{"rundle-stopped/1", exitStopped, out.Dir})
+		}
+		return exitStopped, nil
+	}
+	if out.Returned {
+		c.say("%s holds these results already", out.Dir)
+	}
+	if err := c.results(out.Result, "run folder: "+out.Dir); err != nil {
+		return 0, err
+	}
+	switch {
+	case out.Limited() && !out.Returned:
+		return exitStopped, nil
+	case !out.Result.Converged():
+		return exitNotConverged, nil
+	}
+	return exitDone, nil
+}
+
+type stoppedDocument struct {
+	Format string `json:"format"`
+	Exit   int    `json:"exit"`
+	Folder string `json:"folder"`
+}

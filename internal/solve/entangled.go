@@ -1,0 +1,33 @@
+package solve
+
+import (
+	"rundle/entanglement"
+	"rundle/internal/modelfile"
+	"rundle/internal/runfolder"
+	"rundle/mps"
+)
+
+// spectrumTo is the xi up to which entanglement spectra are written unless the model says otherwise.
+const spectrumTo = 40
+
+// entangled returns the entanglement of every cut, the spectra below the limit that the model sets.
+func entangled(s *mps.State, list []modelfile.Observation) (*runfolder.Entanglement, error) {
+	limit := float64(spectrumTo)
+	for _, o := range list {
+		if o.Kind == modelfile.Entanglement && o.SpectrumTo > 0 {
+			limit = o.SpectrumTo
+		}
+	}
+	t := entanglement.Cuts(s)
+	e := &runfolder.Entanglement{Cuts: make([]runfolder.Cut, len(t.AfterSite))}
+	for b := range e.Cuts {
+		c := runfolder.Cut{AfterSite: t.AfterSite[b], RungEdge: t.RungEdge[b], Entropy: t.Entropy[b], Renyi2: t.Renyi2[b]}
+		for _, l := range t.Spectrum[b] {
+			if l.Xi < limit {
+				c.Spectrum = append(c.Spectrum, runfolder.Level{Xi: l.Xi, Charge: l.Charge})
+			}
+		}
+		e.Cuts[b] = c
+	}
+	return e, nil
+}

@@ -1,0 +1,113 @@
+package solve
+
+import (
+	"context"
+	"fmt"
+
+	"rundle/internal/modelfile"
+	"rundle/internal/runfolder"
+	"rundle/mpo/ladder"
+	"rundle/mps"
+	"rundle/observables"
+)
+
+// series is an observation at all its places.
+type series struct {
+	name      string
+	hermitian bool
+	at        []runfolder.At
+	values    []complex128
+}
+
+// measure takes all observations of a state but the entanglement, in their order.
+func measure(ctx context.Context, s *mps.State, list []modelfile.Observation) ([]series, error) {
+	var all []series
+	for _, o := range list {
+		var one series
+		var err error
+		switch o.Kind {
+		case modelfile.Values:
+			one, err = measureValues(ctx, s, o)
+		case modelfile.Correlations:
+			one, err = measureCorrelations(ctx, s, o)
+		default:
+			continue
+		}
+		if err != nil {
+			return nil, fmt.Errorf("observation %q: %w", o.Name, err)
+		}
+		all = append(all, one)
+	}
+	return all, nil
+}
+
+func measureValues(ctx context.Context, s *mps.State, o modelfile.Observation) (series, error) {
+	f, err := observables.Observe(ctx, s, o.Term)
+	if err != nil {
+		return series{}, err
+	}
+	one := series{name: o.Name, hermitian: f.Imag == nil, values: make([]complex128, len(f.Values))}
+	for i, v := range f.Values {
+		one.at = append(one.at, placeOf(f.At[i], ""))
+		if f.Imag == nil {
+			one.values[i] = complex(v, 0)
+		} else {
+			one.values[i] = complex(v, f.Imag[i])
+		}
+	}
+	return one, nil
+}
+
+// measureCorrelations lists the pairs row by row; the indices of the second operator bear a prime.
+func measureCorrelations(ctx context.Context, s *mps.State, o modelfile.Observation) (series, error) {
+	p, err := observables.AllPairs(ctx, s, o.Term, o.Second)
+	if err != nil {
+		return series{}, err
+	}
+	values := p.Values
+	if o.Connected {
+		values = p.Connected()
+	}
+	one := series{name: o.Name, hermitian: p.Hermitian}
+	for x, row := range values {
+		for y, v := range row {
+			at := placeOf(p.AtFirst[x], "")
+			for name, value := range placeOf(p.AtSecond[y], "'") {
+				at[name] = value
+			}
+			one.at, one.values = append(one.at, at), append(one.values, v)
+		}
+	}
+	return one, nil
+}
+
+// placeOf turns the indices of a place into those of a result.
+func placeOf(at []ladder.IndexValue, mark string) runfolder.At {
+	out := runfolder.At{}
+	for _, v := range at {
+		switch x := v.Value().(type) {
+		case int, string:
+			out[v.Name+mark] = x
+		default:
+			out[v.Name+mark] = fmt.Sprint(x)
+		}
+	}
+	return out
+}
+
+// observations joins values and errors for the result.
+func observations(all []series, bars [][]float64) map[string][]runfolder.Observation {
+	out := make(map[string][]runfolder.Observation, len(all))
+	for k, s := range all {
+		list := make([]runfolder.Observation, len(s.values))
+		for i, v := range s.values {
+			value := runfolder.Pair(v)
+			if s.hermitian {
+				value = runfolder.Number(real(v))
+			}
+			list[i] = runfolder.Observation{At: s.at[i], Value: value, Error: bars[k][i]}
+		}
+		out[s.name] = list
+	}
+	return out
+}

@@ -1,0 +1,147 @@
+package solve
+
+import (
+	"context"
+	"math"
+
+	"rundle/dmrg"
+	"rundle/internal/modelfile"
+	"rundle/internal/runfolder"
+	"rundle/mpo/ladder"
+)
+
+// result observes the state found and puts the document together.
+func (r *run) result(ctx context.Context, w *watch, found *dmrg.Result) (*runfolder.Result, error) {
+	state, err := r.state(ctx, w, found)
+	if err != nil {
+		return nil, err
+	}
+	model := describe(r.model, found)
+	model.Hash = r.origin.Hash
+	return &runfolder.Result{
+		Model: model, States: []runfolder.State{state},
+		Resources: r.used.resources(r.opt.Threads, r.opt.Version),
+	}, nil
+}
+
+// describe says what was solved.
+func describe(m *modelfile.Model, found *dmrg.Result) runfolder.Model {
+	model := runfolder.Model{Title: m.Title, Sites: m.Ladder.Sites(), Charges: chargesOf(m.Frames), Arithmetic: runfolder.Complex, MPOBonds: found.OperatorBonds}
+	if _, ok := found.State.Real(); ok {
+		model.Arithmetic = runfolder.Real
+	}
+	return model
+}
+
+func chargesOf(f *ladder.Frames) []runfolder.Charge {
+	var all []runfolder.Charge
+	for _, c := range f.Charges {
+		all = append(all, runfolder.Charge{Name: c.Name, Modulus: c.Modulus, Meaning: c.Description})
+	}
+	return all
+}
+
+// state describes the state found with all that is read out of it.
+func (r *run) state(ctx context.Context, w *watch, found *dmrg.Result) (runfolder.State, error) {
+	s := runfolder.State{
+		Sector: found.Sector, Energy: found.Energy, EnergyLimit: found.EnergyLimit, EnergyError: found.EnergyError,
+		DiscardedWeight: found.DiscardedWeight, LargestBond: found.LargestBond, Sweeps: w.check.Sweeps,
+		Verdict: runfolder.Verdict(found.Verdict), Reason: found.Reason, Seconds: w.seconds(),
+	}
+	if math.IsNaN(s.EnergyLimit) || math.IsInf(s.EnergyLimit, 0) {
+		s.EnergyLimit = s.Energy
+	}
+	if math.IsNaN(s.EnergyError) || math.IsInf(s.EnergyError, 0) {
+		bound, err := looseBound(r.model.Hamiltonian, r.model.Frames, s.Energy)
+		if err != nil {
+			return s, err
+		}
+		s.EnergyError = bound
+	}
+	var err error
+	if s.Variance, err = r.variance(w, found); err != nil {
+		return s, err
+	}
+	if err := ctx.Err(); err != nil {
+		return s, err
+	}
+	if s.Observations, err = r.observe(ctx, w, found, s.EnergyError); err != nil {
+		return s, err
+	}
+	if s.Entanglement, err = entangled(found.State, r.model.Observe); err != nil {
+		return s, err
+	}
+	return s, judgeCutoff(ctx, &s, found.State, r.precision())
+}
+
+// observe measures the state found and, for the error bars, the one at the settled bond dimension before it.
+func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyError float64) (map[string][]runfolder.Observation, error) {
+	now, err := measure(ctx, found.State, r.model.Observe)
+	if err != nil {
+		return nil, err
+	}
+	back := 0
+	if w.settledAt == w.check.Sweeps {
+		back = 1 // the state found is the last settled one
+	}
+	before, mark, err := w.check.earlier(back)
+	if err != nil {
+		return nil, err
+	}
+	bars := make([][]float64, len(now))
+	if before == nil {
+		unit := r.coupling()
+		for i := range now {
+			bars[i] = weightBars(now[i].values, found.DiscardedWeight, energyError/unit)
+		}
+		return observations(now, bars), nil
+	}
+	if before, err = onScope(before, r.model.Scope); err != nil {
+		return nil, err
+	}
+	earlier, err := measure(ctx, before, r.model.Observe)
+	if err != nil {
+		return nil, err
+	}
+	for i := range now {
+		bars[i] = spreadBars(now[i].values, earlier[i].values, found.DiscardedWeight, mark.Discarded)
+	}
+	return observations(now, bars), nil
+}
+
+// coupling is the largest coefficient of the Hamiltonian.
+func (r *run) coupling() float64 { return largestCoefficient(r.model.Hamiltonian.Poly) }
+
+func largestCoefficient(p *ladder.Polynomial) float64 {
+	largest := 0.0
+	for i := range p.NumTerms() {
+		c, _ := p.Term(i)
+		largest = max(largest, math.Hypot(real(c), imag(c)))
+	}
+	return largest
+}
+
+// looseBound bounds the distance of an energy from the ground energy, whatever the state: no eigenvalue lies below minus the sum of the norms of the terms.
+func looseBound(h *ladder.Hamiltonian, f *ladder.Frames, energy float64) (float64, error) {
+	s, err := f.Strings(h.Poly)
+	if err != nil {
+		return 0, err
+	}
+	var lowest float64
+	for t, c := range s.Coef {
+		norm := math.Hypot(real(c), imag(c))
+		for _, x := range s.Factors[s.Start[t]:s.Start[t+1]] {
+			norm *= frobenius(s.Tables[x.Site].Matrices[x.Op])
+		}
+		lowest -= norm
+	}
+	return max(0, energy-lowest), nil
+}
+
+func frobenius(m []complex128) float64 {
+	var sum float64
+	for _, z := range m {
+		sum += real(z)*real(z) + imag(z)*imag(z)
+	}
+	return math.Sqrt(sum)
+}
