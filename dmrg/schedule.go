@@ -163,10 +163,10 @@ func (s *search[T]) whole(st *settledStage) bool {
 	return len(st.energies) > 0 && st.discarded <= s.opt.weight*float64(s.engine.psi.Len())
 }
 
-// stateSettled reports whether the last sweep changed the state by less than observables may err, or much less than truncation
-// does. The energy alone cannot tell: it errs as the square.
+// stateSettled reports whether the last sweep changed the state by less than observables may err, or no more than truncation itself
+// does, which changes a tensor by the root of its discarded weight at every visit. The energy alone cannot tell: it errs as the square.
 func (s *search[T]) stateSettled(st *settledStage) bool {
-	return st.change <= max(0.3*s.opt.ObservablePrecision, 0.3*math.Sqrt(st.discarded), stateRounding)
+	return st.change <= max(0.3*s.opt.ObservablePrecision, 2*math.Sqrt(st.discarded), stateRounding)
 }
 
 // precise reports whether the last stage meets both wishes: the energy's by its estimate, the observables' (where the user named
