@@ -43,7 +43,7 @@ type rules interface {
 }
 
 // local is the operator algebra of one kind of site with its caches, safe for concurrent use. It adds to the basis of the rules the
-// compounds: interned sums of basis elements that change the labels alike.
+// compounds: interned sums of basis elements, all even or all odd.
 type local struct {
 	rules
 	mu        sync.RWMutex

@@ -371,9 +371,15 @@ func TestCompoundsAreSums(t *testing.T) {
 	require.Equal(t, "(1 + -2 n[a,0])", s.Format(p, "a", 0))
 	require.False(t, s.Odd(p))
 	require.True(t, s.Diagonal(p))
-	mixed, err := s.ops.condense([]Weighted{{1, modeLower}, {1, modeRaise}})
+	majorana, err := s.ops.condense([]Weighted{{1, modeLower}, {1, modeRaise}})
 	require.NoError(t, err)
-	require.Len(t, mixed, 2, "elements that raise differently stay apart")
+	require.Len(t, majorana, 1)
+	require.True(t, s.Odd(majorana[0].Op))
+	require.False(t, s.Diagonal(majorana[0].Op))
+	require.Equal(t, []Weighted{{1, modeLower}, {1, modeRaise}}, s.Parts(majorana[0].Op))
+	mixed, err := s.ops.condense([]Weighted{{1, modeLower}, {1, modeOne}})
+	require.NoError(t, err)
+	require.Len(t, mixed, 2, "even and odd elements stay apart")
 }
 
 func TestSitesOutOfBounds(t *testing.T) {

@@ -137,7 +137,7 @@ func (f *frame) exponential(x *list) (value, error) {
 			if t[0].Site != site {
 				break
 			}
-			if !ops.diagonal(ops.leader(t[0].Op)) {
+			if !f.ladder.Site(int(site)).Diagonal(t[0].Op) {
 				return value{}, errors.New("exp of an operator that is not diagonal")
 			}
 			for _, w := range ops.spread(t[0].Op) {

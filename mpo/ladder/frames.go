@@ -85,8 +85,14 @@ func (h *Hamiltonian) Frames(opt FrameOptions) (*Frames, error) {
 
 // try works out what a choice of rotations gives.
 func (lb *labelling) try(p *Polynomial, rot rotations, opt FrameOptions) (*trial, error) {
-	t := &trial{rot: rot, poly: lb.rotate(p, rot)}
-	t.x = expand(lb, t.poly, !opt.Complex)
+	t := &trial{rot: rot}
+	var err error
+	if t.poly, err = lb.spell(lb.rotate(p, rot), writeOut); err != nil {
+		return nil, err
+	}
+	if t.x, err = expand(lb, t.poly, !opt.Complex); err != nil {
+		return nil, err
+	}
 	t.moves = movesOf(t.x)
 	relations := append(relationsOf(t.moves), lb.clockRelations()...)
 	var named []*charge
@@ -228,7 +234,13 @@ func (h *Hamiltonian) whyNot(lb *labelling, rot rotations, name string) string {
 		if err != nil {
 			continue
 		}
-		x := expand(lb, lb.rotate(p, rot), false)
+		if p, err = lb.spell(lb.rotate(p, rot), writeOut); err != nil {
+			continue
+		}
+		x, err := expand(lb, p, false)
+		if err != nil {
+			continue
+		}
 		if !c.conserved(relationsOf(movesOf(x))) {
 			called := term.Name
 			if called == "" {

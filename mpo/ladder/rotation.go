@@ -50,12 +50,33 @@ func (r *rotation) image(op OpID) []Weighted {
 	}
 	out, ok := r.cache[op]
 	if !ok {
-		if r.site.Kind() == KindSpin {
+		switch {
+		case op.compound():
+			out = r.compoundImage(op)
+		case r.site.Kind() == KindSpin:
 			out = r.spinImage(op)
-		} else {
+		default:
 			out = r.clockImage(op)
 		}
 		r.cache[op] = out
+	}
+	return out
+}
+
+// compoundImage is a sum kept together, as the compound was.
+func (r *rotation) compoundImage(op OpID) []Weighted {
+	var sum []Weighted
+	for _, x := range r.site.Parts(op) {
+		sum = append(sum, scaled(r.image(x.Op), x.Coef)...)
+	}
+	return r.together(mergeWeighted(sum))
+}
+
+// together makes one element of a sum where it can.
+func (r *rotation) together(w []Weighted) []Weighted {
+	out, err := r.site.ops.condense(w)
+	if err != nil {
+		return w
 	}
 	return out
 }
@@ -231,7 +252,14 @@ func (lb *labelling) rotate(p *Polynomial, rot rotations) *Polynomial {
 		ways := 1
 		for _, f := range factors {
 			images = append(images, by[lb.class[f.Site]].image(f.Op))
-			ways *= len(images[len(images)-1])
+			ways = min(ways*len(images[len(images)-1]), maxWays)
+		}
+		if ways > maxSpread { // a long string: its factors stay together
+			ways = 1
+			for k, f := range factors {
+				images[k] = by[lb.class[f.Site]].together(images[k])
+				ways *= len(images[k])
+			}
 		}
 		for way := range ways {
 			c, rest := coef, way

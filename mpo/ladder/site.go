@@ -188,14 +188,19 @@ func (s Site) StateLabels(state int) []int {
 	return s.ops.stateLabels(state)
 }
 
-// Raise returns by how much op changes each label, in the units of StateLabels (clock: 0..q-1).
+// Raise returns by how much op changes each label, in the units of StateLabels (clock: 0..q-1); of a compound, its first element.
 func (s Site) Raise(op OpID) []int { return s.ops.raise(s.ops.leader(op)) }
 
 // Odd reports whether op anticommutes with the odd operators of other sites.
 func (s Site) Odd(op OpID) bool { return s.ops.odd(s.ops.leader(op)) }
 
 // Diagonal reports whether op is diagonal in the site's states.
-func (s Site) Diagonal(op OpID) bool { return s.ops.diagonal(s.ops.leader(op)) }
+func (s Site) Diagonal(op OpID) bool {
+	return !slices.ContainsFunc(s.ops.spread(op), func(w Weighted) bool { return !s.ops.diagonal(w.Op) })
+}
+
+// Parts returns the sum of basis elements that op stands for: itself, unless it is a compound. The slice is shared.
+func (s Site) Parts(op OpID) []Weighted { return s.ops.spread(op) }
 
 // Mul returns a·b in the basis, like elements merged, sorted by element. The slice is shared: do not change it. Boson products beyond the
 // largest power panic.

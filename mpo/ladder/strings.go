@@ -67,7 +67,13 @@ func (f *Frames) StringsByCharge(p *Polynomial) ([]*Strings, error) {
 	if err != nil {
 		return nil, err
 	}
-	x := expand(lb, lb.rotate(p, rot), f.Real)
+	if p, err = lb.spell(lb.rotate(p, rot), f.settler(lb)); err != nil {
+		return nil, err
+	}
+	x, err := expand(lb, p, f.Real)
+	if err != nil {
+		return nil, err
+	}
 	w := newWriter(f, x)
 	for t := range x.coef {
 		w.term(t)

@@ -139,8 +139,9 @@ type expansion struct {
 	origin  []int32        // term of poly; nil: the same number
 }
 
-// expand writes p in local operators; in real ones if real is set.
-func expand(lb *labelling, p *Polynomial, real bool) *expansion {
+// expand writes p in local operators; in real ones if real is set, which makes two parts of a complex one. Products that would become too many
+// terms are an error.
+func expand(lb *labelling, p *Polynomial, real bool) (*expansion, error) {
 	x := &expansion{lb: lb, poly: p, tables: make(map[*siteClass]*localTable)}
 	for _, c := range lb.classes {
 		if x.tables[c] == nil {
@@ -158,7 +159,9 @@ func expand(lb *labelling, p *Polynomial, real bool) *expansion {
 		ways := 1
 		for _, f := range factors {
 			parts := x.tables[lb.at(int(f.Site))].of(f.Op)
-			ways *= len(parts)
+			if ways *= len(parts); ways > maxWays {
+				return nil, tooLong(p, t)
+			}
 			lists = append(lists, parts)
 		}
 		straight, several = straight && ways == 1, several || ways > 1
@@ -173,7 +176,7 @@ func expand(lb *labelling, p *Polynomial, real bool) *expansion {
 	if straight {
 		x.origin = nil
 	}
-	return x
+	return x, nil
 }
 
 // appendWay adds the term that takes one part of each factor; way counts through all choices.
