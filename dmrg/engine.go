@@ -27,6 +27,8 @@ type engine[T dense.Scalar] struct {
 	kry    krylov.Workspace[T]
 	onBond func(Position)
 	sweeps int
+
+	residual float64 // of the last eigenvector
 }
 
 // setting is what one sweep is told.
@@ -45,6 +47,7 @@ type outcome struct {
 	discarded float64 // largest of the left-going half
 	total     float64 // sum over the bonds of the left-going half
 	largest   int
+	residual  float64 // largest of the left-going half
 	change    float64 // largest norm by which an update changed its normalized two-site tensor, in the whole sweep
 }
 
@@ -109,6 +112,7 @@ func (e *engine[T]) step(ctx context.Context, i int, right bool, s setting, out 
 	out.discarded = max(out.discarded, discarded)
 	out.total += discarded
 	out.largest = max(out.largest, e.psi.Bond(i).Dim())
+	out.residual = max(out.residual, e.residual)
 	if e.onBond != nil {
 		e.onBond(Position{Sweep: e.sweeps, Bond: i, Bonds: e.psi.Len() - 1, Energy: energy})
 	}
@@ -177,6 +181,7 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 	if math.IsNaN(r.Value) || math.IsInf(r.Value, 0) {
 		return 0, fmt.Errorf("the eigensolver met a number that is not finite; look for couplings whose products overflow")
 	}
+	e.residual = r.Residual
 	return r.Value, nil
 }
 

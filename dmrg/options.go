@@ -42,6 +42,7 @@ type Sweep struct {
 	Mixing      float64 // weight of the perturbation, 0 in clean sweeps
 	Energy      float64
 	Discarded   float64 // largest discarded weight of a bond in the left-going half
+	Residual    float64 // largest norm of H psi - E psi left by a bond's eigensolver in the left-going half
 	LargestBond int
 	Seconds     float64
 }

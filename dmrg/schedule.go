@@ -194,7 +194,7 @@ func (s *search[T]) sweep(ctx context.Context, set setting) (Verdict, string, er
 		st.energies, st.discarded, st.largest, st.change = append(st.energies, out.energy), out.total, out.largest, out.change
 	}
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Mixing: set.mixing, Energy: out.energy, Discarded: out.discarded,
-		LargestBond: out.largest, Seconds: since(begin)}
+		Residual: out.residual, LargestBond: out.largest, Seconds: since(begin)}
 	s.sweeps = append(s.sweeps, w)
 	if s.opt.OnSweep != nil {
 		s.opt.OnSweep(w)
