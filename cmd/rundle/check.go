@@ -117,7 +117,7 @@ const forecastRate = 10e9
 func forecastTable(all []solve.Forecast) string {
 	var rows [][]string
 	for _, f := range all {
-		rows = append(rows, []string{fmt.Sprint(f.Bond), bytes(f.Memory), operations(f.Flops), duration(f.Flops / forecastRate)})
+		rows = append(rows, []string{fmt.Sprint(f.Bond), memory(f.Memory), operations(f.Flops), duration(f.Flops / forecastRate)})
 	}
 	return grid([]string{"bond dimension", "memory", "a sweep", "at 10 Gflop/s"}, rows, "bond dimension", "memory", "a sweep", "at 10 Gflop/s")
 }

@@ -23,7 +23,7 @@ type display interface {
 // newDisplay is a bar on a terminal, plain lines elsewhere.
 func newDisplay(w io.Writer) display {
 	if f, ok := w.(*os.File); ok && term.IsTerminal(int(f.Fd())) {
-		return newBar(f)
+		return &bar{out: f}
 	}
 	return &lines{w: w, now: time.Now}
 }
@@ -67,7 +67,8 @@ func progressText(p solve.Progress) string {
 
 // bar shows the updates of the present sweep, with the time left of it. How many sweeps it takes nobody knows before.
 type bar struct {
-	all   *mpb.Progress
+	out   *os.File
+	all   *mpb.Progress // nil before the first update: notes come first
 	one   *mpb.Bar
 	sweep int
 
@@ -75,11 +76,10 @@ type bar struct {
 	text string
 }
 
-func newBar(f *os.File) *bar {
-	return &bar{all: mpb.New(mpb.WithOutput(f), mpb.WithWidth(40), mpb.WithRefreshRate(200*time.Millisecond))}
-}
-
 func (b *bar) update(p solve.Progress) {
+	if b.all == nil {
+		b.all = mpb.New(mpb.WithOutput(b.out), mpb.WithWidth(40), mpb.WithRefreshRate(200*time.Millisecond))
+	}
 	b.mu.Lock()
 	b.text = progressText(p)
 	b.mu.Unlock()
@@ -117,5 +117,7 @@ func (b *bar) end() {
 
 func (b *bar) close() {
 	b.end()
-	b.all.Wait()
+	if b.all != nil {
+		b.all.Wait()
+	}
 }

@@ -43,7 +43,7 @@ func summarizeState(b *strings.Builder, r *runfolder.Result, s *runfolder.State)
 	if s.Reason != "" {
 		fmt.Fprintf(b, "          %s\n", s.Reason)
 	}
-	fmt.Fprintf(b, "state:    <H> = %s, bond dimension %d, %s, %s arithmetic, %s\n", digits(s.Energy, s.EnergyError), s.LargestBond,
+	fmt.Fprintf(b, "state:    <H> = %.12g, bond dimension %d, %s, %s arithmetic, %s\n", s.Energy, s.LargestBond,
 		counted(s.Sweeps, "sweep"), r.Model.Arithmetic, duration(s.Seconds))
 	if s.Variance != nil {
 		fmt.Fprintf(b, "variance: %.1e\n", *s.Variance)

@@ -65,9 +65,6 @@ func (c *console) dispatch(args []string) (int, error) {
 		fmt.Fprint(c.stdout, welcome)
 		return exitDone, nil
 	}
-	if word := firstWord(args); word != "" && !slices.Contains(commands, word) {
-		return 0, &usageError{fmt.Sprintf("unknown command %q", word), unknownHint(word)}
-	}
 	var g grammar
 	helped := false
 	parser, err := kong.New(&g,
@@ -82,7 +79,7 @@ func (c *console) dispatch(args []string) (int, error) {
 		return exitDone, nil
 	}
 	if err != nil {
-		return 0, usageOf(err)
+		return 0, usageOf(err, args)
 	}
 	if g.Threads < 0 || g.Threads > 4096 {
 		return 0, &usageError{fmt.Sprintf("--threads %d: expected 1 to 4096", g.Threads), ""}
@@ -97,17 +94,21 @@ func (c *console) dispatch(args []string) (int, error) {
 	return parsed.Selected().Target.Addr().Interface().(runner).run(c)
 }
 
-// firstWord returns the first argument that is no flag.
-func firstWord(args []string) string {
-	for i := 0; i < len(args); i++ {
-		switch a := args[i]; {
-		case a == "--threads":
-			i++
-		case !strings.HasPrefix(a, "-"):
-			return a
+// usageOf words an error of the parser.
+func usageOf(err error, args []string) error {
+	var parse *kong.ParseError
+	if errors.As(err, &parse) && parse.Context != nil && parse.Context.Selected() != nil {
+		return &usageError{err.Error(), fmt.Sprintf("rundle %s --help lists its arguments and flags", parse.Context.Selected().Name)}
+	}
+	if word, ok := strings.CutPrefix(err.Error(), "unexpected argument "); ok {
+		// The parser may add a guess; the word itself is among the arguments.
+		for _, a := range args {
+			if strings.HasPrefix(word, a) {
+				return &usageError{fmt.Sprintf("unknown command %q", a), unknownHint(a)}
+			}
 		}
 	}
-	return ""
+	return &usageError{err.Error(), "rundle --help lists commands and flags"}
 }
 
 func unknownHint(word string) string {
@@ -116,18 +117,6 @@ func unknownHint(word string) string {
 		hint += "; to solve a model: rundle solve " + word
 	}
 	return hint
-}
-
-// usageOf words an error of the parser.
-func usageOf(err error) error {
-	var parse *kong.ParseError
-	hint := "rundle --help lists commands and flags"
-	if errors.As(err, &parse) && parse.Context != nil {
-		if node := parse.Context.Selected(); node != nil {
-			hint = fmt.Sprintf("rundle %s --help lists its arguments and flags", node.Name)
-		}
-	}
-	return &usageError{err.Error(), hint}
 }
 
 // load reads a model file.

@@ -33,6 +33,7 @@ func (k solveCommand) run(c *console) (int, error) {
 	}
 	show := newDisplay(c.stderr)
 	opt.OnProgress = show.update
+	opt.OnNote = func(note string) { c.say("%s", note) }
 	out, err := solve.Run(c.ctx, m, opt)
 	show.close()
 	if err != nil {
@@ -43,12 +44,6 @@ func (k solveCommand) run(c *console) (int, error) {
 
 // report prints what a run came to and returns its exit code.
 func (c *console) report(out *solve.Outcome) (int, error) {
-	for _, note := range out.Notes {
-		c.say("note: %s", note)
-	}
-	if out.Moved != "" {
-		c.say("the run that was there is now %s", out.Moved)
-	}
 	if out.Stopped {
 		c.say("stopped; the same command goes on from %s", filepath.Join(out.Dir, runfolder.CheckpointName))
 		if c.json {
@@ -64,6 +59,7 @@ func (c *console) report(out *solve.Outcome) (int, error) {
 	}
 	switch {
 	case out.Limited() && !out.Returned:
+		c.say("the time is up; the same command goes on")
 		return exitStopped, nil
 	case !out.Result.Converged():
 		return exitNotConverged, nil

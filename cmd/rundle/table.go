@@ -63,8 +63,8 @@ func shortError(err float64) string { return strconv.FormatFloat(err, 'e', 1, 64
 // plain writes a number without needless digits.
 func plain(v float64) string { return strconv.FormatFloat(v, 'g', -1, 64) }
 
-// bytes writes an amount of memory.
-func bytes(n float64) string { return scaled(n, 1024, "B", "KiB", "MiB", "GiB", "TiB", "PiB") }
+// memory writes an amount of memory.
+func memory(n float64) string { return scaled(n, 1024, "B", "KiB", "MiB", "GiB", "TiB", "PiB") }
 
 // operations writes a number of floating-point operations.
 func operations(n float64) string {

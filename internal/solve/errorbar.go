@@ -12,40 +12,42 @@ const (
 	rounding   = 1e-13
 )
 
-// spreadBars returns the errors of values from those at the settled bond dimension before; w and before are the discarded weights.
-// See the package's comment.
-func spreadBars(now, earlier []complex128, w, before float64) []float64 {
+// quality is what a search knows of the state it found; energies are in units of the largest coupling.
+type quality struct {
+	weight   float64 // discarded weight
+	residual float64 // norm that the eigensolver left
+	energy   float64 // error of the energy
+}
+
+// spreadBars returns the errors of an observation from its values at the settled bond dimension before, whose discarded weight was
+// weight. See the package's comment.
+func spreadBars(now series, earlier []complex128, q quality, weight float64) []float64 {
 	ratio := mostRatio
-	if before > 0 {
-		ratio = math.Sqrt(w / before)
-	} else if w == 0 {
+	if weight > 0 {
+		ratio = math.Sqrt(q.weight / weight)
+	} else if q.weight == 0 {
 		ratio = leastRatio
 	}
 	ratio = min(mostRatio, max(leastRatio, ratio))
 	var squares float64
-	for i := range now {
-		d := cmplx.Abs(now[i] - earlier[i])
+	for i := range earlier {
+		d := cmplx.Abs(now.values[i] - earlier[i])
 		squares += d * d
 	}
-	floor := math.Sqrt(squares / float64(max(1, len(now))))
-	bars := make([]float64, len(now))
-	for i := range now {
-		d := max(floor, cmplx.Abs(now[i]-earlier[i]))
-		bars[i] = d*ratio/(1-ratio) + rounding*max(1, cmplx.Abs(now[i]))
+	typical := math.Sqrt(squares / float64(max(1, len(earlier))))
+	bars := make([]float64, len(earlier))
+	for i := range bars {
+		d := max(typical, cmplx.Abs(now.values[i]-earlier[i]))
+		bars[i] = d*ratio/(1-ratio) + now.norms[i]*(2*q.residual+rounding)
 	}
 	return bars
 }
 
-// weightBars returns the errors of values where one bond dimension is all there is: w is the discarded weight, energy the error of the
-// energy in units of the largest coupling.
-func weightBars(now []complex128, w, energy float64) []float64 {
-	size := 1.0
-	for _, v := range now {
-		size = max(size, cmplx.Abs(v))
-	}
-	bars := make([]float64, len(now))
+// loneBars returns the errors of an observation where one bond dimension is all there is.
+func loneBars(now series, q quality) []float64 {
+	bars := make([]float64, len(now.values))
 	for i := range bars {
-		bars[i] = 2*size*(math.Sqrt(w)+math.Sqrt(min(1, energy))) + rounding*size
+		bars[i] = now.norms[i] * (2*(math.Sqrt(q.weight)+math.Sqrt(min(1, q.energy))+q.residual) + rounding)
 	}
 	return bars
 }

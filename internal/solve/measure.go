@@ -17,6 +17,7 @@ type series struct {
 	hermitian bool
 	at        []runfolder.At
 	values    []complex128
+	norms     []float64 // bounds on the norms of the operators
 }
 
 // measure takes all observations of a state but the entanglement, in their order.
@@ -47,6 +48,9 @@ func measureValues(ctx context.Context, s *mps.State, o modelfile.Observation) (
 		return series{}, err
 	}
 	one := series{name: o.Name, hermitian: f.Imag == nil, values: make([]complex128, len(f.Values))}
+	if one.norms, err = normsOf(s, o.Term); err != nil {
+		return one, err
+	}
 	for i, v := range f.Values {
 		one.at = append(one.at, placeOf(f.At[i], ""))
 		if f.Imag == nil {
@@ -69,16 +73,39 @@ func measureCorrelations(ctx context.Context, s *mps.State, o modelfile.Observat
 		values = p.Connected()
 	}
 	one := series{name: o.Name, hermitian: p.Hermitian}
+	first, err := normsOf(s, o.Term)
+	if err != nil {
+		return one, err
+	}
+	second, err := normsOf(s, o.Second)
+	if err != nil {
+		return one, err
+	}
 	for x, row := range values {
 		for y, v := range row {
 			at := placeOf(p.AtFirst[x], "")
 			for name, value := range placeOf(p.AtSecond[y], "'") {
 				at[name] = value
 			}
-			one.at, one.values = append(one.at, at), append(one.values, v)
+			one.at, one.values, one.norms = append(one.at, at), append(one.values, v), append(one.norms, first[x]*second[y])
 		}
 	}
 	return one, nil
+}
+
+// normsOf bounds the norm of a formula at each of its places.
+func normsOf(s *mps.State, t ladder.Term) ([]float64, error) {
+	places, err := s.Scope().Places(t)
+	if err != nil {
+		return nil, err
+	}
+	norms := make([]float64, len(places))
+	for i, p := range places {
+		if norms[i], err = normBound(p.Poly, s.Frames()); err != nil {
+			return nil, err
+		}
+	}
+	return norms, nil
 }
 
 // placeOf turns the indices of a place into those of a result.

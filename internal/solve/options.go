@@ -15,7 +15,8 @@ type Options struct {
 	Threads    int            // workers; 0: GOMAXPROCS
 	Memory     int64          // cap on the bytes of state and environments; 0: what the model says
 	Version    string         // of the program, for the result
-	OnProgress func(Progress) // called often, from one goroutine
+	OnProgress func(Progress) // called often, from one goroutine; nil: nothing is told
+	OnNote     func(string)   // called with what the user should know, before the work that it is about; nil: nothing is told
 }
 
 // Phase says what a run does.
@@ -47,7 +48,6 @@ type Outcome struct {
 	Returned bool              // the folder held the results already
 	Resumed  bool              // the search went on from a checkpoint
 	Moved    string            // where Fresh moved the run that was there; "" if none
-	Notes    []string          // what the caller should be told
 }
 
 // Limited tells whether the search ended at its cap on time: the same call goes on.

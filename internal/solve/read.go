@@ -74,10 +74,10 @@ func reread(ctx context.Context, s *runfolder.State, psi *mps.State, m *modelfil
 		}
 		return refused(fmt.Errorf("%s: %w", m.File, err))
 	}
-	unit := largestCoefficient(m.Hamiltonian.Poly)
+	q := quality{weight: s.DiscardedWeight, energy: s.EnergyError / largestCoefficient(m.Hamiltonian.Poly)}
 	bars := make([][]float64, len(all))
 	for i := range all {
-		bars[i] = weightBars(all[i].values, s.DiscardedWeight, s.EnergyError/unit)
+		bars[i] = loneBars(all[i], q)
 	}
 	s.Observations = observations(all, bars)
 	s.Entanglement, err = entangled(psi, m.Observe)

@@ -88,11 +88,14 @@ func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyE
 	if err != nil {
 		return nil, err
 	}
+	q := quality{weight: found.DiscardedWeight, energy: energyError / largestCoefficient(r.model.Hamiltonian.Poly)}
+	if n := len(found.Sweeps); n > 0 {
+		q.residual = found.Sweeps[n-1].Residual / largestCoefficient(r.model.Hamiltonian.Poly)
+	}
 	bars := make([][]float64, len(now))
 	if before == nil {
-		unit := r.coupling()
 		for i := range now {
-			bars[i] = weightBars(now[i].values, found.DiscardedWeight, energyError/unit)
+			bars[i] = loneBars(now[i], q)
 		}
 		return observations(now, bars), nil
 	}
@@ -104,44 +107,7 @@ func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyE
 		return nil, err
 	}
 	for i := range now {
-		bars[i] = spreadBars(now[i].values, earlier[i].values, found.DiscardedWeight, mark.Discarded)
+		bars[i] = spreadBars(now[i], earlier[i].values, q, mark.Discarded)
 	}
 	return observations(now, bars), nil
-}
-
-// coupling is the largest coefficient of the Hamiltonian.
-func (r *run) coupling() float64 { return largestCoefficient(r.model.Hamiltonian.Poly) }
-
-func largestCoefficient(p *ladder.Polynomial) float64 {
-	largest := 0.0
-	for i := range p.NumTerms() {
-		c, _ := p.Term(i)
-		largest = max(largest, math.Hypot(real(c), imag(c)))
-	}
-	return largest
-}
-
-// looseBound bounds the distance of an energy from the ground energy, whatever the state: no eigenvalue lies below minus the sum of the norms of the terms.
-func looseBound(h *ladder.Hamiltonian, f *ladder.Frames, energy float64) (float64, error) {
-	s, err := f.Strings(h.Poly)
-	if err != nil {
-		return 0, err
-	}
-	var lowest float64
-	for t, c := range s.Coef {
-		norm := math.Hypot(real(c), imag(c))
-		for _, x := range s.Factors[s.Start[t]:s.Start[t+1]] {
-			norm *= frobenius(s.Tables[x.Site].Matrices[x.Op])
-		}
-		lowest -= norm
-	}
-	return max(0, energy-lowest), nil
-}
-
-func frobenius(m []complex128) float64 {
-	var sum float64
-	for _, z := range m {
-		sum += real(z)*real(z) + imag(z)*imag(z)
-	}
-	return math.Sqrt(sum)
 }

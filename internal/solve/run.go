@@ -40,6 +40,9 @@ func Run(ctx context.Context, m *modelfile.Model, opt Options) (*Outcome, error)
 	}
 	defer folder.Close()
 	r := &run{model: m, opt: opt, origin: origin, folder: folder, used: used, out: &Outcome{Dir: folder.Dir(), Moved: folder.Moved()}}
+	if r.out.Moved != "" {
+		r.note("the run that was there is now %s", r.out.Moved)
+	}
 	if done, err := r.returned(); done || err != nil {
 		return r.out, err
 	}
@@ -77,6 +80,12 @@ func (r *run) returned() (bool, error) {
 	return true, nil
 }
 
+func (r *run) note(format string, args ...any) {
+	if r.opt.OnNote != nil {
+		r.opt.OnNote(fmt.Sprintf(format, args...))
+	}
+}
+
 // memory is the cap on memory: the caller's, else the model's.
 func (r *run) memory() int64 {
 	if r.opt.Memory > 0 {
@@ -98,13 +107,16 @@ func (r *run) solve(parent context.Context, start *mps.State) error {
 	ctx, stop := context.WithCancelCause(parent)
 	defer stop(nil)
 	check, saved, notes := openCheckpoint(r.folder)
-	r.out.Notes = append(r.out.Notes, notes...)
+	for _, n := range notes {
+		r.note("%s", n)
+	}
 	sector := maps.Clone(r.model.Sector)
 	if sector == nil {
 		sector = ladder.Sector{}
 	}
 	if saved != nil {
 		start, r.out.Resumed = saved, true
+		r.note("going on from the checkpoint of sweep %d", check.Sweeps)
 	}
 	if start != nil {
 		stay(sector, start)
