@@ -1,19 +1,32 @@
 package ladder
 
 import (
+	"math/cmplx"
 	"math/rand/v2"
+	"strings"
 	"sync"
 	"testing"
 
 	"github.com/stretchr/testify/require"
 )
 
-// compoundOn is a random compound on a site, from even or from odd elements.
-func (f form) compoundOn(rng *rand.Rand, site int, odd bool) *Polynomial {
+// compoundOn is a random compound on a site: of elements that raise by an even number (0), an odd one (1), or any (2).
+func (f form) compoundOn(rng *rand.Rand, site, mode int) *Polynomial {
 	s := f.l.Site(site)
 	var w []Weighted
 	for op := OpID(0); op < OpID(s.Dim()*s.Dim()); op++ {
-		if s.Odd(op) == odd && rng.IntN(3) > 0 {
+		raise := 0
+		for _, r := range s.Raise(op) {
+			raise += r
+		}
+		if s.Kind() == KindSpin {
+			raise /= 2
+		}
+		odd := mod(raise, 2) == 1
+		if odd != (mode == 1) && mode < 2 || mode == 2 && s.Odd(op) {
+			continue
+		}
+		if rng.IntN(4) > 0 {
 			w = append(w, Weighted{complex(rng.NormFloat64(), float64(rng.IntN(2))*rng.NormFloat64()), op})
 		}
 	}
@@ -34,11 +47,29 @@ func TestCompoundsPassFrames(t *testing.T) {
 	clocks := newForm(t, 3, Leg("a", Clock(3)))
 	pairs := fermions.hamiltonian(hermitian(fermions.mul(fermions.op("c", "+", "a", 0), fermions.op("c", "+", "a", 1)).Scale(1i)),
 		hermitian(fermions.mul(fermions.op("c_up", "+", "b", 0), fermions.op("c_up", "", "b", 1)).Scale(1+1i)))
+	pair := func(f form, symbol string) *Hamiltonian {
+		var ps []*Polynomial
+		for j := range f.l.Rungs() - 1 {
+			ps = append(ps, hermitian(f.mul(f.op(symbol, "+", "a", j), f.op(symbol, "-", "a", j+1))), hermitian(f.mul(f.op(symbol, "+", "a", j), f.op(symbol, "+", "a", j+1)).Scale(cmplx.Rect(1, 0.7))))
+		}
+		return f.hamiltonian(ps...)
+	}
+	chain := newForm(t, 3, Leg("a", Fermion()))
+	majorana := func(f form) *Hamiltonian {
+		var ps []*Polynomial
+		for j := range 2 {
+			ps = append(ps, hermitian(f.mul(f.op("c", "+", "a", j), f.op("c", "", "a", j+1))), hermitian(f.mul(f.op("c", "+", "a", j), f.op("c", "+", "a", j+1)).Scale(cmplx.Rect(1, 0.7))))
+		}
+		return f.hamiltonian(ps...)
+	}
 	for _, c := range []struct {
 		name string
 		form form
 		h    *Hamiltonian
 	}{
+		{"spins with gauge phases", halves, pair(halves, "S")},
+		{"large spins with gauge phases", spins, pair(spins, "S")},
+		{"fermions with gauge phases", chain, majorana(chain)},
 		{"spins, turned", spins, spins.isingZ(3)},
 		{"spins, as written", spins, spins.isingX(3)},
 		{"spins with one charge", spins, spins.xyz(3, 1, 1, 0.5)},
@@ -51,12 +82,13 @@ func TestCompoundsPassFrames(t *testing.T) {
 		t.Run(c.name, func(t *testing.T) {
 			f, err := c.h.Frames(FrameOptions{})
 			require.NoError(t, err)
+			require.Equal(t, strings.HasSuffix(c.name, "gauge phases"), f.Real && f.Sites[0].Angles != nil && f.Sites[0].Angles[0] != 0)
 			rng := rand.New(rand.NewPCG(3, 4))
 			for range 4 {
 				p := One(c.form.l)
 				for i := range c.form.l.Sites() {
 					if rng.IntN(4) > 0 {
-						p = c.form.mul(p, c.form.compoundOn(rng, i, c.form.l.Site(i).Odd(1) && rng.IntN(2) == 0))
+						p = c.form.mul(p, c.form.compoundOn(rng, i, rng.IntN(3)))
 					}
 				}
 				requireFrame(t, f, p)
@@ -78,10 +110,10 @@ func TestLongStringsPassFrames(t *testing.T) {
 		for _, axis := range []string{"x", "z"} {
 			p := polynomial(t, s, Term{Formula: "prod(k=0..63, 2*S^" + axis + "[a,k])"})
 			require.Equal(t, 1, p.NumTerms())
-			strings, err := f.Strings(p)
+			parts, err := f.Strings(p)
 			require.NoError(t, err)
-			require.Len(t, strings.Coef, 1)
-			require.True(t, strings.Real)
+			require.Len(t, parts.Coef, 1)
+			require.True(t, parts.Real)
 		}
 	}
 	// With S^z conserved each S^x is two parts of different charge.
