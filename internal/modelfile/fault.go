@@ -29,9 +29,10 @@ func (e *Error) Error() string {
 	return s
 }
 
-// Caret shows the line at fault and, below it, a caret under the place; "" where the file has no such line.
+// Caret shows the line at fault and, below it, a caret under the place; "" where the file has no such line, or it is no text.
 func (e *Error) Caret() string {
-	if e.text == "" {
+	binary := func(r rune) bool { return r < ' ' && r != '\t' || r == utf8.RuneError }
+	if e.text == "" || strings.ContainsFunc(e.text, binary) {
 		return ""
 	}
 	runes := []rune(e.text)
