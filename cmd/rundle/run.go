@@ -45,7 +45,11 @@ type runner interface {
 // run is the whole program but for the process around it.
 func run(args []string, stdout, stderr io.Writer) int {
 	c := &console{stdout: stdout, stderr: stderr, json: slices.Contains(args, "--json")}
-	code, err := guard(stderr, func() (int, error) { return c.dispatch(args) })
+	return c.finish(guard(stderr, func() (int, error) { return c.dispatch(args) }))
+}
+
+// finish tells of an error and returns the exit code. A panic has been told of already.
+func (c *console) finish(code int, err error) int {
 	if err == nil {
 		return code
 	}
