@@ -18,6 +18,7 @@ import (
 // engine holds a state, its environments and the workspaces of one search.
 type engine[T dense.Scalar] struct {
 	op     *mpo.Operator[T]
+	plan   *mpo.Planner[T]
 	psi    *mps.Chain[T]
 	left   []*block.Tensor[T] // left[i]: everything left of site i
 	right  []*block.Tensor[T] // right[i]: everything right of site i
@@ -52,7 +53,7 @@ type outcome struct {
 }
 
 func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], threads int, seed uint64) *engine[T] {
-	e := &engine[T]{op: op, psi: psi, pool: task.New(threads), rng: rand.New(rand.NewPCG(seed, 0x72756e646c65))}
+	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(threads), rng: rand.New(rand.NewPCG(seed, 0x72756e646c65))}
 	n := psi.Len()
 	e.left, e.right = make([]*block.Tensor[T], n), make([]*block.Tensor[T], n)
 	psi.Canonicalize(0, e.pool)
@@ -67,12 +68,16 @@ func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], threads i
 // growLeft makes left[i+1] from left[i]; growRight makes right[i-1] from right[i].
 func (e *engine[T]) growLeft(i int) {
 	a := e.psi.Sites[i]
-	e.left[i+1] = mpo.GrowLeft(e.op, i, e.left[i], a, a, &e.work, e.pool)
+	g := e.plan.Left(i, e.left[i].Structure, a.Structure, a.Structure)
+	e.left[i+1] = block.New[T](g.Out)
+	g.Run(e.left[i+1], e.left[i], a, a, &e.work, e.pool)
 }
 
 func (e *engine[T]) growRight(i int) {
 	a := e.psi.Sites[i]
-	e.right[i-1] = mpo.GrowRight(e.op, i, e.right[i], a, a, &e.work, e.pool)
+	g := e.plan.Right(i, e.right[i].Structure, a.Structure, a.Structure)
+	e.right[i-1] = block.New[T](g.Out)
+	g.Run(e.right[i-1], e.right[i], a, a, &e.work, e.pool)
 }
 
 // sweep goes right and left once over all bonds. On a cancelled context it stops between two bonds and returns its error;
@@ -122,7 +127,7 @@ func (e *engine[T]) step(ctx context.Context, i int, right bool, s setting, out 
 // update optimizes sites i and i+1 together (White 1992) and moves the orthogonality centre on.
 func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, change float64, err error) {
 	theta := block.Contract(e.psi.Sites[i], e.psi.Sites[i+1], []int{2}, []int{0})
-	h := mpo.Project(e.op, i, 2, e.left[i], e.right[i+1], theta.Structure)
+	h := e.plan.Project(i, 2, e.left[i], e.right[i+1], theta.Structure)
 	if s.noise > 0 {
 		e.shake(theta, s.noise)
 	}
@@ -168,7 +173,7 @@ func distance[T dense.Scalar](x, y *block.Tensor[T]) float64 {
 // single is the ladder of one site.
 func (e *engine[T]) single(s setting) (outcome, error) {
 	theta := e.psi.Sites[0]
-	h := mpo.Project(e.op, 0, 1, e.left[0], e.right[0], theta.Structure)
+	h := e.plan.Project(0, 1, e.left[0], e.right[0], theta.Structure)
 	dense.Random(e.rng, theta.Block(0))
 	s.vectors = 200
 	energy, err := e.lowest(h, theta, s)

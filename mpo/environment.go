@@ -2,6 +2,7 @@ package mpo
 
 import (
 	"fmt"
+	"slices"
 
 	"rundle/internal/dense"
 	"rundle/internal/task"
@@ -42,14 +43,13 @@ func RightEdge[T dense.Scalar](o *Operator[T], bra, ket block.Charge) *block.Ten
 // Growth is the planned step of an environment across one site. A plan may be run as long as the structures of all
 // that enters stay the same.
 type Growth[T dense.Scalar] struct {
-	Out     *block.Structure
-	net     network[T]
-	left    bool
-	entries int
+	Out  *block.Structure
+	net  network[T]
+	left bool
 }
 
 // Flops returns the operations of one run.
-func (g *Growth[T]) Flops() float64 { return g.net.firstFlops + g.net.lastFlops + 2*g.net.middleWork }
+func (g *Growth[T]) Flops() float64 { return g.net.flops() }
 
 // Run overwrites out.Data (of structure g.Out) with the environment one site further on.
 func (g *Growth[T]) Run(out, env, bra, ket *block.Tensor[T], ws *Workspace[T], pool *task.Pool) {
@@ -66,7 +66,7 @@ func (g *Growth[T]) Run(out, env, bra, ket *block.Tensor[T], ws *Workspace[T], p
 // GrowLeft returns the left environment one site to the right of env: env, the site tensors bra and ket (axes left In,
 // site In, right Out) and the MPO of the site.
 func GrowLeft[T dense.Scalar](o *Operator[T], site int, env, bra, ket *block.Tensor[T], ws *Workspace[T], pool *task.Pool) *block.Tensor[T] {
-	g := PlanLeft(o, site, env.Structure, bra.Structure, ket.Structure)
+	g := NewPlanner(o).Left(site, env.Structure, bra.Structure, ket.Structure)
 	out := block.New[T](g.Out)
 	g.Run(out, env, bra, ket, ws, pool)
 	return out
@@ -74,234 +74,84 @@ func GrowLeft[T dense.Scalar](o *Operator[T], site int, env, bra, ket *block.Ten
 
 // GrowRight returns the right environment one site to the left of env.
 func GrowRight[T dense.Scalar](o *Operator[T], site int, env, bra, ket *block.Tensor[T], ws *Workspace[T], pool *task.Pool) *block.Tensor[T] {
-	g := PlanRight(o, site, env.Structure, bra.Structure, ket.Structure)
+	g := NewPlanner(o).Right(site, env.Structure, bra.Structure, ket.Structure)
 	out := block.New[T](g.Out)
 	g.Run(out, env, bra, ket, ws, pool)
 	return out
 }
 
-// entryGroup collects MPO entries between fixed sectors of both bonds and both physical axes.
-type groupKey struct{ left, right, out, in int32 }
-
-// localEntry is an MPO entry with its indices counted inside their sectors.
-type localEntry[T dense.Scalar] struct {
-	left, right, out, in int
-	value                T
-}
-
-// groupEntries sorts entries of a (possibly multi-site) MPO into sector groups; out and in are states of the table.
-func groupEntries[T dense.Scalar](entries []Entry[T], left, right block.Axis, phys stateTable) map[groupKey][]localEntry[T] {
-	l, r := newStateTable(left), newStateTable(right)
-	m := make(map[groupKey][]localEntry[T])
-	for _, e := range entries {
-		k := groupKey{l.sector[e.Left], r.sector[e.Right], phys.sector[e.Out], phys.sector[e.In]}
-		m[k] = append(m[k], localEntry[T]{int(l.inner[e.Left]), int(r.inner[e.Right]), int(phys.inner[e.Out]), int(phys.inner[e.In]), e.Value})
-	}
-	return m
-}
-
-// pairKey names a block of the first pass: a block of the tensor with a sector of the MPO bond.
-type pairKey struct{ block, sector int }
-
-// PlanLeft plans the growth of a left environment: out(r', w, r) = sum conj(bra(l', s', r')) W(a, w; s', s) env(l', a, l) ket(l, s, r).
-func PlanLeft[T dense.Scalar](o *Operator[T], site int, env, bra, ket *block.Structure) *Growth[T] {
-	wl, wr := o.Bonds[site].Axis(block.In), o.Bonds[site+1].Axis(block.In)
-	phys := newStateTable(o.Phys[site])
-	groups := groupEntries(o.Sites[site], wl, wr, phys)
-	out := block.NewStructure(o.Group, []block.Axis{bra.Axes[2], wr, ket.Axes[2].Reversed()}, block.Charge{})
+// Left plans the growth of a left environment: out(r', w, r) = sum conj(bra(l', s', r')) W(a, w; s', s) env(l', a, l) ket(l, s, r).
+func (p *Planner[T]) Left(site int, env, bra, ket *block.Structure) *Growth[T] {
+	w := p.site(site)
+	mustMeet("left", site, env.Axes, []block.Axis{bra.Axes[0].Reversed(), w.wl, ket.Axes[0]})
+	out := block.NewStructure(w.group, []block.Axis{bra.Axes[2], w.wr, ket.Axes[2].Reversed()}, block.Charge{})
 	g := &Growth[T]{Out: out, left: true}
 	var x, y slab
-
-	// Pass 1: rows (l', a), columns (s, r).
-	pairs := make(map[pairKey]int)
-	for t, kb := range ket.Blocks {
-		ql := kb.Sectors[0]
-		for a := range wl.Sectors {
-			lp, ok := env.Axes[0].Find(o.Group.Add(ket.Axes[0].Sectors[ql].Charge, wl.Sectors[a].Charge))
-			if !ok {
-				continue
-			}
-			e, ok := env.Find(lp, a, ql)
-			if !ok {
-				continue
-			}
-			eb := env.Blocks[e]
-			m, n, k := eb.Shape[0]*eb.Shape[1], kb.Shape[1]*kb.Shape[2], kb.Shape[0]
-			at := x.take(m * n)
-			pairs[pairKey{t, a}] = at
-			g.net.first = append(g.net.first, gemmTask{a: eb.Offset, b: kb.Offset, c: at, m: m, n: n, k: k, lda: k, ldb: n, ldc: n})
-		}
-	}
-	// Passes 2 and 3: for each result block the bra blocks that end in r', rows (l', s') of y, columns (w, r).
+	source := newLeftSource(&g.net, w, env, asKet(ket), &x)
+	// For each result block the bra blocks that end in r', rows (l', s') of y, columns (w, r).
 	byRight := blocksByAxis(bra, 2)
-	for _, ob := range out.Blocks {
-		rp, w, r := ob.Sectors[0], ob.Sectors[1], ob.Sectors[2]
-		nw, n := ob.Shape[1], ob.Shape[2]
-		var chain []gemmTask
-		for _, b := range byRight[rp] {
-			bb := bra.Blocks[b]
-			lp, sp := bb.Sectors[0], bb.Sectors[1]
-			m, d := bb.Shape[0], bb.Shape[1]
-			var moves []moveTask[T]
-			for s := range ket.Axes[1].Sectors {
-				q := o.Group.Sub(ket.Axes[2].Sectors[r].Charge, ket.Axes[1].Sectors[s].Charge)
-				l, ok := ket.Axes[0].Find(q)
-				if !ok {
-					continue
-				}
-				a, ok := wl.Find(o.Group.Sub(bra.Axes[0].Sectors[lp].Charge, q))
-				if !ok {
-					continue
-				}
-				group := groups[groupKey{int32(a), int32(w), int32(sp), int32(s)}]
-				if len(group) == 0 {
-					continue
-				}
-				t, ok := ket.Find(l, s, r)
-				if !ok {
-					continue
-				}
-				src, ok := pairs[pairKey{t, a}]
-				if !ok {
-					continue
-				}
-				na, ds := wl.Sectors[a].Dim, ket.Blocks[t].Shape[1]
-				for _, e := range group {
-					moves = append(moves, moveTask[T]{src: src + (e.left*ds+e.in)*n, dst: (e.out*nw + e.right) * n,
-						rows: m, cols: n, lds: na * ds * n, ldd: d * nw * n, value: e.value})
-				}
-			}
-			if len(moves) == 0 {
+	for i := range out.Blocks {
+		ob := &out.Blocks[i]
+		to, v, r := ob.Sectors[0], ob.Sectors[1], ob.Sectors[2]
+		cols := ob.Shape[1] * ob.Shape[2]
+		for _, b := range byRight[to] {
+			bb := &bra.Blocks[b]
+			if !source.moves(&g.net, bb.Sectors[0], v, bb.Sectors[1], r) {
 				continue
 			}
-			at := y.take(m * d * nw * n)
-			g.net.middle = append(g.net.middle, finishPiece(at, m*d*nw*n, moves))
-			chain = append(chain, gemmTask{a: bb.Offset, b: at, c: ob.Offset, m: bb.Shape[2], n: nw * n, k: m * d,
-				lda: bb.Shape[2], ldb: nw * n, ldc: nw * n, opA: dense.ConjTrans, add: len(chain) > 0})
+			rows := bb.Shape[0] * bb.Shape[1]
+			at := g.net.piece(&y, rows*cols)
+			g.net.chained(gemmTask{a: bb.Offset, b: at, c: ob.Offset, m: bb.Shape[2], n: cols, k: rows,
+				lda: bb.Shape[2], ldb: cols, ldc: cols, opA: dense.ConjTrans})
 		}
-		if len(chain) > 0 {
-			g.net.last = append(g.net.last, chain)
-		}
+		g.net.endChain()
 	}
-	g.net.xSize, g.net.ySize = x.size, y.size
-	g.net.seal()
+	g.net.seal(x, y)
 	return g
 }
 
-// PlanRight plans the growth of a right environment: out(a, l, l') = sum W(a, w; s', s) ket(l, s, r) env(w, r, r') conj(bra(l', s', r')).
-func PlanRight[T dense.Scalar](o *Operator[T], site int, env, bra, ket *block.Structure) *Growth[T] {
-	wl, wr := o.Bonds[site].Axis(block.In), o.Bonds[site+1].Axis(block.In)
-	phys := newStateTable(o.Phys[site])
-	groups := groupEntries(o.Sites[site], wl, wr, phys)
-	out := block.NewStructure(o.Group, []block.Axis{wl, ket.Axes[0], bra.Axes[0].Reversed()}, block.Charge{})
+// Right plans the growth of a right environment: out(a, l, l') = sum W(a, w; s', s) ket(l, s, r) env(w, r, r') conj(bra(l', s', r')).
+func (p *Planner[T]) Right(site int, env, bra, ket *block.Structure) *Growth[T] {
+	w := p.site(site)
+	mustMeet("right", site, env.Axes, []block.Axis{w.wr, ket.Axes[2].Reversed(), bra.Axes[2]})
+	out := block.NewStructure(w.group, []block.Axis{w.wl, ket.Axes[0], bra.Axes[0].Reversed()}, block.Charge{})
 	g := &Growth[T]{Out: out}
 	var x, y slab
-
-	// Pass 1: rows (l, s), columns (w, r').
-	pairs := make(map[pairKey]int)
-	for t, kb := range ket.Blocks {
-		at, cols := firstRight(&g.net, o.Group, ket, env, wr, t, 2, kb.Shape[0]*kb.Shape[1], kb.Shape[2], &x)
-		for w, a := range at {
-			if cols[w] > 0 {
-				pairs[pairKey{t, w}] = a
-			}
-		}
-	}
+	source := newRightSource(&g.net, w, env, asKet(ket), &x)
+	down := steps(w.group, bra.Axes[2], -1, w.wr, ket.Axes[2])
 	byLeft := blocksByAxis(bra, 0)
-	for _, ob := range out.Blocks {
-		a, l, lp := ob.Sectors[0], ob.Sectors[1], ob.Sectors[2]
-		na, m := ob.Shape[0], ob.Shape[1]
-		var chain []gemmTask
-		for _, b := range byLeft[lp] {
-			bb := bra.Blocks[b]
-			sp, rp := bb.Sectors[1], bb.Sectors[2]
-			d, n := bb.Shape[1], bb.Shape[2]
-			var moves []moveTask[T]
-			for s := range ket.Axes[1].Sectors {
-				q := o.Group.Add(ket.Axes[0].Sectors[l].Charge, ket.Axes[1].Sectors[s].Charge)
-				r, ok := ket.Axes[2].Find(q)
-				if !ok {
-					continue
-				}
-				w, ok := wr.Find(o.Group.Sub(bra.Axes[2].Sectors[rp].Charge, q))
-				if !ok {
-					continue
-				}
-				group := groups[groupKey{int32(a), int32(w), int32(sp), int32(s)}]
-				if len(group) == 0 {
-					continue
-				}
-				t, ok := ket.Find(l, s, r)
-				if !ok {
-					continue
-				}
-				src, ok := pairs[pairKey{t, w}]
-				if !ok {
-					continue
-				}
-				nw, ds := wr.Sectors[w].Dim, ket.Blocks[t].Shape[1]
-				for _, e := range group {
-					moves = append(moves, moveTask[T]{src: src + (e.in*nw+e.right)*n, dst: (e.left*m*d + e.out) * n,
-						rows: m, cols: n, lds: ds * nw * n, ldd: d * n, value: e.value})
-				}
-			}
-			if len(moves) == 0 {
+	for i := range out.Blocks {
+		ob := &out.Blocks[i]
+		a, l, to := ob.Sectors[0], ob.Sectors[1], ob.Sectors[2]
+		rows := ob.Shape[0] * ob.Shape[1]
+		for _, b := range byLeft[to] {
+			bb := &bra.Blocks[b]
+			if !source.moves(&g.net, down, a, bb.Sectors[1], l, bb.Sectors[2]) {
 				continue
 			}
-			at := y.take(na * m * d * n)
-			g.net.middle = append(g.net.middle, finishPiece(at, na*m*d*n, moves))
-			chain = append(chain, gemmTask{a: at, b: bb.Offset, c: ob.Offset, m: na * m, n: bb.Shape[0], k: d * n,
-				lda: d * n, ldb: d * n, ldc: bb.Shape[0], opB: dense.ConjTrans, add: len(chain) > 0})
+			cols := bb.Shape[1] * bb.Shape[2]
+			at := g.net.piece(&y, rows*cols)
+			g.net.chained(gemmTask{a: at, b: bb.Offset, c: ob.Offset, m: rows, n: bb.Shape[0], k: cols,
+				lda: cols, ldb: cols, ldc: bb.Shape[0], opB: dense.ConjTrans})
 		}
-		if len(chain) > 0 {
-			g.net.last = append(g.net.last, chain)
-		}
+		g.net.endChain()
 	}
-	g.net.xSize, g.net.ySize = x.size, y.size
-	g.net.seal()
+	g.net.seal(x, y)
 	return g
 }
 
-// firstRight plans the products of tensor block t, seen as a matrix (rows × cols) whose columns are its last axis, with every
-// sector w of a right environment: the result (rows) × (w, r') for each w, in x. It returns the offsets and the r' dimensions
-// (0: no such block).
-func firstRight[T dense.Scalar](net *network[T], g block.Group, ket, env *block.Structure, wr block.Axis, t, last, rows, cols int, x *slab) (at, dims []int) {
-	kb := ket.Blocks[t]
-	r := kb.Sectors[last]
-	at, dims = make([]int, len(wr.Sectors)), make([]int, len(wr.Sectors))
-	for w := range wr.Sectors {
-		rp, ok := env.Axes[2].Find(g.Add(ket.Axes[last].Sectors[r].Charge, wr.Sectors[w].Charge))
-		if !ok {
-			continue
-		}
-		e, ok := env.Find(w, r, rp)
-		if !ok {
-			continue
-		}
-		eb := env.Blocks[e]
-		nw, n := eb.Shape[0], eb.Shape[2]
-		at[w], dims[w] = x.take(rows*nw*n), n
-		for i := 0; i < nw; i++ {
-			net.first = append(net.first, gemmTask{a: kb.Offset, b: eb.Offset + i*cols*n, c: at[w] + i*n,
-				m: rows, n: n, k: cols, lda: cols, ldb: n, ldc: nw * n})
-		}
+// mustMeet panics unless an environment fits the bonds that it stands on.
+func mustMeet(side string, site int, env, want []block.Axis) {
+	if !slices.EqualFunc(env, want, block.Axis.Equal) {
+		panic(fmt.Sprintf("mpo: %s environment with the axes %v at site %d; the sites have %v", side, env, site, want))
 	}
-	return at, dims
-}
-
-// finishPiece moves the targets of the moves, counted from the start of their piece, to the piece's place in the slab.
-func finishPiece[T dense.Scalar](start, size int, moves []moveTask[T]) piece[T] {
-	for i := range moves {
-		moves[i].dst += start
-	}
-	return piece[T]{start: start, size: size, moves: moves}
 }
 
 // blocksByAxis lists the blocks of a structure by their sector on one axis.
 func blocksByAxis(s *block.Structure, axis int) [][]int {
 	by := make([][]int, len(s.Axes[axis].Sectors))
-	for i, b := range s.Blocks {
-		q := b.Sectors[axis]
+	for i := range s.Blocks {
+		q := s.Blocks[i].Sectors[axis]
 		by[q] = append(by[q], i)
 	}
 	return by

@@ -187,7 +187,7 @@ func testPerturbation[T dense.Scalar](t *testing.T, o *Operator[T], p *Projected
 			nw := o.Bonds[p.first+1].Dim()
 			z := make([]complex128, nl*d1*nw*d2*nr)
 			for _, e := range o.Sites[p.first] {
-				if !p.crossing(e.Right) {
+				if !o.Bonds[p.first+1].crosses(e.Right) {
 					continue
 				}
 				for lp := range nl {
@@ -212,7 +212,7 @@ func testPerturbation[T dense.Scalar](t *testing.T, o *Operator[T], p *Projected
 			nw := o.Bonds[p.first+1].Dim()
 			z := make([]complex128, d2*nr*nw*nl*d1)
 			for _, e := range o.Sites[p.first+1] {
-				if !p.crossing(e.Left) {
+				if !o.Bonds[p.first+1].crosses(e.Left) {
 					continue
 				}
 				for rp := range nr {

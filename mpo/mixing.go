@@ -45,205 +45,160 @@ func (p *Perturbation[T]) Run(h *Projected[T], theta []T, ws *Workspace[T], pool
 // PlanPerturbation plans the perturbation of the left (or right) side of the bond between the two sites of h.
 func (h *Projected[T]) PlanPerturbation(left bool) *Perturbation[T] {
 	if left {
-		return h.planLeftPerturbation()
+		return h.perturbLeft()
 	}
-	return h.planRightPerturbation()
+	return h.perturbRight()
 }
 
-// crossing reports whether index i of bond b carries a term that has begun and is not done.
-func (h *Projected[T]) crossing(i int32) bool {
-	b := h.op.Bonds[h.first+1]
-	return int(i) != b.Vacant && int(i) != b.Done
+// draft is a perturbation under construction: its blocks, and where the combinations of sectors stand among their rows and columns.
+type draft[T dense.Scalar] struct {
+	blocks []PerturbationBlock
+	sites  int             // sectors of the site that is kept
+	rows   [][2]int        // block and first row, by outer sector * sites + site sector
+	others int             // sectors of the other site
+	cols   []int           // first column, by (block * sectors of the MPO bond + w) * others + other site sector; the bond of theta follows
+	moves  [][]moveTask[T] // by block
 }
 
-// sideRows lists, per charge, the pairs of an outer bond sector and a site sector. sign is +1 for the left side
-// (bond charge = l + s), -1 for the right (bond charge = r - s).
-func (h *Projected[T]) sideRows(outer, site block.Axis, left bool) ([]PerturbationBlock, map[[2]int][2]int) {
+// newDraft lists the pairs of an outer bond sector and a site sector by the charge of the bond between the sites: outer + site on the
+// left side, outer - site on the right. The slower axis of theta runs slower here too. The columns are the sectors of the MPO bond mid with those
+// of the other site and of its bond.
+func newDraft[T dense.Scalar](g block.Group, mid block.Axis, th *block.Structure, env block.Axis, left bool) *draft[T] {
+	site, other, far, sign := th.Axes[1], th.Axes[2], th.Axes[3], +1
+	if !left {
+		site, other, far, sign = th.Axes[2], th.Axes[1], th.Axes[0], -1
+	}
+	d := &draft[T]{sites: len(site.Sectors), rows: make([][2]int, len(env.Sectors)*len(site.Sectors)), others: len(other.Sectors)}
 	at := make(map[block.Charge]int)
-	var blocks []PerturbationBlock
-	place := make(map[[2]int][2]int)
-	add := func(o, s int) {
-		q := h.group.Sub(outer.Sectors[o].Charge, site.Sectors[s].Charge)
-		if left {
-			q = h.group.Add(outer.Sectors[o].Charge, site.Sectors[s].Charge)
-		}
-		i, ok := at[q]
-		if !ok {
-			i = len(blocks)
-			at[q] = i
-			blocks = append(blocks, PerturbationBlock{Charge: q})
-		}
-		b := &blocks[i]
-		dim := outer.Sectors[o].Dim * site.Sectors[s].Dim
-		place[[2]int{o, s}] = [2]int{i, b.Rows}
-		b.Segments = append(b.Segments, Segment{Outer: o, Site: s, Start: b.Rows, Dim: dim})
-		b.Rows += dim
-	}
 	if left {
-		for o := range outer.Sectors {
+		for o := range env.Sectors {
 			for s := range site.Sectors {
-				add(o, s)
+				d.addRows(at, g.Add(env.Sectors[o].Charge, site.Sectors[s].Charge), o, s, env.Sectors[o].Dim*site.Sectors[s].Dim)
 			}
 		}
 	} else {
 		for s := range site.Sectors {
-			for o := range outer.Sectors {
-				add(o, s)
+			for o := range env.Sectors {
+				d.addRows(at, g.Sub(env.Sectors[o].Charge, site.Sectors[s].Charge), o, s, env.Sectors[o].Dim*site.Sectors[s].Dim)
 			}
 		}
 	}
-	return blocks, place
+	d.moves = make([][]moveTask[T], len(d.blocks))
+	for i := range d.blocks {
+		d.addColumns(g, &d.blocks[i], mid, other, far, sign)
+	}
+	return d
 }
 
-// planLeftPerturbation: y(l', s1' | w, s2, r) = sum W1(a, w; s1', s1) env(l', a, l) theta(l, s1, s2, r).
-func (h *Projected[T]) planLeftPerturbation() *Perturbation[T] {
-	p := &Perturbation[T]{left: true}
+func (d *draft[T]) addRows(at map[block.Charge]int, q block.Charge, outer, site, dim int) {
+	i, ok := at[q]
+	if !ok {
+		i = len(d.blocks)
+		at[q] = i
+		d.blocks = append(d.blocks, PerturbationBlock{Charge: q})
+	}
+	b := &d.blocks[i]
+	d.rows[outer*d.sites+site] = [2]int{i, b.Rows}
+	b.Segments = append(b.Segments, Segment{Outer: outer, Site: site, Start: b.Rows, Dim: dim})
+	b.Rows += dim
+}
+
+// addColumns lists every sector of the MPO bond and of the other site whose charges, with a bond sector of theta, add up to the block's.
+func (d *draft[T]) addColumns(g block.Group, b *PerturbationBlock, mid, other, far block.Axis, sign int) {
+	for _, w := range mid.Sectors {
+		rest := g.Sub(b.Charge, w.Charge)
+		for _, s := range other.Sectors {
+			d.cols = append(d.cols, b.Cols)
+			q := g.Sub(rest, s.Charge)
+			if sign > 0 {
+				q = g.Add(rest, s.Charge)
+			}
+			if k, ok := far.Find(q); ok {
+				b.Cols += w.Dim * s.Dim * far.Sectors[k].Dim
+			}
+		}
+	}
+}
+
+// finish gives the blocks that anything reaches their places.
+func (d *draft[T]) finish(p *Perturbation[T], x slab) {
 	var y slab
-	p.net.first, p.net.xSize = h.leftPass()
-	th, g := h.Theta, h.group
-	blocks, place := h.sideRows(h.left.Axes[0], th.Axes[1], true)
-	groups := groupEntries(h.crossingEntries(h.op.Sites[h.first], true), h.wl, h.wm, newStateTable(h.op.Phys[h.first]))
-	type column struct{ block, w, s2, r int }
-	start := make(map[column]int)
-	moves := make([][]moveTask[T], len(blocks))
-	// Columns first: every (w, s2, r) whose ket bond charge r - s2 and MPO charge w add up to the block's.
-	for i := range blocks {
-		b := &blocks[i]
-		for w := range h.wm.Sectors {
-			for s2 := range th.Axes[2].Sectors {
-				r, ok := th.Axes[3].Find(g.Add(g.Sub(b.Charge, h.wm.Sectors[w].Charge), th.Axes[2].Sectors[s2].Charge))
-				if !ok {
-					continue
-				}
-				start[column{i, w, s2, r}] = b.Cols
-				b.Cols += h.wm.Sectors[w].Dim * th.Axes[2].Sectors[s2].Dim * th.Axes[3].Sectors[r].Dim
-			}
-		}
-		b.Offset = y.take(b.Rows * b.Cols)
-	}
-	for t, tb := range th.Blocks {
-		l, s1, s2, r := tb.Sectors[0], tb.Sectors[1], tb.Sectors[2], tb.Sectors[3]
-		d1, cols := tb.Shape[1], tb.Shape[2]*tb.Shape[3]
-		for a := range h.wl.Sectors {
-			src, ok := h.pairs[pairKey{t, a}]
-			if !ok {
-				continue
-			}
-			lp, _ := h.left.Axes[0].Find(g.Add(th.Axes[0].Sectors[l].Charge, h.wl.Sectors[a].Charge))
-			m, na := h.left.Axes[0].Sectors[lp].Dim, h.wl.Sectors[a].Dim
-			for w := range h.wm.Sectors {
-				for s1p := range th.Axes[1].Sectors {
-					group := groups[groupKey{int32(a), int32(w), int32(s1p), int32(s1)}]
-					if len(group) == 0 {
-						continue
-					}
-					at := place[[2]int{lp, s1p}]
-					b := &blocks[at[0]]
-					c, ok := start[column{at[0], w, s2, r}]
-					if !ok {
-						continue
-					}
-					d := th.Axes[1].Sectors[s1p].Dim
-					for _, e := range group {
-						moves[at[0]] = append(moves[at[0]], moveTask[T]{src: src + (e.left*d1+e.in)*cols,
-							dst: (at[1]+e.out)*b.Cols + c + e.right*cols, rows: m, cols: cols,
-							lds: na * d1 * cols, ldd: d * b.Cols, value: e.value})
-					}
-				}
-			}
-		}
-	}
-	p.finish(blocks, moves, &y)
-	return p
-}
-
-// planRightPerturbation: y(w, l, s1 | s2', r') = sum W2(w, c; s2', s2) theta(l, s1, s2, r) env(c, r, r').
-func (h *Projected[T]) planRightPerturbation() *Perturbation[T] {
-	p := &Perturbation[T]{}
-	var x, y slab
-	th, g := h.Theta, h.group
-	blocks, place := h.sideRows(h.right.Axes[2], th.Axes[2], false)
-	groups := groupEntries(h.crossingEntries(h.op.Sites[h.first+1], false), h.wm, h.wr, newStateTable(h.op.Phys[h.first+1]))
-	type row struct{ block, w, l, s1 int }
-	start := make(map[row]int)
-	for i := range blocks {
-		b := &blocks[i]
-		for w := range h.wm.Sectors {
-			for s1 := range th.Axes[1].Sectors {
-				l, ok := th.Axes[0].Find(g.Sub(g.Sub(b.Charge, h.wm.Sectors[w].Charge), th.Axes[1].Sectors[s1].Charge))
-				if !ok {
-					continue
-				}
-				start[row{i, w, l, s1}] = b.Cols
-				b.Cols += h.wm.Sectors[w].Dim * th.Axes[0].Sectors[l].Dim * th.Axes[1].Sectors[s1].Dim
-			}
-		}
-		b.Offset = y.take(b.Rows * b.Cols)
-	}
-	moves := make([][]moveTask[T], len(blocks))
-	for t, tb := range th.Blocks {
-		l, s1, s2, r := tb.Sectors[0], tb.Sectors[1], tb.Sectors[2], tb.Sectors[3]
-		rows, d2 := tb.Shape[0]*tb.Shape[1], tb.Shape[2]
-		at, dims := firstRight(&p.net, g, th, h.right.Structure, h.wr, t, 3, rows*d2, tb.Shape[3], &x)
-		for c := range h.wr.Sectors {
-			n := dims[c]
-			if n == 0 {
-				continue
-			}
-			rp, _ := h.right.Axes[2].Find(g.Add(th.Axes[3].Sectors[r].Charge, h.wr.Sectors[c].Charge))
-			nc := h.wr.Sectors[c].Dim
-			for w := range h.wm.Sectors {
-				for s2p := range th.Axes[2].Sectors {
-					group := groups[groupKey{int32(w), int32(c), int32(s2p), int32(s2)}]
-					if len(group) == 0 {
-						continue
-					}
-					pl := place[[2]int{rp, s2p}]
-					b := &blocks[pl[0]]
-					st, ok := start[row{pl[0], w, l, s1}]
-					if !ok {
-						continue
-					}
-					for _, e := range group {
-						moves[pl[0]] = append(moves[pl[0]], moveTask[T]{src: at[c] + (e.in*nc+e.right)*n,
-							dst: (st+e.left*rows)*b.Rows + pl[1] + e.out*n, rows: rows, cols: n,
-							lds: d2 * nc * n, ldd: b.Rows, value: e.value})
-					}
-				}
-			}
-		}
-	}
-	p.net.xSize = x.size
-	p.finish(blocks, moves, &y)
-	return p
-}
-
-func (p *Perturbation[T]) finish(blocks []PerturbationBlock, moves [][]moveTask[T], y *slab) {
-	for i, b := range blocks {
-		if len(moves[i]) == 0 {
+	for i, b := range d.blocks {
+		if len(d.moves[i]) == 0 {
 			continue
 		}
+		p.net.moves = append(p.net.moves, d.moves[i]...)
+		b.Offset = p.net.piece(&y, b.Rows*b.Cols)
 		p.Blocks = append(p.Blocks, b)
-		p.net.middle = append(p.net.middle, finishPiece(b.Offset, b.Rows*b.Cols, moves[i]))
 	}
-	p.net.ySize = y.size
-	p.net.seal()
+	p.net.seal(x, y)
 }
 
-// leftPass returns the first pass of h, which the left perturbation shares.
-func (h *Projected[T]) leftPass() ([]gemmTask, int) { return h.net.first, h.net.xSize }
-
-// crossingEntries keeps the entries whose inner bond index carries a crossing term.
-func (h *Projected[T]) crossingEntries(entries []Entry[T], left bool) []Entry[T] {
-	var keep []Entry[T]
-	for _, e := range entries {
-		i := e.Left
-		if left {
-			i = e.Right
-		}
-		if h.crossing(i) {
-			keep = append(keep, e)
+// perturbLeft: y(l', s1' | w, s2, r) = sum W1(a, w; s1', s1) env(l', a, l) theta(l, s1, s2, r).
+func (h *Projected[T]) perturbLeft() *Perturbation[T] {
+	p := &Perturbation[T]{left: true}
+	p.net.first = h.net.first // the first pass is that of h
+	w, th := h.planner.crossing(h.first, true), h.Theta
+	na, nm := len(w.wl.Sectors), len(w.wr.Sectors)
+	outer := h.left.Axes[0]
+	d := newDraft[T](w.group, w.wr, th, outer, true)
+	up, links := steps(w.group, th.Axes[0], +1, w.wl, outer), w.by(leftIn)
+	for t := range th.Blocks {
+		tb := &th.Blocks[t]
+		l, s1, s2 := tb.Sectors[0], tb.Sectors[1], tb.Sectors[2]
+		d1, cols := tb.Shape[1], tb.Shape[2]*tb.Shape[3]
+		for a := range na {
+			src := h.source.at[t*na+a]
+			if src < 0 {
+				continue
+			}
+			lp := up[l*na+a]
+			m, lds := outer.Sectors[lp].Dim, w.wl.Sectors[a].Dim*d1*cols
+			for _, k := range links[a*len(w.states)+s1] {
+				row := d.rows[lp*d.sites+k.out]
+				col, ld := d.cols[(row[0]*nm+k.right)*d.others+s2], d.blocks[row[0]].Cols
+				for _, e := range w.local[k.from:k.to] {
+					d.moves[row[0]] = append(d.moves[row[0]], moveTask[T]{src: src + (e.left*d1+e.in)*cols,
+						dst: (row[1]+e.out)*ld + col + e.right*cols, rows: m, cols: cols, lds: lds, ldd: w.states[k.out].dim * ld, value: e.value})
+				}
+			}
 		}
 	}
-	return keep
+	d.finish(p, slab{h.net.xSize})
+	return p
+}
+
+// perturbRight: y(w, l, s1 | s2', r') = sum W2(w, c; s2', s2) theta(l, s1, s2, r) env(c, r, r').
+func (h *Projected[T]) perturbRight() *Perturbation[T] {
+	p := &Perturbation[T]{}
+	var x slab
+	w, th := h.planner.crossing(h.first, false), h.Theta
+	nc, nm := len(w.wr.Sectors), len(w.wl.Sectors)
+	outer := h.right.Axes[2]
+	source := newRightSource(&p.net, w, h.right.Structure, asKet(th), &x)
+	d := newDraft[T](w.group, w.wl, th, outer, false)
+	links := w.by(rightIn)
+	for t := range th.Blocks {
+		tb := &th.Blocks[t]
+		s1, s2, r := tb.Sectors[1], tb.Sectors[2], tb.Sectors[3]
+		rows, d2 := tb.Shape[0]*tb.Shape[1], tb.Shape[2]
+		for c := range nc {
+			src := source.at[t*nc+c]
+			if src < 0 {
+				continue
+			}
+			rp, many := source.up[r*nc+c], w.wr.Sectors[c].Dim
+			n := outer.Sectors[rp].Dim
+			for _, k := range links[c*len(w.states)+s2] {
+				row := d.rows[rp*d.sites+k.out]
+				col, ld := d.cols[(row[0]*nm+k.left)*d.others+s1], d.blocks[row[0]].Rows
+				for _, e := range w.local[k.from:k.to] {
+					d.moves[row[0]] = append(d.moves[row[0]], moveTask[T]{src: src + (e.in*many+e.right)*n,
+						dst: (col+e.left*rows)*ld + row[1] + e.out*n, rows: rows, cols: n, lds: d2 * many * n, ldd: ld, value: e.value})
+				}
+			}
+		}
+	}
+	d.finish(p, x)
+	return p
 }

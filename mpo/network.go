@@ -3,7 +3,6 @@ package mpo
 import (
 	"rundle/internal/dense"
 	"rundle/internal/task"
-	"rundle/mps/block"
 )
 
 // gemmTask is C (+)= op(A) op(B) on offsets into three slabs.
@@ -15,7 +14,7 @@ type gemmTask struct {
 	add           bool // accumulate into C
 }
 
-func (g gemmTask) flops() float64 { return 2 * float64(g.m) * float64(g.n) * float64(g.k) }
+func (g *gemmTask) flops() float64 { return 2 * float64(g.m) * float64(g.n) * float64(g.k) }
 
 // moveTask is dst += value * src on a strided matrix.
 type moveTask[T dense.Scalar] struct {
@@ -25,11 +24,11 @@ type moveTask[T dense.Scalar] struct {
 	value      T
 }
 
-// piece is a stretch of the middle slab with the moves that fill it.
-type piece[T dense.Scalar] struct {
-	start, size int
-	moves       []moveTask[T]
-}
+// piece is a stretch of the middle slab with the moves that fill it, moves[from:to].
+type piece struct{ start, size, from, to int }
+
+// chain is a stretch of the GEMMs of the last pass that write to the same block of the result, last[from:to].
+type chain struct{ from, to int }
 
 // network is the plan of one contraction environment · tensor · MPO · (environment or tensor), in three passes:
 //
@@ -40,11 +39,48 @@ type piece[T dense.Scalar] struct {
 // Every piece has one writer and chains run in a fixed order, so the result does not depend on the number of threads.
 type network[T dense.Scalar] struct {
 	first        []gemmTask
-	middle       []piece[T]
-	last         [][]gemmTask
+	moves        []moveTask[T]
+	pieces       []piece
+	last         []gemmTask
+	chains       []chain
 	xSize, ySize int
 
 	firstFlops, middleWork, lastFlops float64
+}
+
+// piece gives the moves that no piece holds yet, with targets counted from zero, a place of n elements in y.
+func (p *network[T]) piece(y *slab, n int) (start int) {
+	start = y.take(n)
+	from := 0
+	if len(p.pieces) > 0 {
+		from = p.pieces[len(p.pieces)-1].to
+	}
+	for i := range p.moves[from:] {
+		p.moves[from+i].dst += start
+	}
+	p.pieces = append(p.pieces, piece{start, n, from, len(p.moves)})
+	return start
+}
+
+// chained adds a GEMM to the open chain: the first one overwrites, the others add.
+func (p *network[T]) chained(g gemmTask) {
+	g.add = len(p.last) > p.closed()
+	p.last = append(p.last, g)
+}
+
+// endChain closes the open chain, if there is one.
+func (p *network[T]) endChain() {
+	if from := p.closed(); len(p.last) > from {
+		p.chains = append(p.chains, chain{from, len(p.last)})
+	}
+}
+
+// closed is the number of GEMMs in closed chains.
+func (p *network[T]) closed() int {
+	if len(p.chains) == 0 {
+		return 0
+	}
+	return p.chains[len(p.chains)-1].to
 }
 
 // Workspace holds the two slabs between the passes of a network. The zero value is ready; it grows and is reused.
@@ -58,31 +94,37 @@ func grow[T any](s []T, n int) []T {
 	return s[:n]
 }
 
-// seal sorts the lists by work, largest first, and adds up their cost.
-func (p *network[T]) seal() {
-	work := make([]float64, len(p.first))
-	for i, g := range p.first {
-		work[i] = g.flops()
-		p.firstFlops += work[i]
-	}
-	p.first = reorder(p.first, task.ByWork(work))
-	work = make([]float64, len(p.middle))
-	for i, q := range p.middle {
-		for _, m := range q.moves {
-			work[i] += float64(m.rows) * float64(m.cols)
+// seal notes the sizes of the slabs, sorts the lists by work, largest first, and adds up their cost.
+func (p *network[T]) seal(x, y slab) {
+	p.xSize, p.ySize = x.size, y.size
+	p.first, p.firstFlops = byWork(p.first, func(g *gemmTask) float64 { return g.flops() })
+	p.pieces, p.middleWork = byWork(p.pieces, func(q *piece) (work float64) {
+		for i := range p.moves[q.from:q.to] {
+			m := &p.moves[q.from+i]
+			work += float64(m.rows) * float64(m.cols)
 		}
-		p.middleWork += work[i]
-	}
-	p.middle = reorder(p.middle, task.ByWork(work))
-	work = make([]float64, len(p.last))
-	for i, c := range p.last {
-		for _, g := range c {
-			work[i] += g.flops()
+		return work
+	})
+	p.chains, p.lastFlops = byWork(p.chains, func(c *chain) (work float64) {
+		for i := c.from; i < c.to; i++ {
+			work += p.last[i].flops()
 		}
-		p.lastFlops += work[i]
-	}
-	p.last = reorder(p.last, task.ByWork(work))
+		return work
+	})
 }
+
+// byWork returns a list in order of decreasing work, and the sum.
+func byWork[S any](list []S, cost func(*S) float64) ([]S, float64) {
+	work, total := make([]float64, len(list)), 0.0
+	for i := range list {
+		work[i] = cost(&list[i])
+		total += work[i]
+	}
+	return reorder(list, task.ByWork(work)), total
+}
+
+// flops returns the operations of one run.
+func (p *network[T]) flops() float64 { return p.firstFlops + p.lastFlops + 2*p.middleWork }
 
 func reorder[S any](s []S, order []int) []S {
 	out := make([]S, len(s))
@@ -112,20 +154,19 @@ func (p *network[T]) run(dst, firstA, firstB, lastA, lastB []T, ws *Workspace[T]
 		lastB = y
 	}
 	clear(dst)
-	pool.Do(len(p.last), p.lastFlops, func(_, i int) {
-		chain := p.last[i]
-		for j := range chain {
-			multiply(&chain[j], lastA, lastB, dst)
+	pool.Do(len(p.chains), p.lastFlops, func(_, i int) {
+		for j := p.chains[i].from; j < p.chains[i].to; j++ {
+			multiply(&p.last[j], lastA, lastB, dst)
 		}
 	})
 }
 
 func (p *network[T]) runMiddle(x, y []T, pool *task.Pool) {
-	pool.Do(len(p.middle), copyWeight*p.middleWork, func(_, i int) {
-		q := &p.middle[i]
+	pool.Do(len(p.pieces), copyWeight*p.middleWork, func(_, i int) {
+		q := p.pieces[i]
 		clear(y[q.start : q.start+q.size])
-		for j := range q.moves {
-			move(&q.moves[j], x, y)
+		for j := q.from; j < q.to; j++ {
+			move(&p.moves[j], x, y)
 		}
 	})
 }
@@ -157,23 +198,4 @@ func (s *slab) take(n int) int {
 	at := s.size
 	s.size += (n + 7) &^ 7
 	return at
-}
-
-// stateTable splits the states of a product of physical axes by sector.
-type stateTable struct {
-	sector []int32 // sector of each state
-	inner  []int32 // its place inside the sector
-	dims   []int   // dimension of each sector
-}
-
-func newStateTable(a block.Axis) stateTable {
-	var t stateTable
-	for i, s := range a.Sectors {
-		t.dims = append(t.dims, s.Dim)
-		for k := 0; k < s.Dim; k++ {
-			t.sector = append(t.sector, int32(i))
-			t.inner = append(t.inner, int32(k))
-		}
-	}
-	return t
 }
