@@ -22,6 +22,7 @@ var layers = [][]string{
 	{"observables/scaling"},
 	{"internal/krylov"},
 	{"internal/dense"},
+	{"internal/dense/openblas"},
 	{"internal/fit", "internal/npz", "internal/atomicfile", "internal/task"},
 	{"internal/arch", "internal/exact", "."},
 }

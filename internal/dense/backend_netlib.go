@@ -2,19 +2,14 @@
 
 package dense
 
-/*
-// OpenBLAS starts threads of its own unless told otherwise; other libraries do not have the function.
-void openblas_set_num_threads(int) __attribute__((weak));
-static void one_thread(void) { if (openblas_set_num_threads) openblas_set_num_threads(1); }
-*/
-import "C"
-
 import (
 	"sync"
 
 	"gonum.org/v1/gonum/blas"
 	blaslib "gonum.org/v1/netlib/blas/netlib"
 	"gonum.org/v1/netlib/lapack/lapacke"
+
+	"rundle/internal/dense/openblas"
 )
 
 const haveNetlib = true
@@ -22,7 +17,7 @@ const haveNetlib = true
 var cblas blaslib.Implementation
 
 // oneThread is called before the library is.
-var oneThread = sync.OnceFunc(func() { C.one_thread() })
+var oneThread = sync.OnceFunc(openblas.OneThread)
 
 func (op Op) blas() blas.Transpose {
 	switch op {
@@ -39,7 +34,10 @@ func netlibReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b
 	cblas.Dgemm(opA.blas(), opB.blas(), m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
 }
 
-// netlibComplex copies a factor that is only conjugated: BLAS has no such operation.
+// netlibComplex copies a factor that is only conjugated: BLAS has no such operation. Inlined, its numbers would be allocated by every
+// caller.
+//
+//go:noinline
 func netlibComplex(opA, opB Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
 	oneThread()
 	if opA == ConjNoTrans {

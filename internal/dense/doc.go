@@ -8,20 +8,25 @@
 // memory comes from a Workspace or from the factorization object; both are ready as zero values, grow to the largest size met and
 // serve one goroutine at a time. No function keeps a slice it was given.
 //
-// Threads. Nothing here starts a goroutine: gonum's product, which would, is called in tiles below the size at which it does. Under
-// the tag netlib the library is told to use one thread. Results depend on the input and the kernels alone.
+// Threads. Nothing here starts a goroutine. Under the tag netlib the library is told to use one thread. Results depend on the input and
+// the kernels alone.
 //
 // Failure. A shape that does not fit panics with the shapes: it is the programmer's error. Input that is not finite, or an iteration
 // that does not converge, is a *NumericalError where a result could not be trusted (SVD, Eigen); products and QR hand such numbers
 // on instead. Matrices of extreme magnitude (1e160, 1e-160) are scaled by powers of two inside.
 //
-// Kernels. The plain Go loop in the comment of Gemm is the contract. The default build works over gonum (assembly on amd64 and arm64,
-// Go elsewhere and under gonum's tag noasm); the tag netlib adds a C BLAS and LAPACK through gonum's bindings and prefers them:
+// Kernels. The plain Go loop in the comment of Gemm is the contract. On amd64 products run on assembly for AVX-512 or AVX2, whichever
+// the processor has; elsewhere, and under the tag purego, on blocked Go. The tag netlib adds a C BLAS and LAPACK through gonum's bindings
+// and prefers them:
 //
 //	CGO_LDFLAGS="-lopenblas -llapacke" go build -tags netlib ./...
 //
-// The environment variable RUNDLE_KERNELS ("go", "netlib") overrides the choice; Kernels tells what is in use. The tag purego
-// asks for no assembly of this package's own; there is none yet.
+// The environment variable RUNDLE_KERNELS ("avx512", "avx2", "go", "netlib") overrides the choice; Kernels tells what is in use.
+//
+// The assembly is written by the program in _asm; "go generate" runs it. A kernel holds a tile of C in registers, vectors along its rows,
+// and reads A by broadcast at any strides, so that A is never copied and B only if it is transposed or large (the loops follow Goto, van
+// de Geijn, ACM TOMS 34, 12 (2008), and Van Zee, van de Geijn, ACM TOMS 41, 14 (2015)). Complex tiles keep two sums, for the real and for
+// the imaginary part of A, and combine them at the end. Edges are masked: nothing outside of a matrix is touched, not even read.
 //
 // JacobiSVD and JacobiEigen are slow, short and another method: the oracle that tests compare with.
 //

@@ -113,15 +113,17 @@ func testGemmSizes[T Scalar](t *testing.T) {
 			}
 		}
 	}
-	for s := 6; s <= 40; s++ {
-		run(s, s, s)
-		run(s, (7*s)%41, (11*s)%41)
-		run((13*s)%41, s, (5*s)%41)
-		run((3*s)%41, (17*s)%41, s)
-	}
-	// Across the edges of the tiles, narrow and wide.
-	for _, s := range [][3]int{{63, 127, 65}, {64, 128, 64}, {65, 129, 31}, {66, 63, 33}, {130, 5, 140}, {5, 270, 70}, {100, 1, 200}, {1, 200, 100}, {1, 1, 300}, {70, 150, 1}, {129, 11, 65}, {3, 25, 150}} {
-		run(s[0], s[1], s[2])
+	// Across the edges of the blocks, narrow and wide.
+	for _, s := range [][3]int{
+		{63, 127, 65}, {64, 128, 64}, {65, 129, 31}, {130, 5, 257}, {5, 510, 70}, {5, 20, 520}, {260, 13, 9}, {100, 1, 200}, {1, 200, 100},
+		{1, 1, 300}, {70, 150, 1}, {129, 11, 65}, {3, 25, 150},
+	} {
+		for _, opA := range allOps {
+			for _, opB := range allOps {
+				seed++
+				checkGemm(t, opA, opB, s[0], s[1], s[2], scalars[1+seed%2], scalars[seed/2%3], seed)
+			}
+		}
 	}
 }
 

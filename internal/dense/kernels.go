@@ -3,65 +3,103 @@ package dense
 import (
 	"fmt"
 	"os"
-	"sync"
+	"strings"
 )
 
 // kernelSet names the code that does the work.
-type kernelSet string
+type kernelSet byte
 
 const (
-	goKernels     kernelSet = "go"
-	netlibKernels kernelSet = "netlib"
+	goKernels kernelSet = iota
+	avx2Kernels
+	avx512Kernels
+	netlibKernels
 )
 
-// kernels is chosen once, at the first use; only serial tests put another choice in its place.
-var kernels = sync.OnceValues(func() (kernelSet, error) { return chooseKernels(os.Getenv("RUNDLE_KERNELS")) })
+var kernelNames = [...]string{"go", "avx2", "avx512", "netlib"}
+
+func (k kernelSet) String() string { return kernelNames[k] }
+
+// available tells whether this build on this machine has the set.
+func (k kernelSet) available() bool {
+	switch k {
+	case goKernels:
+		return true
+	case avx2Kernels:
+		return haveAVX2
+	case avx512Kernels:
+		return haveAVX512
+	case netlibKernels:
+		return haveNetlib
+	}
+	return false
+}
+
+// kernels is the set in use; only serial tests put another choice in its place.
+var kernels, kernelsErr = chooseKernels(os.Getenv("RUNDLE_KERNELS"))
 
 // chooseKernels turns the user's wish into a set. On error it still returns the default set, so that work can go on.
 func chooseKernels(wish string) (kernelSet, error) {
-	choice, names := goKernels, `"go"`
-	if haveNetlib {
-		choice, names = netlibKernels, `"go" or "netlib"`
-	}
-	switch {
-	case wish == "", wish == string(choice), wish == string(goKernels):
-		if wish == "" {
-			return choice, nil
+	best, quoted := goKernels, make([]string, 0, len(kernelNames))
+	for k := range kernelSet(len(kernelNames)) {
+		if k.available() {
+			best = k
+			quoted = append(quoted, fmt.Sprintf("%q", k))
 		}
-		return kernelSet(wish), nil
-	case wish == string(netlibKernels):
-		return choice, fmt.Errorf("RUNDLE_KERNELS: %q needs a program built with the tag netlib; this one has %s (unset the variable for the default, %q)", wish, names, choice)
 	}
-	return choice, fmt.Errorf("RUNDLE_KERNELS: unknown kernels %q; expected %s (unset the variable for the default, %q)", wish, names, choice)
+	if wish == "" {
+		return best, nil
+	}
+	names := strings.Join(quoted, ", ")
+	for k := range kernelSet(len(kernelNames)) {
+		if k.String() != wish {
+			continue
+		}
+		if k.available() {
+			return k, nil
+		}
+		reason := "needs a processor that has it and a build without the tag purego"
+		if k == netlibKernels {
+			reason = "needs a program built with the tag netlib"
+		}
+		return best, fmt.Errorf("RUNDLE_KERNELS: %q %s; here are %s (unset the variable for the default, %q)", wish, reason, names, best)
+	}
+	return best, fmt.Errorf("RUNDLE_KERNELS: unknown kernels %q; expected one of %s (unset the variable for the default, %q)", wish, names, best)
 }
 
-// Kernels names the kernels in use: what RUNDLE_KERNELS asks for, else the best of this build. The error tells of a value that is
-// not known or not built in; the default is then in use.
-func Kernels() (string, error) {
-	k, err := kernels()
-	return string(k), err
+// Kernels names the kernels in use: what RUNDLE_KERNELS asks for, else the best of this build on this machine. The error tells of a
+// value that is not known or not to be had; the default is then in use.
+func Kernels() (string, error) { return kernels.String(), kernelsErr }
+
+// UseKernels switches to the kernels of that name. It is for serial tests and benchmarks: nothing else may run meanwhile.
+func UseKernels(name string) error {
+	set, err := chooseKernels(name)
+	if err == nil {
+		kernels = set
+	}
+	return err
 }
 
-func useNetlib() bool {
-	if !haveNetlib {
-		return false
-	}
-	k, _ := kernels()
-	return k == netlibKernels
-}
+func useNetlib() bool { return haveNetlib && kernels == netlibKernels }
 
 func gemmReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
-	if useNetlib() {
+	switch kernels {
+	case avx512Kernels, avx2Kernels:
+		tiledReal(kernels, opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
+	case netlibKernels:
 		netlibReal(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-		return
+	default:
+		blocked(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
 	}
-	tiledReal(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
 }
 
 func gemmComplex(opA, opB Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
-	if useNetlib() {
+	switch kernels {
+	case avx512Kernels, avx2Kernels:
+		tiledComplex(kernels, opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
+	case netlibKernels:
 		netlibComplex(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-		return
+	default:
+		blocked(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
 	}
-	tiledComplex(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
 }

@@ -1,6 +1,7 @@
 package dense
 
 import (
+	"fmt"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
@@ -9,8 +10,10 @@ import (
 
 func TestChooseKernels(t *testing.T) {
 	best := goKernels
-	if haveNetlib {
-		best = netlibKernels
+	for _, set := range []kernelSet{avx2Kernels, avx512Kernels, netlibKernels} {
+		if set.available() {
+			best = set
+		}
 	}
 	for _, row := range []struct {
 		wish string
@@ -20,7 +23,7 @@ func TestChooseKernels(t *testing.T) {
 		{"", best, ""},
 		{"go", goKernels, ""},
 		{"Go", best, `unknown kernels "Go"`},
-		{"fast", best, `unknown kernels "fast"; expected "go"`},
+		{"fast", best, `unknown kernels "fast"; expected one of "go"`},
 	} {
 		t.Run(row.wish, func(t *testing.T) {
 			got, err := chooseKernels(row.wish)
@@ -34,20 +37,33 @@ func TestChooseKernels(t *testing.T) {
 			assert.Contains(t, err.Error(), row.err)
 		})
 	}
-	got, err := chooseKernels("netlib")
-	if haveNetlib {
-		assert.NoError(t, err)
-		assert.Equal(t, netlibKernels, got)
-	} else {
-		assert.ErrorContains(t, err, "tag netlib")
-		assert.Equal(t, goKernels, got)
+	for _, row := range []struct {
+		set kernelSet
+		err string
+	}{
+		{avx2Kernels, "tag purego"},
+		{avx512Kernels, "tag purego"},
+		{netlibKernels, "tag netlib"},
+	} {
+		t.Run("wish for "+row.set.String(), func(t *testing.T) {
+			got, err := chooseKernels(row.set.String())
+			if row.set.available() {
+				assert.NoError(t, err)
+				assert.Equal(t, row.set, got)
+				return
+			}
+			assert.Equal(t, best, got)
+			assert.ErrorContains(t, err, row.err)
+			assert.ErrorContains(t, err, fmt.Sprintf("%q", best))
+		})
 	}
 }
 
 func TestKernels(t *testing.T) {
-	name, err := Kernels()
-	if err == nil {
-		assert.Contains(t, []string{"go", "netlib"}, name)
+	for set := range kernelSet(len(kernelNames)) {
+		use(t, set)
+		name, _ := Kernels()
+		assert.Equal(t, set.String(), name)
+		assert.Equal(t, set == netlibKernels && haveNetlib, useNetlib())
 	}
-	assert.Equal(t, name == "netlib", useNetlib())
 }

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"unsafe"
 
 	"gonum.org/v1/gonum/blas/gonum"
 )
@@ -92,16 +93,22 @@ func Conjugate[T Scalar](dst, src []T) {
 	}
 }
 
+// floats views numbers as real ones, complex ones as pairs.
+func floats[T Scalar](x []T) []float64 {
+	switch x := any(x).(type) {
+	case []float64:
+		return x
+	case []complex128:
+		return unsafe.Slice((*float64)(unsafe.Pointer(unsafe.SliceData(x))), 2*len(x))
+	}
+	return nil
+}
+
 // largest returns max |x| over the real and imaginary parts of an m×n matrix; NaN if any entry is NaN.
 func largest[T Scalar](m, n int, a []T, lda int) float64 {
 	top := 0.0
 	for i := range m {
-		switch row := any(a[i*lda : i*lda+n]).(type) {
-		case []float64:
-			top = larger(top, row)
-		case []complex128:
-			top = larger(top, floats(row))
-		}
+		top = larger(top, floats(a[i*lda:i*lda+n]))
 	}
 	return top
 }

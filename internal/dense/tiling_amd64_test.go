@@ -1,0 +1,149 @@
+//go:build amd64 && !purego
+
+package dense
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"testing"
+	"unsafe"
+
+	"github.com/stretchr/testify/assert"
+)
+
+func allTilings() map[string]*tiling {
+	out := map[string]*tiling{}
+	if haveAVX2 {
+		out["real 256"], out["complex 256"] = &real256, &complex256
+	}
+	if haveAVX512 {
+		out["real 512"], out["complex 512"] = &real512, &complex512
+	}
+	return out
+}
+
+// TestBlocks runs all sizes through the packing code, cut into blocks so small that every loop turns more than once.
+func TestBlocks(t *testing.T) {
+	set(t, &inPlaceBytes, -1)
+	set(t, &inPlaceRows, -1)
+	for _, tiling := range allTilings() {
+		set(t, &tiling.depth, 13)
+		set(t, &tiling.width, 2*tiling.vectors*tiling.lanes)
+		set(t, &tiling.height, 11)
+	}
+	for _, kernels := range []kernelSet{avx2Kernels, avx512Kernels} {
+		if kernels.available() {
+			t.Run(kernels.String(), func(t *testing.T) {
+				use(t, kernels)
+				both(t, everySize[float64], everySize[complex128])
+			})
+		}
+	}
+}
+
+// set changes a variable until the test ends.
+func set[V any](t *testing.T, p *V, to V) {
+	saved := *p
+	*p = to
+	t.Cleanup(func() { *p = saved })
+}
+
+// TestPack compares the packed panels with the loops of their description, for every width and depth, in both directions.
+func TestPack(t *testing.T) {
+	for name, tiling := range allTilings() {
+		t.Run(name, func(t *testing.T) {
+			per := tiling.size / 8
+			for n := 1; n <= 2*tiling.vectors*tiling.lanes+1; n++ {
+				for k := 1; k <= 19; k++ {
+					for _, transposed := range []bool{false, true} {
+						checkPack(t, tiling, per, n, k, transposed)
+					}
+				}
+			}
+		})
+	}
+}
+
+func checkPack(t *testing.T, g *tiling, per, n, k int, transposed bool) {
+	t.Helper()
+	rng := rand.New(rand.NewPCG(uint64(n), uint64(k)))
+	rows, cols := k, n
+	if transposed {
+		rows, cols = n, k
+	}
+	entries := make([]float64, rows*cols*per)
+	Random(rng, entries)
+	b := input(rows, cols*per, 3*per, 3, entries)
+	vectors := (n + g.lanes - 1) / g.lanes
+	out := newPadded[float64](1, vectors*g.lanes*per*k, 0, 5, -777.25)
+	rowB, colB := 8*b.ld, g.size
+	if transposed {
+		rowB, colB = g.size, 8*b.ld
+	}
+	g.pack(unsafe.Pointer(&out.a[0]), unsafe.Pointer(&b.a[0]), k, n, rowB, colB, transposed)
+	what := fmt.Sprintf("n=%d k=%d transposed=%v", n, k, transposed)
+	out.checkGuards(t, what)
+	at := 0
+	w, wide, count := g.cut(vectors)
+	for i, j := 0, 0; i < count; i++ {
+		if i == wide {
+			w--
+		}
+		for l := range k {
+			for q := range w * g.lanes {
+				for part := range per {
+					want := 0.0
+					if j+q < n {
+						r, c := l, j+q
+						if transposed {
+							r, c = c, r
+						}
+						want = b.at(r, c*per+part)
+					}
+					if out.a[at] != want {
+						t.Fatalf("%s: row %d column %d part %d is %v, want %v", what, l, j+q, part, out.a[at], want)
+					}
+					at++
+				}
+			}
+		}
+		j += w * g.lanes
+	}
+	assert.Equal(t, len(out.a), at)
+}
+
+// TestSplit: every size is cut into whole parts that differ by one.
+func TestSplit(t *testing.T) {
+	for _, g := range allTilings() {
+		for m := 1; m <= 300; m++ {
+			var p tileCall
+			g.split(&p, m)
+			assert.Equal(t, m, p.blocks*p.rows+p.rest*(p.rows-1))
+			assert.True(t, p.rows >= 1 && p.rows <= g.rows && p.blocks >= 1 && p.rest >= 0 && (p.rest == 0 || p.rows > 1), "%d: %+v", m, p)
+			w, wide, count := g.cut(m)
+			assert.Equal(t, m, wide*w+(count-wide)*(w-1))
+			assert.True(t, w >= 1 && w <= g.vectors && wide >= 1 && (wide == count || w > 1), "%d: %d %d %d", m, w, wide, count)
+		}
+	}
+}
+
+// TestTilesAtNaN: what lies beyond a cut vector is not multiplied either, as a NaN there would show, and a NaN inside stays in its row.
+func TestTilesAtNaN(t *testing.T) {
+	for _, set := range []kernelSet{avx2Kernels, avx512Kernels} {
+		if !set.available() {
+			continue
+		}
+		use(t, set)
+		for n := 1; n <= 50; n++ {
+			a, b, c := random[float64](n*n), random[float64](n*n), make([]float64, n*n)
+			a[(n/2)*n] = math.NaN()
+			Gemm(NoTrans, NoTrans, n, n, n, 1, a, n, b, n, 0, c, n)
+			for i := range n {
+				for j := range n {
+					assert.Equal(t, i == n/2, math.IsNaN(c[i*n+j]), "n=%d C[%d,%d]", n, i, j)
+				}
+			}
+		}
+	}
+}
