@@ -1,0 +1,12 @@
+// Command kernels compares the dense kernels with OpenBLAS, in one binary:
+//
+//	go run -tags netlib ./internal/bench/kernels
+//
+// Each row is one product. The contestants take turns in slices of about two milliseconds; a figure is the median over the rounds, in
+// CPU time of the one thread that runs, so that other work on the machine costs precision but not fairness. A ratio above one means that
+// Rundle's kernels are the faster ones. At the end of each group stand the smallest ratio and the geometric mean.
+//
+// OpenBLAS takes a processor that it does not know for a lesser one. If that, or the environment, keeps it from AVX-512 on a machine
+// that has it, the command starts itself anew with the variable that puts it right; "--core Haswell --kernels avx2" compares the two at
+// AVX2.
+package main

@@ -1,0 +1,60 @@
+package main
+
+import (
+	"fmt"
+	"io"
+	"math"
+)
+
+// table prints rows as they come and a summary of each group.
+type table struct {
+	w     io.Writer
+	names []string
+	group string
+	lines int
+	sum   []summary
+}
+
+type summary struct {
+	worst   float64
+	logs    float64
+	members int
+}
+
+func newTable(w io.Writer, names []string) *table { return &table{w: w, names: names} }
+
+func (t *table) add(p product, rows []row) {
+	if g := fmt.Sprintf("%s %s, %s", p.routine(), p.ops(), p.group); g != t.group {
+		t.end()
+		t.group = g
+		t.sum = make([]summary, len(t.names))
+		fmt.Fprintf(t.w, "%-30s %10s", g, "OpenBLAS")
+		for _, name := range t.names {
+			fmt.Fprintf(t.w, " %8s %6s", name, "ratio")
+		}
+		fmt.Fprintln(t.w)
+	}
+	fmt.Fprintf(t.w, "%-30s %10.1f", fmt.Sprintf("  %d,%d,%d", p.m, p.n, p.k), rows[0].Reference)
+	for i, r := range rows {
+		fmt.Fprintf(t.w, " %8.1f %6.2f", r.Gflops, r.Ratio)
+		s := &t.sum[i]
+		if s.members == 0 || r.Ratio < s.worst {
+			s.worst = r.Ratio
+		}
+		s.logs += math.Log(r.Ratio)
+		s.members++
+	}
+	fmt.Fprintln(t.w)
+}
+
+// end prints the summary of the group in hand.
+func (t *table) end() {
+	if t.group == "" {
+		return
+	}
+	fmt.Fprintf(t.w, "%-30s %10s", "  worst, geometric mean", "")
+	for _, s := range t.sum {
+		fmt.Fprintf(t.w, " %8.2f %6.2f", s.worst, math.Exp(s.logs/float64(s.members)))
+	}
+	fmt.Fprint(t.w, "\n\n")
+}
