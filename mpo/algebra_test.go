@@ -53,7 +53,7 @@ func adjoint(a []complex128) []complex128 {
 }
 
 func testAlgebra[T dense.Scalar](t *testing.T, name string) {
-	for seed := range uint64(3) {
+	for seed := range uint64(seeds) {
 		rng := rand.New(rand.NewPCG(seed, 5))
 		g, kinds := families()[name]()
 		if name == "clocks" && !dense.IsComplex[T]() {

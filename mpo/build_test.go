@@ -3,6 +3,7 @@ package mpo
 import (
 	"fmt"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/require"
@@ -128,6 +129,13 @@ func crossingRank(h []complex128, dims []int, cut int, noLeft, noRight bool) int
 
 // svdRank counts the singular values above floor; those of a complex matrix come twice in its real form.
 func svdRank(a []complex128, m, n int, floor float64) int {
+	if !slices.ContainsFunc(a, func(x complex128) bool { return imag(x) != 0 }) {
+		small := mat.NewDense(m, n, nil)
+		for i, x := range a {
+			small.Set(i/n, i%n, real(x))
+		}
+		return countAbove(small, floor)
+	}
 	big := mat.NewDense(2*m, 2*n, nil)
 	for i := range m {
 		for j := range n {
@@ -138,18 +146,20 @@ func svdRank(a []complex128, m, n int, floor float64) int {
 			big.Set(m+i, j, imag(x))
 		}
 	}
+	return countAbove(big, floor) / 2
+}
+
+func countAbove(a *mat.Dense, floor float64) (count int) {
 	var f mat.SVD
-	if !f.Factorize(big, mat.SVDNone) {
+	if !f.Factorize(a, mat.SVDNone) {
 		panic("no convergence")
 	}
-	v := f.Values(nil)
-	count := 0
-	for _, x := range v {
+	for _, x := range f.Values(nil) {
 		if x > floor {
 			count++
 		}
 	}
-	return count / 2
+	return count
 }
 
 // families are the mixes of sites on which random sums are drawn.
@@ -180,7 +190,7 @@ func TestBuildRandom(t *testing.T) {
 	for name, family := range families() {
 		for _, size := range []struct{ terms, most int }{{1, 1}, {3, 2}, {12, 2}, {40, 3}, {60, 4}} {
 			t.Run(fmt.Sprintf("%s/terms=%d", name, size.terms), func(t *testing.T) {
-				for seed := range uint64(3) {
+				for seed := range uint64(seeds) {
 					rng := rand.New(rand.NewPCG(seed, 17))
 					g, kinds := family()
 					s := newSum(g, kinds...)

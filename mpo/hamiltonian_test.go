@@ -122,8 +122,8 @@ func hamiltonians() []hamiltonian {
 	}
 }
 
-// exactMatrix is the dense Hamiltonian in the user's basis; site 0 runs slowest.
-func (h hamiltonian) exactMatrix(t *testing.T) []complex128 {
+// matrix is factor times the dense sum in the user's basis, plus its Hermitian conjugate; site 0 runs slowest.
+func (h hamiltonian) matrix(t *testing.T, factor complex128) []complex128 {
 	t.Helper()
 	var sites []exact.Site
 	for range h.rungs {
@@ -132,7 +132,9 @@ func (h hamiltonian) exactMatrix(t *testing.T) []complex128 {
 	b, err := exact.NewBasis(sites, nil, nil)
 	require.NoError(t, err)
 	var terms []exact.Term
-	h.exact(func(coef complex128, namesAndSites ...any) { terms = append(terms, exact.T(coef, namesAndSites...)) })
+	h.exact(func(coef complex128, namesAndSites ...any) {
+		terms = append(terms, exact.T(factor*coef, namesAndSites...))
+	})
 	m, err := b.Matrix(exact.WithAdjoints(terms...)...)
 	require.NoError(t, err)
 	out := make([]complex128, b.Dim()*b.Dim())
@@ -182,7 +184,7 @@ func TestHamiltonians(t *testing.T) {
 			require.NoError(t, err)
 			model, err := l.Hamiltonian(nil, h.terms...)
 			require.NoError(t, err)
-			a := h.exactMatrix(t)
+			a := h.matrix(t, 1)
 			for _, opt := range []ladder.FrameOptions{{}, {Complex: true}, {NoRotation: true}, {Charges: []string{}}} {
 				f, err := model.Frames(opt)
 				require.NoError(t, err)
@@ -196,6 +198,49 @@ func TestHamiltonians(t *testing.T) {
 					checkHamiltonian[float64](t, want, s)
 				}
 				checkHamiltonian[complex128](t, want, s)
+			}
+		})
+	}
+}
+
+// Operators that move charge, odd ones with their signs to the left end among them.
+func TestChargedOperators(t *testing.T) {
+	cases := []struct {
+		model, formula, name string
+		site                 int
+	}{
+		{"fermion ladder with flux and pair hopping", "c[b,1]", "c", 3},
+		{"fermion ladder with flux and pair hopping", "c^+[a,0]", "c^+", 0},
+		{"electron ring with pi flux", "c_down[a,2]", "c_down", 2},
+		{"electron ring with pi flux", "S^-[a,1]", "S^-", 1},
+		{"pairing chain", "c[a,2]", "c", 2},
+		{"bosons", "b^+[a,3]", "b^+", 3},
+		{"spins one", "S^+[s,1]", "S^+", 1},
+		{"fermions, bosons and spins", "c[a,1]", "c", 3},
+		{"fermions, bosons and spins", "S^-[s,1]", "S^-", 5},
+	}
+	for _, c := range cases {
+		t.Run(c.model+"/"+c.formula, func(t *testing.T) {
+			for _, h := range hamiltonians() {
+				if h.name != c.model {
+					continue
+				}
+				l, err := ladder.New(h.rungs, h.edge, h.parts...)
+				require.NoError(t, err)
+				model, err := l.Hamiltonian(nil, h.terms...)
+				require.NoError(t, err)
+				f, err := model.Frames(ladder.FrameOptions{})
+				require.NoError(t, err)
+				p, err := model.Scope.Polynomial(ladder.Term{Formula: c.formula})
+				require.NoError(t, err)
+				s, err := f.Strings(p)
+				require.NoError(t, err)
+				h.exact = func(add func(complex128, ...any)) { add(1, c.name, c.site) }
+				a, b := h.matrix(t, 0.5), h.matrix(t, -0.5i) // the Hermitian parts: operator = a + i b
+				for i := range a {
+					a[i] += 1i * b[i]
+				}
+				checkHamiltonian[complex128](t, stored(l, f, a), s)
 			}
 		})
 	}

@@ -43,14 +43,59 @@ func stringRank(s *sum, cut int, tol float64) (rank int, vacant, done bool) {
 			m[entry{place(rows, left), place(cols, right)}] += c
 		}
 	}
-	if len(rows) == 0 {
-		return 0, vacant, done
+	top := 0.0
+	parts := map[int][]coefficient{}
+	part := make([]int, len(rows)) // rows that share columns, directly or over others
+	for i := range part {
+		part[i] = i
+	}
+	owner := make([]int, len(cols))
+	for j := range owner {
+		owner[j] = none
+	}
+	root := func(i int) int {
+		for part[i] != i {
+			i = part[i]
+		}
+		return i
+	}
+	for e, c := range m {
+		top = max(top, abs(c))
+		if owner[e.j] == none {
+			owner[e.j] = e.i
+		}
+		part[root(e.i)] = root(owner[e.j])
+	}
+	for e, c := range m {
+		parts[root(e.i)] = append(parts[root(e.i)], coefficient{e.i, e.j, c})
+	}
+	for _, list := range parts {
+		rank += coefficientRank(list, tol*top)
+	}
+	return rank, vacant, done
+}
+
+type coefficient struct {
+	i, j int
+	c    complex128
+}
+
+// coefficientRank is the number of singular values above floor.
+func coefficientRank(list []coefficient, floor float64) int {
+	rows, cols := map[int]int{}, map[int]int{}
+	for _, e := range list {
+		if _, ok := rows[e.i]; !ok {
+			rows[e.i] = len(rows)
+		}
+		if _, ok := cols[e.j]; !ok {
+			cols[e.j] = len(cols)
+		}
 	}
 	a := make([]complex128, len(rows)*len(cols))
-	for e, c := range m {
-		a[e.i*len(cols)+e.j] = c
+	for _, e := range list {
+		a[rows[e.i]*len(cols)+cols[e.j]] = e.c
 	}
-	return svdRank(a, len(rows), len(cols), tol*biggest(a)), vacant, done
+	return svdRank(a, len(rows), len(cols), floor)
 }
 
 // requireStringRank compares all bonds with stringRank.
