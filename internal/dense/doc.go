@@ -30,6 +30,11 @@
 //
 // JacobiSVD and JacobiEigen are slow, short and another method: the oracle that tests compare with.
 //
-// Papers: Golub, Kahan, SIAM J. Numer. Anal. B 2, 205 (1965); Chan, ACM TOMS 8, 72 (1982); Demmel, Kahan, SIAM J. Sci. Stat. Comput.
-// 11, 873 (1990); Lehoucq, ACM TOMS 22, 393 (1996); Demmel, Veselic, SIAM J. Matrix Anal. Appl. 13, 1204 (1992).
+// Factorizations work on rows: a reflection is a row of an array, a singular or eigenvector is a row until it is written out, so that
+// vectors are contiguous and blocks of them enter products as they lie. QR is the LQ of the adjoint.
+//
+// Papers: Golub, Kahan, SIAM J. Numer. Anal. B 2, 205 (1965); Chan, ACM TOMS 8, 72 (1982); Dongarra, Sorensen, Hammarling, J. Comput.
+// Appl. Math. 27, 215 (1989); Schreiber, Van Loan, SIAM J. Sci. Stat. Comput. 10, 53 (1989); Demmel, Veselic, SIAM J. Matrix Anal.
+// Appl. 13, 1204 (1992); Li, LAPACK Working Note 89 (1993); Gu, Eisenstat, SIAM J. Matrix Anal. Appl. 16, 79 (1995); Lehoucq, ACM TOMS
+// 22, 393 (1996); Elmroth, Gustavson, IBM J. Res. Dev. 44, 605 (2000).
 package dense

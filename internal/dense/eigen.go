@@ -4,7 +4,11 @@ import (
 	"fmt"
 
 	"gonum.org/v1/gonum/lapack"
+	gonumlapack "gonum.org/v1/gonum/lapack/gonum"
 )
+
+// lapackRef is gonum's pure-Go LAPACK.
+var lapackRef gonumlapack.Implementation
 
 const eigenRoutine = "Hermitian eigenvalues"
 

@@ -11,9 +11,9 @@ const tallRatio = 1.6
 // SVD holds a factorization A = U diag(s) V^H. The zero value is ready; one object serves many matrices, one after the other, and
 // keeps its memory. It is not for concurrent use.
 //
-// The way: for a wide A work on A^H; QR first for a tall one; Householder reduction to a real upper bidiagonal B = Q^H A P, also
-// for complex A; the implicit QR iteration on B (Golub, Kahan 1965; Demmel, Kahan 1990) by gonum's Dbdsqr; Q and P are applied
-// only to the vectors that are asked for.
+// The way: for a wide A work on A^H; QR first for a tall one; blocked Householder reduction to a real upper bidiagonal B = Q^H A P,
+// also for complex A (Dongarra, Sorensen, Hammarling 1989); divide and conquer on B; Q and P are applied only to the vectors that are
+// asked for.
 type SVD[T Scalar] struct {
 	m, n   int  // A
 	wide   bool // m < n: the fields below are those of A^H
@@ -22,14 +22,13 @@ type SVD[T Scalar] struct {
 	cols   int  // min(m, n)
 	direct bool // netlib: u and vh hold the vectors themselves, U cols wide
 
-	values     []float64
-	left       []float64 // transposed left singular vectors of B, cols×cols
-	right      []float64 // transposed right ones
-	f          []T       // reflectors, rows×cols
-	tauQ, tauP []T
-	q          []T // of the QR factorization, max(m,n)×cols
-	u, vh      []T
-	w          Workspace[T]
+	values      []float64
+	b           bidiagonalSVD
+	outer       reflectors[T] // of the QR factorization
+	left, right reflectors[T] // Q and P
+	f           []T           // netlib's copy of A
+	u, vh       []T
+	w           Workspace[T]
 }
 
 // Factor decomposes the m×n matrix A, which is not modified. The error is a *NumericalError: A holds NaN or Inf, or the iteration
@@ -73,30 +72,30 @@ func (f *SVD[T]) factorGo(s float64, a []T, lda int) bool {
 	rows, cols := max(f.m, f.n), f.cols
 	defer f.w.release(f.w.mark())
 	f.tall = float64(rows) > tallRatio*float64(cols)
+	x := f.w.elems.take(rows * cols)
+	if f.wide != f.tall {
+		adjoint(f.m, f.n, a, lda, x, f.m)
+	} else {
+		copyMatrix(f.m, f.n, 1, a, lda, x, f.n)
+	}
+	if s != 1 {
+		copyMatrix(1, rows*cols, s, x, rows*cols, x, rows*cols)
+	}
 	f.rows = rows
 	if f.tall {
-		f.rows = cols
+		// x is the adjoint, cols×rows: its L is the adjoint of R.
+		l := f.w.elems.take(cols * cols)
+		f.outer.factor(cols, rows, x, l, cols, &f.w)
+		f.rows, x = cols, x[:cols*cols]
+		adjoint(cols, cols, l, cols, x, cols)
 	}
-	f.f = resize(f.f, f.rows*cols)
-	whole := f.f
-	if f.tall {
-		whole = f.w.elems.take(rows * cols)
+	d, e := f.w.reals.take(cols), f.w.reals.take(cols)
+	bidiagonalize(f.rows, cols, x, d, e, &f.left, &f.right, &f.w)
+	if !f.b.factor(d, e) {
+		return false
 	}
-	if f.wide {
-		adjoint(f.m, f.n, a, lda, whole, cols)
-		copyMatrix(rows, cols, s, whole, cols, whole, cols)
-	} else {
-		copyMatrix(rows, cols, s, a, lda, whole, cols)
-	}
-	if f.tall {
-		f.q = resize(f.q, rows*cols)
-		QR(rows, cols, whole, cols, f.q, cols, f.f, cols, &f.w)
-	}
-	f.tauQ, f.tauP = resize(f.tauQ, cols), resize(f.tauP, cols)
-	off := f.w.reals.take(cols)
-	bidiagonalize(f.rows, cols, f.f, cols, f.values, off, f.tauQ, f.tauP, &f.w)
-	f.left, f.right = resize(f.left, cols*cols), resize(f.right, cols*cols)
-	return bidiagonalSVD(f.values, off[:cols-1], f.left, f.right, &f.w)
+	f.b.sorted(f.values)
+	return true
 }
 
 // Values returns the min(m, n) singular values, decreasing. The slice belongs to f and is valid until the next Factor.
@@ -117,46 +116,52 @@ func (f *SVD[T]) Vectors(keep int, u []T, ldu int, vh []T, ldvh int) {
 		copyMatrix(f.m, keep, 1, f.u, f.cols, u, ldu)
 		copyMatrix(keep, f.n, 1, f.vh, f.n, vh, ldvh)
 	case f.wide:
-		defer f.w.release(f.w.mark())
-		left, right := f.w.elems.take(f.n*keep), f.w.elems.take(keep*f.m)
-		f.leftVectors(keep, left, keep)
-		f.rightVectors(keep, right, f.m)
-		adjoint(f.n, keep, left, keep, vh, ldvh)
-		adjoint(keep, f.m, right, f.m, u, ldu)
+		f.leftVectors(keep, vh, ldvh)
+		f.rightVectors(keep, u, ldu, true)
 	default:
-		f.leftVectors(keep, u, ldu)
-		f.rightVectors(keep, vh, ldvh)
+		defer f.w.release(f.w.mark())
+		uh := f.w.elems.take(keep * f.m)
+		f.leftVectors(keep, uh, f.m)
+		adjoint(keep, f.m, uh, f.m, u, ldu)
+		f.rightVectors(keep, vh, ldvh, false)
 	}
 }
 
-// leftVectors writes the first keep left singular vectors of the tall form of A.
-func (f *SVD[T]) leftVectors(keep int, u []T, ldu int) {
-	defer f.w.release(f.w.mark())
+// leftVectors writes the conjugate transposes of the first keep left singular vectors of the tall form of A.
+func (f *SVD[T]) leftVectors(keep int, uh []T, ldu int) {
+	f.widen(keep, true, uh, ldu)
 	rows := max(f.m, f.n)
-	inner, ldi := u, ldu
-	if f.tall {
-		inner, ldi = f.w.elems.take(f.rows*keep), keep
+	for i := range keep {
+		clear(uh[i*ldu+f.cols : i*ldu+rows])
 	}
-	for i := range f.rows {
-		row := inner[i*ldi : i*ldi+keep]
-		if i >= f.cols {
-			clear(row)
-			continue
-		}
-		widenColumn(row, f.left[i:], f.cols)
-	}
-	applyLeftReflectors(f.rows, f.cols, f.f, f.tauQ, keep, inner, ldi, &f.w)
+	f.left.applyAdjoint(keep, uh, ldu, &f.w)
 	if f.tall {
-		Gemm(NoTrans, NoTrans, rows, keep, f.cols, FromFloat[T](1), f.q, f.cols, inner, keep, 0, u, ldu)
+		f.outer.applyAdjoint(keep, uh, ldu, &f.w)
 	}
 }
 
-// rightVectors writes the conjugate transposes of the first keep right singular vectors of the tall form of A.
-func (f *SVD[T]) rightVectors(keep int, vh []T, ldvh int) {
-	for i := range keep {
-		widenColumn(vh[i*ldvh:i*ldvh+f.cols], f.right[i*f.cols:], 1)
+// rightVectors writes the conjugate transposes of the first keep right singular vectors of the tall form of A, or the vectors.
+func (f *SVD[T]) rightVectors(keep int, v []T, ldv int, columns bool) {
+	vh, ldvh := v, ldv
+	if columns {
+		defer f.w.release(f.w.mark())
+		vh, ldvh = f.w.elems.take(keep*f.cols), f.cols
 	}
-	applyRightReflectors(f.cols, f.f, f.tauP, keep, vh, ldvh, &f.w)
+	f.widen(keep, false, vh, ldvh)
+	f.right.applyAdjoint(keep, vh, ldvh, &f.w)
+	if columns {
+		adjoint(keep, f.cols, vh, ldvh, v, ldv)
+	}
+}
+
+// widen writes the first keep singular vectors of B to the rows of x.
+func (f *SVD[T]) widen(keep int, left bool, x []T, ldx int) {
+	defer f.w.release(f.w.mark())
+	y := f.w.reals.take(keep * f.cols)
+	f.b.vectors(keep, left, y)
+	for i := range keep {
+		widenColumn(x[i*ldx:i*ldx+f.cols], y[i*f.cols:], 1)
+	}
 }
 
 // widenColumn sets dst[i] = src[i*step].
