@@ -39,16 +39,6 @@ type joint struct {
 	charges      []block.Charge
 }
 
-func (j *joint) has(i int32) bool {
-	switch i {
-	case vacant:
-		return j.vacant
-	case done:
-		return j.done
-	}
-	return true
-}
-
 // newAutomaton returns one without cells, with the bonds' fixed indices absent but for the two ends.
 func newAutomaton[T dense.Scalar](g block.Group, phys []block.Axis, charge block.Charge) *automaton[T] {
 	n := len(phys)

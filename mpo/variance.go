@@ -9,13 +9,13 @@ import (
 	"rundle/mps/block"
 )
 
-// Variance returns ||(h - E) psi||² / ||psi||² with E = <h>, which is <(h - E)²> for Hermitian h, and a bound of the rounding
-// error that went into it. A result below the bound says no more than that. h must add no charge.
+// Variance returns ||(h - E) psi||² / ||psi||² with E = <h>, which is <(h - E)²> for Hermitian h, and an estimate, on the large side,
+// of the rounding error in it. A result below the estimate, negative ones included, says no more than that. h must add no charge.
 //
 // No large numbers are subtracted: E is taken off inside the operator, spread over the sites so that the finished part of h on
 // the left of each cut has expectation value zero, and the product (h - E)^+ (h - E) is contracted as one compressed operator.
 //
-// The bound follows the rounding of each step to the end. In the contraction up to site i, entry v between indices a and w
+// The estimate follows the rounding of each step to the end. In the contraction up to site i, entry v between indices a and w
 // adds v L[a] to L[w], where L are the environments on the left; elements of size |v L[a]| are rounded independently
 // and reach the result multiplied by elements of R[w], the environment on the right. The squares
 //
