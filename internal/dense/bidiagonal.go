@@ -63,8 +63,7 @@ func (b *bidiagonalPanelState[T]) column(k, done int) float64 {
 	if done > 0 {
 		s := b.s[:done]
 		readColumn(k, b.yu, n, s)
-		Conjugate(s, s)
-		Scale(FromFloat[T](-1), s)
+		negateConjugate(s)
 		addCombination(done, m-k, s, b.vx[k:], m, v)
 	}
 	Conjugate(v, v)
@@ -80,8 +79,7 @@ func (b *bidiagonalPanelState[T]) column(k, done int) float64 {
 	if done > 0 {
 		s := b.s[:done]
 		matVec(NoTrans, done, m-k, b.vx[k:], m, v, s)
-		Conjugate(s, s)
-		Scale(FromFloat[T](-1), s)
+		negateConjugate(s)
 		addCombination(done, n-k-1, s, b.yu[k+1:], n, y)
 	}
 	Scale(Conj(tau), y)
@@ -95,8 +93,7 @@ func (b *bidiagonalPanelState[T]) row(k, done int) float64 {
 	copy(u, b.a[k*n+k+1:])
 	s := b.s[:done+1]
 	readColumn(k, b.vx, m, s)
-	Conjugate(s, s)
-	Scale(FromFloat[T](-1), s)
+	negateConjugate(s)
 	addCombination(done+1, n-k-1, s, b.yu[k+1:], n, u)
 	Conjugate(u, u)
 	beta, tau := reflector(u)
@@ -110,8 +107,7 @@ func (b *bidiagonalPanelState[T]) row(k, done int) float64 {
 	matVec(NoTrans, m-k-1, n-k-1, b.a[(k+1)*n+k+1:], n, u, x)
 	Conjugate(x, x)
 	matVec(NoTrans, done+1, n-k-1, b.yu[k+1:], n, u, s)
-	Conjugate(s, s)
-	Scale(FromFloat[T](-1), s)
+	negateConjugate(s)
 	addCombination(done+1, m-k-1, s, b.vx[k+1:], m, x)
 	Scale(Conj(tau), x)
 	return beta

@@ -7,58 +7,107 @@ import (
 	gonumlapack "gonum.org/v1/gonum/lapack/gonum"
 )
 
-// lapackRef is gonum's pure-Go LAPACK.
-var lapackRef gonumlapack.Implementation
-
 const eigenRoutine = "Hermitian eigenvalues"
+
+// Hermitian holds the spectral decomposition A = V diag(x) V^H of a Hermitian matrix. The zero value is ready; one object serves many
+// matrices, one after the other, and keeps its memory. It is not for concurrent use.
+//
+// The way: blocked Householder reduction to a real tridiagonal, also for complex A (Dongarra, Sorensen, Hammarling 1989); divide and
+// conquer on that; the reflections are applied only to the vectors that are asked for.
+type Hermitian[T Scalar] struct {
+	hermitian[T]
+	w Workspace[T]
+}
+
+// hermitian is a Hermitian whose scratch memory is somebody else's.
+type hermitian[T Scalar] struct {
+	n      int
+	values []float64
+	t      tridiagonalEigen
+	q      reflectors[T]
+}
+
+// Factor decomposes the n×n matrix whose upper triangle a holds (of the diagonal the real part counts). a is not modified. The error
+// is a *NumericalError: A holds NaN or Inf, or the iteration does not converge (never seen).
+func (f *Hermitian[T]) Factor(n int, a []T, lda int) error { return f.factor(n, a, lda, &f.w) }
+
+// Values returns the eigenvalues, ascending. The slice belongs to f and is valid until the next Factor.
+func (f *Hermitian[T]) Values() []float64 { return f.values }
+
+// Largest writes the eigenvectors of the keep largest eigenvalues, the largest first, to the columns of v (n×keep).
+func (f *Hermitian[T]) Largest(keep int, v []T, ldv int) {
+	if keep < 0 || keep > f.n {
+		panic(fmt.Sprintf("dense: %d eigenvectors asked of a %d×%d matrix", keep, f.n, f.n))
+	}
+	matrix("V", f.n, keep, ldv, len(v))
+	f.vectors(f.n-1, -1, keep, v, ldv, &f.w)
+}
 
 // Eigen computes the eigenvalues, ascending, of the n×n Hermitian matrix A and writes the eigenvectors to the columns of v. It reads
 // the upper triangle of A (of the diagonal the real part) and does not modify A; v must not overlap it. The error is a
-// *NumericalError. The way: Householder reduction to a real tridiagonal, then implicit QL/QR iteration by gonum's Dsteqr.
+// *NumericalError. A Hermitian object serves who needs only some of the vectors.
 func Eigen[T Scalar](n int, a []T, lda int, values []float64, v []T, ldv int, w *Workspace[T]) error {
-	matrix("A", n, n, lda, len(a))
 	matrix("V", n, n, ldv, len(v))
 	if len(values) != n {
 		panic(fmt.Sprintf("dense: room for %d eigenvalues of a %d×%d matrix", len(values), n, n))
 	}
+	w = orNew(w)
+	if err := w.eigen.factor(n, a, lda, w); err != nil {
+		return err
+	}
+	copy(values, w.eigen.values)
+	w.eigen.vectors(0, 1, n, v, ldv, w)
+	return nil
+}
+
+func (f *hermitian[T]) factor(n int, a []T, lda int, w *Workspace[T]) error {
+	matrix("A", n, n, lda, len(a))
+	f.n, f.values = 0, f.values[:0]
 	if n == 0 {
 		return nil
 	}
-	w = orNew(w)
 	defer w.release(w.mark())
 	s := w.elems.take(n * n)
-	hermitian(n, a, lda, s)
+	fillHermitian(n, a, lda, s)
 	top := largest(n, n, s, n)
 	if err := checkFinite(eigenRoutine, n, n, top); err != nil {
 		return err
 	}
 	scale := safeScale(top)
-	copyMatrix(n, n, scale, s, n, s, n)
-
-	ldz := n + 1 // Dsteqr runs down columns: a stride that is a power of two would map them onto one cache line
-	e, tau, z := w.reals.take(n), w.elems.take(n), w.reals.take(n*ldz)
-	tridiagonalize(n, s, values, e, tau, w)
-	clear(z)
-	for i := range n {
-		z[i*ldz+i] = 1
+	if scale != 1 {
+		copyMatrix(n, n, scale, s, n, s, n)
 	}
-	if !lapackRef.Dsteqr(lapack.EVOrig, n, values, e[:n-1], z, ldz, w.reals.take(max(1, 2*n-2))) {
+	d, e := w.reals.take(n), w.reals.take(n)
+	tridiagonalize(n, s, d, e, &f.q, w)
+	if !f.t.factor(d, e) {
 		return &NumericalError{eigenRoutine, n, n, "the iteration did not converge"}
 	}
-	for i := range n {
-		widenColumn(v[i*ldv:i*ldv+n], z[i*ldz:], 1)
-	}
-	applyTridiagonalReflectors(n, s, tau, v, ldv, w)
+	f.n, f.values = n, resize(f.values, n)
+	f.t.sorted(f.values)
 	if scale != 1 {
-		for i := range values {
-			values[i] /= scale
+		for i := range f.values {
+			f.values[i] /= scale
 		}
 	}
 	return nil
 }
 
-// hermitian fills s (n×n) with the Hermitian matrix whose upper triangle a holds.
-func hermitian[T Scalar](n int, a []T, lda int, s []T) {
+// vectors writes eigenvectors first, first+step, ... to the keep columns of v.
+func (f *hermitian[T]) vectors(first, step, keep int, v []T, ldv int, w *Workspace[T]) {
+	if keep == 0 {
+		return
+	}
+	defer w.release(w.mark())
+	n := f.n
+	x, vh := w.reals.take(keep*n), w.elems.take(keep*n)
+	f.t.vectors(first, step, keep, x)
+	widenColumn(vh, x, 1)
+	f.q.applyAdjoint(keep, vh, n, w)
+	adjoint(keep, n, vh, n, v, ldv)
+}
+
+// fillHermitian fills s (n×n) with the Hermitian matrix whose upper triangle a holds.
+func fillHermitian[T Scalar](n int, a []T, lda int, s []T) {
 	for i := range n {
 		s[i*n+i] = FromFloat[T](Real(a[i*lda+i]))
 		row := s[i*n+i+1 : i*n+n]
@@ -67,47 +116,6 @@ func hermitian[T Scalar](n int, a []T, lda int, s []T) {
 			s[(i+1+j)*n+i] = x
 		}
 		copy(row, a[i*lda+i+1:i*lda+n])
-	}
-}
-
-// tridiagonalize reduces the full Hermitian s to a real tridiagonal Q^H S Q, diagonal d (n), off-diagonal e (n-1 used). The vector of
-// reflector k stays in row k right of the diagonal, leading 1 included.
-func tridiagonalize[T Scalar](n int, s []T, d, e []float64, tau []T, w *Workspace[T]) {
-	defer w.release(w.mark())
-	vc, p := w.elems.take(n), w.elems.take(n)
-	minusOne := FromFloat[T](-1)
-	for k := range n {
-		d[k] = Real(s[k*n+k])
-		if k+1 == n {
-			break
-		}
-		size := n - k - 1
-		v, vc, p := s[k*n+k+1:k*n+n], vc[:size], p[:size]
-		Conjugate(v, v) // column k of a Hermitian matrix
-		e[k], tau[k] = reflector(v)
-		if tau[k] == 0 {
-			continue
-		}
-		// With p = tau S v: H^H S H = S - q v^H - v q^H, q = p - (conj(tau)/2) (v^H p) v.
-		rest := s[(k+1)*n+k+1:]
-		matVec(NoTrans, size, size, rest, n, v, p)
-		Scale(tau[k], p)
-		Axpy(-Conj(tau[k])*Dot(v, p)/FromFloat[T](2), v, p)
-		Conjugate(vc, v)
-		rankOne(size, size, minusOne, p, vc, rest, n)
-		Conjugate(p, p)
-		rankOne(size, size, minusOne, v, p, rest, n)
-	}
-}
-
-// applyTridiagonalReflectors replaces the n×n matrix v by Q v for the reflectors that tridiagonalize left in s.
-func applyTridiagonalReflectors[T Scalar](n int, s, tau []T, v []T, ldv int, w *Workspace[T]) {
-	defer w.release(w.mark())
-	uc, work := w.elems.take(n), w.elems.take(n)
-	for k := n - 2; k >= 0; k-- {
-		u, uc := s[k*n+k+1:k*n+n], uc[:n-k-1]
-		Conjugate(uc, u)
-		reflectLeft(n-k-1, n, tau[k], u, uc, v[(k+1)*ldv:], ldv, work)
 	}
 }
 
@@ -133,7 +141,8 @@ func TridiagonalEigen(d, e []float64, values, v []float64) error {
 	}
 	copy(scratch, e)
 	identity(n, v)
-	if !lapackRef.Dsteqr(lapack.EVOrig, n, values, scratch[:n-1], v, n, scratch[n:]) {
+	var reference gonumlapack.Implementation
+	if !reference.Dsteqr(lapack.EVOrig, n, values, scratch[:n-1], v, n, scratch[n:]) {
 		return &NumericalError{eigenRoutine, n, n, "the iteration did not converge"}
 	}
 	return nil

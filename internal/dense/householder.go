@@ -39,24 +39,6 @@ func reflector[T Scalar](x []T) (beta float64, tau T) {
 	return beta, tau
 }
 
-// reflectLeft replaces the m×n matrix C by (1 - tau v v^H) C. vc is conj(v); work holds n numbers.
-func reflectLeft[T Scalar](m, n int, tau T, v, vc []T, c []T, ldc int, work []T) {
-	if tau == 0 {
-		return
-	}
-	matVec(Trans, m, n, c, ldc, vc, work[:n])
-	rankOne(m, n, -tau, v, work[:n], c, ldc)
-}
-
-// reflectRight replaces the m×n matrix C by C (1 - tau v v^H). vc is conj(v); work holds m numbers.
-func reflectRight[T Scalar](m, n int, tau T, v, vc []T, c []T, ldc int, work []T) {
-	if tau == 0 {
-		return
-	}
-	matVec(NoTrans, m, n, c, ldc, v, work[:m])
-	rankOne(m, n, -tau, work[:m], vc, c, ldc)
-}
-
 // safeScale returns a power of two that brings a matrix whose largest entry is top near 1, or 1 when squares and quotients of its
 // entries are harmless as they are (or nothing helps: zero, not finite).
 func safeScale(top float64) float64 {

@@ -19,16 +19,3 @@ func matVec[T Scalar](op Op, m, n int, a []T, lda int, x, y []T) {
 		ref.Zgemv(tr, m, n, 1, a, lda, any(x).([]complex128), 1, 0, any(y).([]complex128), 1)
 	}
 }
-
-// rankOne adds alpha x y^T to the m×n matrix A.
-func rankOne[T Scalar](m, n int, alpha T, x, y []T, a []T, lda int) {
-	if m == 0 || n == 0 {
-		return
-	}
-	switch a := any(a).(type) {
-	case []float64:
-		ref.Dger(m, n, any(alpha).(float64), any(x).([]float64), 1, any(y).([]float64), 1, a, lda)
-	case []complex128:
-		ref.Zgeru(m, n, any(alpha).(complex128), any(x).([]complex128), 1, any(y).([]complex128), 1, a, lda)
-	}
-}

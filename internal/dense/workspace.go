@@ -6,6 +6,7 @@ type Workspace[T Scalar] struct {
 	elems arena[T]
 	reals arena[float64]
 	rows  reflectors[T] // of QR and LQ
+	eigen hermitian[T]  // of Eigen
 }
 
 // arena hands out pieces of one buffer. A buffer that is too small is replaced; pieces handed out before stay alive with the old one.
