@@ -20,10 +20,12 @@ type display interface {
 	close()
 }
 
-// newDisplay is a bar on a terminal, plain lines elsewhere.
+// newDisplay is a bar on a terminal of known size, plain lines elsewhere.
 func newDisplay(w io.Writer) display {
 	if f, ok := w.(*os.File); ok && term.IsTerminal(int(f.Fd())) {
-		return &bar{out: f}
+		if width, height, err := term.GetSize(int(f.Fd())); err == nil && width > 0 && height > 1 {
+			return &bar{out: f}
+		}
 	}
 	return &lines{w: w, now: time.Now}
 }
@@ -65,11 +67,15 @@ func progressText(p solve.Progress) string {
 	return s
 }
 
+// barRefresh is the time between two pictures of the bar.
+const barRefresh = 200 * time.Millisecond
+
 // bar shows the updates of the present sweep, with the time left of it. How many sweeps it takes nobody knows before.
 type bar struct {
 	out   *os.File
 	all   *mpb.Progress // nil before the first update: notes come first
 	one   *mpb.Bar
+	phase solve.Phase
 	sweep int
 
 	mu   sync.Mutex // text is read by the drawing goroutine
@@ -78,33 +84,31 @@ type bar struct {
 
 func (b *bar) update(p solve.Progress) {
 	if b.all == nil {
-		b.all = mpb.New(mpb.WithOutput(b.out), mpb.WithWidth(40), mpb.WithRefreshRate(200*time.Millisecond))
+		b.all = mpb.New(mpb.WithOutput(b.out), mpb.WithWidth(30), mpb.WithRefreshRate(barRefresh))
 	}
 	b.mu.Lock()
 	b.text = progressText(p)
 	b.mu.Unlock()
-	if p.Phase != solve.Sweeping || p.Of == 0 {
-		if b.one == nil {
-			b.begin(1)
-		}
-		return
-	}
-	if b.one == nil || p.Sweep != b.sweep {
+	if b.one == nil || p.Phase != b.phase || p.Sweep != b.sweep {
 		b.end()
-		b.sweep = p.Sweep
+		b.phase, b.sweep = p.Phase, p.Sweep
 		b.begin(int64(p.Of))
 	}
 	b.one.SetCurrent(int64(p.Done))
 }
 
+// begin draws a new bar; one of no length tells no time.
 func (b *bar) begin(total int64) {
-	b.one = b.all.AddBar(total, mpb.BarRemoveOnComplete(),
-		mpb.PrependDecorators(decor.Any(func(decor.Statistics) string {
-			b.mu.Lock()
-			defer b.mu.Unlock()
-			return b.text + " "
-		})),
-		mpb.AppendDecorators(decor.AverageETA(decor.ET_STYLE_GO), decor.Name(" left of this sweep")))
+	text := decor.Any(func(decor.Statistics) string {
+		b.mu.Lock()
+		defer b.mu.Unlock()
+		return " " + b.text
+	})
+	decorators := []decor.Decorator{text}
+	if b.phase == solve.Sweeping {
+		decorators = []decor.Decorator{decor.AverageETA(decor.ET_STYLE_GO), decor.Name(" left of"), text}
+	}
+	b.one = b.all.AddBar(max(1, total), mpb.BarRemoveOnComplete(), mpb.AppendDecorators(decorators...))
 }
 
 func (b *bar) end() {

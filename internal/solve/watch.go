@@ -40,7 +40,7 @@ func (w *watch) hook(o *dmrg.Options) {
 
 // enter reports a phase.
 func (w *watch) enter(p Phase) {
-	w.now.Phase = p
+	w.now.Phase, w.now.Done, w.now.Of = p, 0, 0
 	w.tell()
 }
 
