@@ -13,7 +13,7 @@ import (
 func TestFrustratedLadder(t *testing.T) {
 	s, r, _ := solve(t, "frustrated-ladder")
 	require.Equal(t, "real", r.Model.Arithmetic)
-	require.InDelta(t, -14.0974834759, s.EnergyLimit, 1e-8)
+	require.InDelta(t, -14.0974834748, s.EnergyLimit, 1e-8)
 	require.LessOrEqual(t, s.EnergyError, 1e-8)
 	rungs, diagonals, bonds := s.values(t, "rung singlets"), s.values(t, "diagonal singlets"), s.values(t, "leg bonds")
 	require.InDelta(t, 0.7978511, rungs["7"], 2e-6)

@@ -23,8 +23,7 @@ import (
 func main() {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
 	defer stop()
-	m := model{rungs: 10, bosons: 5, flux: math.Pi / 2}
-	err := m.follow(ctx, os.Stdout, []float64{0.25, 0.5, 0.75, 1, 1.25, 1.5, 2, 3})
+	err := shownModel.follow(ctx, os.Stdout, []float64{0.25, 0.5, 0.75, 1, 1.25, 1.5, 2, 3})
 	if err != nil {
 		log.Fatal(err)
 	}
@@ -37,6 +36,9 @@ type model struct {
 	rungs, bosons int
 	flux          float64 // a plaquette
 }
+
+// shownModel is small enough for seconds.
+var shownModel = model{rungs: 10, bosons: 5, flux: math.Pi / 2}
 
 // point is what is read out at one rung coupling.
 type point struct {

@@ -5,7 +5,10 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"os"
+	"path/filepath"
 	"regexp"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -84,17 +87,19 @@ func TestSolve(t *testing.T) {
 	}
 }
 
-// One boson alone is screened above K = 2J tan(phi/2) sin(phi/2) (Huegel, Paredes 2014) on a long ladder, and makes vortices below.
+// One boson alone is screened above K = 2J tan(phi/2) sin(phi/2) on a long ladder (Huegel, Paredes 2014), and makes vortices below.
 func TestMeissnerThreshold(t *testing.T) {
-	m := model{rungs: 20, bosons: 1, flux: math.Pi / 2}
+	m := model{rungs: 12, bosons: 1, flux: math.Pi / 2}
 	threshold := exact.MeissnerThreshold(1, m.flux)
-	below, _, err := m.solve(t.Context(), 0.8*threshold, nil)
-	require.NoError(t, err)
-	require.Positive(t, below.reversed)
-	above, _, err := m.solve(t.Context(), 1.1*threshold, nil)
-	require.NoError(t, err)
-	require.Zero(t, above.reversed)
-	require.Positive(t, above.edge)
+	for _, c := range []struct {
+		factor   float64
+		vortices bool
+	}{{0.6, true}, {1.2, false}} {
+		compare(t, m, c.factor*threshold)
+		p, _, err := m.solve(t.Context(), c.factor*threshold, nil)
+		require.NoError(t, err)
+		require.Equal(t, c.vortices, p.reversed > 0)
+	}
 }
 
 // The table as README shows it: a line for each coupling, the second search begun from the first's state.
@@ -109,4 +114,23 @@ func TestFollow(t *testing.T) {
 	}
 	energy, _ := diagonalized(t, m, 1)
 	require.Contains(t, lines[2], fmt.Sprintf(" %.5f ", energy))
+}
+
+// The line of README's table at K = J is what the program gives.
+func TestReadme(t *testing.T) {
+	text, err := os.ReadFile(filepath.Join("..", "..", "README.md"))
+	require.NoError(t, err)
+	_, table, found := strings.Cut(string(text), "$ go run ./examples/screening-current\n")
+	require.True(t, found)
+	shown := regexp.MustCompile(`(?m)^ 1\.00 +(\S+) ± \S+ +(\S+) +(\d+)  converged$`).FindStringSubmatch(table)
+	require.Len(t, shown, 4)
+	p, _, err := shownModel.solve(t.Context(), 1, nil)
+	require.NoError(t, err)
+	energy, err := strconv.ParseFloat(shown[1], 64)
+	require.NoError(t, err)
+	edge, err := strconv.ParseFloat(shown[2], 64)
+	require.NoError(t, err)
+	require.InDelta(t, p.energy, energy, precision)
+	require.InDelta(t, p.edge, edge, 1e-4)
+	require.Equal(t, strconv.Itoa(p.reversed), shown[3])
 }
