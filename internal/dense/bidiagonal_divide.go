@@ -29,23 +29,8 @@ type bidiagonalSVD struct {
 func (b *bidiagonalSVD) factor(d, e []float64) bool {
 	n := len(d)
 	b.n = n
-	top := max(larger(0, d), larger(0, e[:n-1]))
-	b.scale = 1
-	if top != 0 {
-		_, exp := math.Frexp(top)
-		b.scale = math.Ldexp(1, exp)
-	}
 	b.d, b.e, b.z, b.values = resize(b.d, n), resize(b.e, n), resize(b.z, n), resize(b.values, n)
-	b.e[n-1] = 0
-	for i := range n {
-		b.d[i] = d[i] / b.scale
-		if i+1 < n {
-			b.e[i] = e[i] / b.scale
-		}
-	}
-	if top == 0 {
-		b.scale = 0
-	}
+	b.scale = normalize(d, e, b.d, b.e)
 	b.index, b.all = resize(b.index, n), counting(b.all, n)
 	b.left, b.right = resize(b.left, n*n), resize(b.right, n*n)
 	clear(b.left)

@@ -15,7 +15,7 @@ import (
 
 // Bounds of the scaled residuals, in units of eps max(m,n); the largest values met are half of them.
 const (
-	qrBound    = 6.0
+	qrBound    = 8.0
 	svdBound   = 24.0
 	valueBound = 12.0
 )

@@ -8,6 +8,38 @@ const epsilon = 0x1p-52
 // deflation times the largest entry is what a merge of divide and conquer neglects.
 const deflation = 8 * epsilon
 
+// vanishing is what counts as zero beside a largest entry of 1: quotients of smaller numbers may be quotients of subnormal ones, which
+// are not accurate.
+const vanishing = 0x1p-400
+
+// normalize copies the diagonal d and the off-diagonal e (len(d)-1 used) of a matrix, divided by a power of two near its largest entry,
+// which it returns; zero for a matrix of zeros.
+func normalize(d, e, dst, off []float64) (scale float64) {
+	n := len(d)
+	top := max(larger(0, d), larger(0, e[:n-1]))
+	if top == 0 {
+		clear(dst)
+		clear(off)
+		return 0
+	}
+	_, exp := math.Frexp(top)
+	scale = math.Ldexp(1, exp)
+	settle := func(x float64) float64 {
+		if x /= scale; math.Abs(x) > vanishing {
+			return x
+		}
+		return 0
+	}
+	off[n-1] = 0
+	for i, x := range d {
+		dst[i] = settle(x)
+		if i+1 < n {
+			off[i] = settle(e[i])
+		}
+	}
+	return scale
+}
+
 // part tells where a row of singular or eigenvectors can be different from zero.
 type part byte
 

@@ -25,19 +25,8 @@ type tridiagonalEigen struct {
 func (b *tridiagonalEigen) factor(d, e []float64) bool {
 	n := len(d)
 	b.n = n
-	top := max(larger(0, d), larger(0, e[:n-1]))
-	b.scale = 1
-	if top != 0 {
-		_, exp := math.Frexp(top)
-		b.scale = math.Ldexp(1, exp)
-	}
 	b.d, b.e, b.z, b.values = resize(b.d, n), resize(b.e, n), resize(b.z, n), resize(b.values, n)
-	for i := range n {
-		b.d[i], b.e[i] = d[i]/b.scale, 0
-		if i+1 < n {
-			b.e[i] = e[i] / b.scale
-		}
-	}
+	b.scale = normalize(d, e, b.d, b.e)
 	b.index, b.all = resize(b.index, n), counting(b.all, n)
 	b.rows = resize(b.rows, n*n)
 	clear(b.rows)
