@@ -1,11 +1,10 @@
 package dmrg
 
 import (
-	"context"
+	"errors"
 	"fmt"
 	"math"
 	"math/rand/v2"
-	"time"
 
 	"rundle/internal/dense"
 	"rundle/internal/krylov"
@@ -15,21 +14,25 @@ import (
 	"rundle/mps/block"
 )
 
-// engine holds a state, its environments and the workspaces of one search.
+// engine holds a state, the environments of its orthogonality centre and the workspaces of one search. Between two updates the centre
+// is at site psi.Center, and the environments left of it and right of it stand: left[0..Center] and right[Center..].
 type engine[T dense.Scalar] struct {
-	op     *mpo.Operator[T]
-	plan   *mpo.Planner[T]
-	psi    *mps.Chain[T]
-	left   []*block.Tensor[T] // left[i]: everything left of site i
-	right  []*block.Tensor[T] // right[i]: everything right of site i
-	pool   *task.Pool
-	rng    *rand.Rand
-	work   mpo.Workspace[T]
-	kry    krylov.Workspace[T]
-	onBond func(Position)
-	sweeps int
-
+	op       *mpo.Operator[T]
+	plan     *mpo.Planner[T]
+	psi      *mps.Chain[T]
+	left     []*block.Tensor[T] // left[i]: everything left of site i; nil where it does not stand
+	right    []*block.Tensor[T] // right[i]: everything right of site i
+	spare    [][]T              // slabs of environments that are out of date
+	pool     *task.Pool
+	rng      *rand.Rand
+	work     mpo.Workspace[T]
+	kry      krylov.Workspace[T]
+	halt     func() error // why the search has to stop now; nil: go on
+	onBond   func(Position)
+	sweeps   int
+	flops    float64 // of environments and projected Hamiltonians, in real operations
 	residual float64 // of the last eigenvector
+	growth   float64 // those of the environments of the last left-going half sweep
 }
 
 // setting is what one sweep is told.
@@ -52,51 +55,111 @@ type outcome struct {
 	change    float64 // largest norm by which an update changed its normalized two-site tensor, in the whole sweep
 }
 
-func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], threads int, seed uint64) *engine[T] {
-	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(threads), rng: rand.New(rand.NewPCG(seed, 0x72756e646c65))}
+// newEngine begins a search from psi, which it keeps and normalizes; prepare must follow. Once halt says why to stop, the engine's methods return
+// that.
+func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settled, halt func() error) *engine[T] {
 	n := psi.Len()
-	e.left, e.right = make([]*block.Tensor[T], n), make([]*block.Tensor[T], n)
+	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt,
+		rng:  rand.New(rand.NewPCG(opt.Seed, noiseStream)),
+		left: make([]*block.Tensor[T], n), right: make([]*block.Tensor[T], n)}
 	psi.Canonicalize(0, e.pool)
-	e.left[0] = mpo.LeftEdge(op)
-	e.right[n-1] = mpo.RightEdge(op, psi.Charge(), psi.Charge())
-	for i := n - 1; i > 0; i-- {
+	psi.Normalize()
+	return e
+}
+
+// noiseStream sets the random numbers of the engine apart from others of the same seed.
+const noiseStream = 0x72756e646c65
+
+// prepare makes the environments of the first site.
+func (e *engine[T]) prepare() error {
+	e.left[0] = mpo.LeftEdge(e.op)
+	e.right[len(e.right)-1] = mpo.RightEdge(e.op, e.psi.Charge(), e.psi.Charge())
+	for i := len(e.right) - 1; i > 0; i-- {
+		if err := e.halt(); err != nil {
+			return err
+		}
 		e.growRight(i)
 	}
-	return e
+	return nil
 }
 
 // growLeft makes left[i+1] from left[i]; growRight makes right[i-1] from right[i].
 func (e *engine[T]) growLeft(i int) {
 	a := e.psi.Sites[i]
 	g := e.plan.Left(i, e.left[i].Structure, a.Structure, a.Structure)
-	e.left[i+1] = block.New[T](g.Out)
+	e.left[i+1] = e.environment(g.Out)
 	g.Run(e.left[i+1], e.left[i], a, a, &e.work, e.pool)
+	e.count(g.Flops())
 }
 
 func (e *engine[T]) growRight(i int) {
 	a := e.psi.Sites[i]
 	g := e.plan.Right(i, e.right[i].Structure, a.Structure, a.Structure)
-	e.right[i-1] = block.New[T](g.Out)
+	e.right[i-1] = e.environment(g.Out)
 	g.Run(e.right[i-1], e.right[i], a, a, &e.work, e.pool)
+	e.growth += e.count(g.Flops())
 }
 
-// sweep goes right and left once over all bonds. On a cancelled context it stops between two bonds and returns its error;
-// the chain is then a valid state.
-func (e *engine[T]) sweep(ctx context.Context, s setting) (outcome, error) {
+// count adds multiplications and additions to flops, in real operations.
+func (e *engine[T]) count(flops float64) float64 {
+	if dense.IsComplex[T]() {
+		flops *= 4
+	}
+	e.flops += flops
+	return flops
+}
+
+// environment returns a tensor for a new environment, in an old slab where one is large enough.
+func (e *engine[T]) environment(s *block.Structure) *block.Tensor[T] {
+	best := -1
+	for i, slab := range e.spare {
+		if cap(slab) >= s.Size && (best < 0 || cap(slab) < cap(e.spare[best])) {
+			best = i
+		}
+	}
+	if best < 0 {
+		return block.New[T](s)
+	}
+	slab := e.spare[best][:s.Size]
+	e.spare = append(e.spare[:best], e.spare[best+1:]...)
+	return &block.Tensor[T]{Structure: s, Data: slab}
+}
+
+// release gives up an environment that is out of date. Of the slabs that are free the two largest are kept.
+func (e *engine[T]) release(t **block.Tensor[T]) {
+	if *t == nil {
+		return
+	}
+	e.spare = append(e.spare, (*t).Data)
+	*t = nil
+	if len(e.spare) > 2 {
+		least := 0
+		for i, slab := range e.spare {
+			if cap(slab) < cap(e.spare[least]) {
+				least = i
+			}
+		}
+		e.spare = append(e.spare[:least], e.spare[least+1:]...)
+	}
+}
+
+// sweep goes right and left once over all bonds. Told to halt it stops between two updates, or gives up the one at hand, and returns
+// why; the chain is then a valid state.
+func (e *engine[T]) sweep(s setting) (outcome, error) {
 	e.sweeps++
 	n := e.psi.Len()
 	if n == 1 {
 		return e.single(s)
 	}
 	var out outcome
-	for i := 0; i < n-1; i++ {
-		if _, err := e.step(ctx, i, true, s, &out); err != nil {
+	for i := e.psi.Center; i < n-1; i++ {
+		if _, err := e.step(i, true, s, &out); err != nil {
 			return out, err
 		}
 	}
-	out = outcome{change: out.change}
+	out, e.growth = outcome{change: out.change}, 0
 	for i := n - 2; i >= 0; i-- {
-		energy, err := e.step(ctx, i, false, s, &out)
+		energy, err := e.step(i, false, s, &out)
 		if err != nil {
 			return out, err
 		}
@@ -105,13 +168,13 @@ func (e *engine[T]) sweep(ctx context.Context, s setting) (outcome, error) {
 	return out, nil
 }
 
-func (e *engine[T]) step(ctx context.Context, i int, right bool, s setting, out *outcome) (float64, error) {
-	if err := ctx.Err(); err != nil {
+func (e *engine[T]) step(i int, right bool, s setting, out *outcome) (float64, error) {
+	if err := e.halt(); err != nil {
 		return 0, err
 	}
 	energy, discarded, change, err := e.update(i, right, s)
 	if err != nil {
-		return 0, fmt.Errorf("dmrg: bond %d: %w", i, err)
+		return 0, err
 	}
 	out.change = max(out.change, change)
 	out.discarded = max(out.discarded, discarded)
@@ -124,7 +187,8 @@ func (e *engine[T]) step(ctx context.Context, i int, right bool, s setting, out 
 	return energy, nil
 }
 
-// update optimizes sites i and i+1 together (White 1992) and moves the orthogonality centre on.
+// update optimizes sites i and i+1 together (White 1992) and moves the orthogonality centre on. On an error the chain and its environments are
+// as they were.
 func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, change float64, err error) {
 	theta := block.Contract(e.psi.Sites[i], e.psi.Sites[i+1], []int{2}, []int{0})
 	h := e.plan.Project(i, 2, e.left[i], e.right[i+1], theta.Structure)
@@ -132,9 +196,8 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 		e.shake(theta, s.noise)
 	}
 	before := theta.Clone()
-	energy, err = e.lowest(h, theta, s)
-	if err != nil {
-		return 0, 0, 0, err
+	if energy, err = e.lowest(h, theta, s); err != nil {
+		return 0, 0, 0, e.at(i, err)
 	}
 	change = distance(before, theta)
 	var a, b *block.Tensor[T]
@@ -144,17 +207,27 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 		a, b, discarded, err = e.split(theta, right, s)
 	}
 	if err != nil {
-		return 0, 0, 0, err
+		return 0, 0, 0, e.at(i, err)
 	}
 	e.psi.Sites[i], e.psi.Sites[i+1] = a, b
 	if right {
+		e.release(&e.right[i])
 		e.psi.Center = i + 1
 		e.growLeft(i)
 	} else {
+		e.release(&e.left[i+1])
 		e.psi.Center = i
 		e.growRight(i + 1)
 	}
 	return energy, discarded, change, nil
+}
+
+// at names the bond of a failure.
+func (e *engine[T]) at(bond int, err error) error {
+	if errors.Is(err, e.halt()) {
+		return err
+	}
+	return fmt.Errorf("dmrg: bond %d: %w", bond, err)
 }
 
 // distance is the norm of the part of y, normalized, that is orthogonal to x. It overwrites x.
@@ -170,24 +243,57 @@ func distance[T dense.Scalar](x, y *block.Tensor[T]) float64 {
 	return x.Norm()
 }
 
-// single is the ladder of one site.
+// singleVectors bounds the Krylov space of a ladder of one site, whose whole problem is the sector of that site.
+const singleVectors = 256
+
+// single is the sweep of a ladder of one site.
 func (e *engine[T]) single(s setting) (outcome, error) {
-	theta := e.psi.Sites[0]
+	theta := e.psi.Sites[0].Clone()
 	h := e.plan.Project(0, 1, e.left[0], e.right[0], theta.Structure)
-	dense.Random(e.rng, theta.Block(0))
-	s.vectors = 200
+	e.shake(theta, 1)
+	s.vectors = singleVectors
 	energy, err := e.lowest(h, theta, s)
-	return outcome{energy: energy, largest: 1}, err
+	if err != nil {
+		return outcome{}, e.at(0, err)
+	}
+	e.psi.Sites[0] = theta
+	return outcome{energy: energy, largest: 1, residual: e.residual}, nil
 }
 
+// lowest replaces theta by the lowest eigenvector that a few Krylov vectors give, and returns its energy.
 func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s setting) (float64, error) {
-	r := krylov.Lowest(func(dst, src []T) { h.Apply(dst, src, &e.work, e.pool) }, theta.Data, nil,
-		krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance}, &e.kry)
+	var halted error
+	apply := func(dst, src []T) {
+		if halted = e.halt(); halted != nil {
+			clear(dst) // ends the iteration
+			return
+		}
+		h.Apply(dst, src, &e.work, e.pool)
+		e.count(h.Flops())
+	}
+	r := krylov.Lowest(apply, theta.Data, nil, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance}, &e.kry)
+	if halted != nil {
+		return 0, halted
+	}
 	if math.IsNaN(r.Value) || math.IsInf(r.Value, 0) {
-		return 0, fmt.Errorf("the eigensolver met a number that is not finite; look for couplings whose products overflow")
+		return 0, errors.New("the energy is not finite; look for couplings whose products overflow")
 	}
 	e.residual = r.Residual
 	return r.Value, nil
+}
+
+// energy returns <H> of the state, from the environments of its centre where they stand.
+func (e *engine[T]) energy() float64 {
+	c := e.psi.Center
+	if e.left[c] == nil || e.right[c] == nil {
+		return dense.Real(mpo.Expectation(e.psi, e.op, e.pool))
+	}
+	theta := e.psi.Sites[c]
+	h := e.plan.Project(c, 1, e.left[c], e.right[c], theta.Structure)
+	out := block.New[T](theta.Structure)
+	h.Apply(out.Data, theta.Data, &e.work, e.pool)
+	norm := theta.Norm()
+	return dense.Real(block.Dot(theta, out)) / (norm * norm)
 }
 
 // shake adds a random part of relative norm size to theta, inside its blocks.
@@ -218,5 +324,3 @@ func (e *engine[T]) split(theta *block.Tensor[T], right bool, s setting) (a, b *
 	}
 	return u, v, spec.Discarded, nil
 }
-
-func since(t time.Time) float64 { return time.Since(t).Seconds() }

@@ -11,10 +11,13 @@ type settledStage struct {
 	change    float64 // of the last clean sweep, see outcome
 }
 
-func (s settledStage) energy() float64 { return s.energies[len(s.energies)-1] }
+func (s *settledStage) energy() float64 { return s.energies[len(s.energies)-1] }
+
+// settling is whether a second clean sweep has confirmed the first.
+func (s *settledStage) settling() bool { return len(s.energies) >= 2 }
 
 // drift bounds what further sweeps at the same bond dimension would still gain, from the geometric decay of the last gains.
-func (s settledStage) drift() float64 {
+func (s *settledStage) drift() float64 {
 	n := len(s.energies)
 	if n < 2 {
 		return math.Inf(1)
@@ -29,32 +32,40 @@ func (s settledStage) drift() float64 {
 	return last * ratio / (1 - ratio)
 }
 
-// estimate extrapolates the energy linearly in the discarded weight (White, Huse 1993; Legeza, Faeth 1996) and states its error.
-type estimate struct{ limit, err float64 }
+// estimate extrapolates the energy linearly in the discarded weight (White, Huse 1993; Legeza, Faeth 1996) and states its error, of which
+// rounding is a part.
+type estimate struct{ limit, err, rounding float64 }
 
-// estimateError judges the stages so far. scale is the size of the Hamiltonian's terms, bonds the number of bonds.
+// unknown is the estimate where no stage has settled.
+var unknown = estimate{limit: math.NaN(), err: math.Inf(1)}
+
+// Figures of the error estimate.
+const (
+	unknownSlope = 4     // couplings a unit of discarded weight, where no earlier stage tells: found on the models of the tests
+	apart        = 0.8   // ratio of discarded weights below which two stages tell a slope
+	roundingUnit = 4e-16 // relative error of an energy, and error for each coupling that a bond sees
+)
+
+// estimateError judges the stages that have settled. scale is the size of the Hamiltonian's terms, bonds the number of bonds.
 //
 // The error adds up three parts: the whole extrapolated distance (the linear law is itself only a trend), what sweeping on
 // would gain, and rounding.
 func estimateError(stages []settledStage, scale float64, bonds int) estimate {
-	last := stages[len(stages)-1]
-	rounding := 4e-16 * (math.Abs(last.energy()) + scale*math.Sqrt(float64(bonds)))
-	slope := scale // energy a unit of discarded weight, when no second stage tells
-	known := false
-	if n := len(stages); n >= 2 {
-		before := stages[n-2]
-		if dw := before.discarded - last.discarded; dw > 0 && last.discarded < 0.8*before.discarded {
-			if k := (before.energy() - last.energy()) / dw; k > 0 {
-				slope, known = k, true
-			}
+	for len(stages) > 0 && !stages[len(stages)-1].settling() {
+		stages = stages[:len(stages)-1]
+	}
+	if len(stages) == 0 {
+		return unknown
+	}
+	last := &stages[len(stages)-1]
+	rounding := roundingUnit * (math.Abs(last.energy()) + scale*math.Sqrt(float64(bonds)))
+	shift, limit := unknownSlope*scale*last.discarded, last.energy()
+	if n := len(stages); n >= 2 && last.discarded < apart*stages[n-2].discarded {
+		before := &stages[n-2]
+		if slope := (before.energy() - last.energy()) / (before.discarded - last.discarded); slope > 0 {
+			shift = slope * last.discarded
+			limit -= shift
 		}
 	}
-	shift := slope * last.discarded
-	limit := last.energy()
-	if known {
-		limit -= shift
-	} else {
-		shift *= 4
-	}
-	return estimate{limit: limit, err: shift + last.drift() + rounding}
+	return estimate{limit: limit, err: shift + last.drift() + rounding, rounding: rounding}
 }

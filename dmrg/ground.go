@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"time"
 
 	"rundle/internal/dense"
 	"rundle/mpo"
@@ -16,17 +17,33 @@ import (
 // Ground finds the lowest state of h in a sector by two-site DMRG. Charges that the sector does not name are left free: the
 // result is the lowest over all their values, found from starts in several of them, and its Sector names the values found.
 //
-// An error says what the caller must mend: a sector that the ladder cannot hold, a bad option. If ctx ends, the result holds
-// the last state and the error is ctx's.
+// An error says what the caller must mend: a sector that the ladder cannot hold, a bad option. If ctx ends, the error is ctx's, and the
+// result holds the last state; it is nil if ctx ended while free charges were still being chosen.
 func Ground(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*Result, error) {
+	begin := time.Now()
+	if err := opt.check(); err != nil {
+		return nil, err
+	}
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
 	p, err := newProblem(h, sector, opt)
 	if err != nil {
 		return nil, err
 	}
-	if p.strings.Real {
-		return ground(ctx, p, mps.NewReal)
+	p.halt = func() error {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		if opt.Time > 0 && time.Since(begin) >= opt.Time {
+			return errTime
+		}
+		return nil
 	}
-	return ground(ctx, p, mps.NewComplex)
+	if p.strings.Real && !opt.Complex {
+		return ground(p, mps.NewReal)
+	}
+	return ground(p, mps.NewComplex)
 }
 
 // problem is a Hamiltonian in its frames with a target sector and settled options.
@@ -35,8 +52,10 @@ type problem struct {
 	frames  *ladder.Frames
 	strings *ladder.Strings
 	target  ladder.Target
+	starter *starter
 	opt     settled
-	scale   float64 // largest coupling
+	scale   float64 // largest coupling, 1 if there is none
+	halt    func() error
 }
 
 func newProblem(h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*problem, error) {
@@ -52,24 +71,21 @@ func newProblem(h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*prob
 	if err != nil {
 		return nil, err
 	}
-	p := &problem{h: h, frames: frames, strings: s, target: target}
-	for _, c := range s.Coef {
-		p.scale = max(p.scale, math.Hypot(real(c), imag(c)))
-	}
-	if p.scale == 0 {
+	p := &problem{h: h, frames: frames, strings: s, target: target, starter: newStarter(s)}
+	if p.scale = p.starter.scale; p.scale == 0 {
 		p.scale = 1
 	}
-	p.opt, err = opt.settle(p.scale)
-	return p, err
+	p.opt = opt.settle(p.scale)
+	return p, nil
 }
 
 // ground runs the search in arithmetic T; wrap makes the untyped state.
-func ground[T dense.Scalar](ctx context.Context, p *problem, wrap func(*mps.Chain[T], *ladder.Frames, *ladder.Scope) (*mps.State, error)) (*Result, error) {
+func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames, *ladder.Scope) (*mps.State, error)) (*Result, error) {
 	op, err := mpo.Build[T](p.strings, mpo.Options{})
 	if err != nil {
 		return nil, err
 	}
-	total, err := p.pickTotal(ctx, func(q block.Charge) (float64, error) { return scout[T](ctx, p, op, q) })
+	total, err := pickTotal(p, op)
 	if err != nil {
 		return nil, err
 	}
@@ -77,34 +93,48 @@ func ground[T dense.Scalar](ctx context.Context, p *problem, wrap func(*mps.Chai
 	if err != nil {
 		return nil, err
 	}
-	toState := func(c *mps.Chain[T]) *mps.State {
-		s, err := wrap(c, p.frames, p.h.Scope)
-		if err != nil {
-			panic(fmt.Sprintf("dmrg: a state of the search does not fit its frames: %v", err))
-		}
-		return s
-	}
-	e := newEngine(op, psi, p.opt.Threads, p.opt.Seed)
+	e := newEngine(op, psi, p.opt, p.halt)
 	e.onBond = p.opt.OnBond
+	toState := func(c *mps.Chain[T]) (*mps.State, error) { return wrap(c, p.frames, p.h.Scope) }
 	s := &search[T]{engine: e, opt: p.opt, scale: p.scale, wrap: toState}
-	verdict, reason, est, err := s.run(ctx)
-	r := &Result{State: toState(e.psi), Verdict: verdict, Reason: reason, Sweeps: s.sweeps, Stages: s.reports,
-		Sector: p.frames.Values(total), OperatorBonds: op.BondDims(), LargestBond: e.psi.MaxBond(),
-		Energy: math.NaN(), EnergyLimit: est.limit, EnergyError: est.err}
+	verdict, reason, err := s.run()
+	ended := errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded)
+	if err != nil && !ended {
+		return nil, err
+	}
+	r := s.result(verdict, reason, ended)
+	r.Sector = p.frames.Values(total)
+	state, failed := toState(e.psi)
+	if failed != nil {
+		return nil, failed
+	}
+	r.State = state
+	return r, err
+}
+
+// result gathers what the search found; where it was ended from outside, without what takes time.
+func (s *search[T]) result(verdict Verdict, reason string, ended bool) *Result {
+	e, est := s.engine, s.estimate()
+	r := &Result{Verdict: verdict, Reason: reason, Sweeps: s.sweeps, Stages: s.reports, OperatorBonds: e.op.BondDims(),
+		LargestBond: e.psi.MaxBond(), Energy: math.NaN(), EnergyLimit: est.limit, EnergyError: est.err,
+		Variance: math.NaN(), VarianceRounding: math.NaN()}
 	if n := len(s.sweeps); n > 0 {
 		r.DiscardedWeight = s.sweeps[n-1].Discarded
 	}
-	if err != nil && (errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded)) {
-		return r, err
+	if !ended {
+		r.Energy = e.energy()
+		if s.varianceIsCheap() {
+			r.Variance, r.VarianceRounding = mpo.Variance(e.psi, e.op, e.pool)
+		}
 	}
-	if err != nil {
-		return nil, err
+	if math.IsNaN(r.EnergyLimit) {
+		r.EnergyLimit = r.Energy
 	}
-	r.Energy = dense.Real(mpo.Expectation(e.psi, op, e.pool))
-	return r, nil
+	r.Flops = e.flops
+	return r
 }
 
-// startChain is the given start state where it fits, else a product state of low diagonal energy.
+// startChain is the given start state where there is one, else a product state of low diagonal energy.
 func startChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
 	if p.opt.Start != nil {
 		return givenChain[T](p, total)
@@ -113,13 +143,14 @@ func startChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], 
 }
 
 func productChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
-	states, _, err := startStates(p.strings, total)
+	states, _, err := p.starter.states(total)
 	if err != nil {
 		return nil, err
 	}
 	return mps.Product[T](p.strings.Group, p.strings.Axes, states)
 }
 
+// givenChain copies the start state, if it fits.
 func givenChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
 	c, err := mps.ChainOf[T](p.opt.Start)
 	if err != nil {
@@ -128,44 +159,17 @@ func givenChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], 
 	if c.Group != p.strings.Group || c.Len() != len(p.strings.Axes) {
 		return nil, fmt.Errorf("dmrg: the start state has %d sites and charges %v, the Hamiltonian %d and %v", c.Len(), c.Group, len(p.strings.Axes), p.strings.Group)
 	}
+	theirs := p.opt.Start.Frames()
 	for i, a := range p.strings.Axes {
-		if !c.Sites[i].Axes[1].Equal(a) {
-			return nil, fmt.Errorf("dmrg: site %d of the start state has other local states than the Hamiltonian's", i)
+		if !c.Sites[i].Axes[1].Equal(a) || theirs.Sites[i].Rotation != p.frames.Sites[i].Rotation {
+			return nil, fmt.Errorf("dmrg: site %d of the start state has other local states than the Hamiltonian's; start from a state of a Hamiltonian with the same charges", i)
 		}
 	}
 	if c.Charge() != total {
 		return nil, fmt.Errorf("dmrg: the start state lies in the sector %v, not %v", p.frames.Values(c.Charge()), p.frames.Values(total))
 	}
+	if norm := c.Norm(); !(norm > 0) || math.IsInf(norm, 0) {
+		return nil, fmt.Errorf("dmrg: the start state has the norm %v; expected a state that is not zero", norm)
+	}
 	return c.Clone(), nil
-}
-
-// Settings of the short runs that choose among the values of free charges.
-const (
-	scoutBond   = 32
-	scoutSweeps = 3
-	scoutLimit  = 4096 // values of the free charges looked at
-)
-
-// scout returns the energy of a short run in a sector.
-func scout[T dense.Scalar](ctx context.Context, p *problem, op *mpo.Operator[T], total block.Charge) (float64, error) {
-	psi, err := productChain[T](p, total)
-	if err != nil {
-		return 0, err
-	}
-	e := newEngine(op, psi, p.opt.Threads, p.opt.Seed)
-	var energy float64
-	set := setting{bond: scoutBond, weight: 1e-10, mixing: 1e-3, noise: 1e-2, vectors: vectorsEarly, tolerance: 1e-6 * p.scale}
-	for k := 0; k <= scoutSweeps; k++ {
-		if k == scoutSweeps {
-			set.mixing, set.noise = 0, 0
-		}
-		out, err := e.sweep(ctx, set)
-		if err != nil {
-			return 0, err
-		}
-		energy = out.energy
-		set.mixing *= 0.1
-		set.noise *= 0.3
-	}
-	return energy, nil
 }

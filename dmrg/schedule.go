@@ -1,7 +1,7 @@
 package dmrg
 
 import (
-	"context"
+	"errors"
 	"fmt"
 	"math"
 	"time"
@@ -14,8 +14,10 @@ import (
 const (
 	firstBond     = 24
 	bondGrowth    = 1.6  // factor between stages
+	leastGrowth   = 8    // states more at the least
 	maxCleanStage = 12   // clean sweeps of a stage whose bond is full
 	maxCleanWhole = 60   // clean sweeps of a stage that truncates next to nothing: only sweeping gains more
+	maxStages     = 40   // of a search whose bond is not full
 	firstMixing   = 1e-3 // weight of the perturbation in the first sweep of a stage
 	checkMixing   = 1e-6 // the same, where the stage before left the bond unfilled: to see that no sector was missed
 	mixingDecay   = 0.1
@@ -30,126 +32,168 @@ type search[T dense.Scalar] struct {
 	engine *engine[T]
 	opt    settled
 	scale  float64
-	wrap   func(*mps.Chain[T]) *mps.State
+	wrap   func(*mps.Chain[T]) (*mps.State, error)
 
 	stages  []settledStage
 	sweeps  []Sweep
 	reports []Stage
-	start   time.Time
 }
 
-// run sweeps until the error estimate is below the wanted precision or a cap is met. A cancelled context ends it with its error;
-// the chain then holds the last state.
-func (s *search[T]) run(ctx context.Context) (Verdict, string, estimate, error) {
-	s.start = time.Now()
-	bond := min(firstBond, s.opt.Bond)
-	if d := s.engine.psi.MaxBond(); d > bond {
-		bond = min(d, s.opt.Bond)
+// errTime stops a search at its cap on time.
+var errTime = errors.New("the time is up")
+
+// run sweeps until the error estimate is below the wanted precision or a cap is met. An error of the context or the numerics ends it; the
+// chain then holds the last state.
+func (s *search[T]) run() (Verdict, string, error) {
+	if err := s.engine.prepare(); err != nil {
+		return s.ended(err)
 	}
+	bond := s.affordable(1, min(s.opt.Bond, max(firstBond, s.engine.psi.MaxBond())))
 	for {
-		verdict, reason, err := s.stage(ctx, bond)
+		verdict, reason, err := s.stage(bond)
 		if err != nil {
-			return verdict, reason, estimate{limit: math.NaN(), err: math.Inf(1)}, err
+			if verdict, reason, err = s.ended(err); err != nil {
+				return unfinished, "", err
+			}
 		}
 		est := s.estimate()
+		if s.settledTwice() && s.precise(est) {
+			return Converged, "", nil
+		}
 		if verdict != unfinished {
-			if len(s.stages) > 0 && s.precise(est) {
-				return Converged, "", est, nil
-			}
-			return verdict, reason, est, nil
+			return verdict, reason, nil
 		}
-		if s.precise(est) && s.settledTwice() {
-			return Converged, "", est, nil
+		if est.rounding > s.opt.Precision && est.err < 4*est.rounding && s.settledTwice() {
+			return Suspect, fmt.Sprintf("the wanted precision %.1e is below the rounding error %.1e of an energy of this size; ask for less", s.opt.Precision, est.rounding), nil
 		}
-		last := s.stages[len(s.stages)-1]
-		if last.largest >= bond || len(s.stages) < 2 {
-			if bond == s.opt.Bond && len(s.stages) >= 2 && last.largest >= bond {
-				return BondCap, fmt.Sprintf("bond dimension %d reached with an error of %.1e; allow a larger bond", bond, est.err), est, nil
+		last := &s.stages[len(s.stages)-1]
+		if last.largest < bond && len(s.stages) >= 2 {
+			// The truncation is limited by the weight, not by the bond: keep more.
+			if s.opt.weight <= leastWeight || len(s.stages) > maxStages {
+				return Suspect, fmt.Sprintf("the energy still drifts by %.1e a sweep at full accuracy: rounding errors, or a state that sweeping does not settle", last.drift()), nil
 			}
-			next := min(s.opt.Bond, max(bond+8, int(bondGrowth*float64(bond))))
-			if need := s.bytesAt(next); s.opt.Memory > 0 && need > s.opt.Memory && next > bond {
-				return MemoryCap, fmt.Sprintf("bond dimension %d would need about %d MiB", next, need>>20), est, nil
-			}
-			bond = next
+			s.opt.weight = max(leastWeight, s.opt.weight*1e-2)
 			continue
 		}
-		// The truncation is limited by the weight, not by the bond: keep more.
-		if s.opt.weight <= 1e-26 || len(s.stages) > 40 {
-			return Suspect, fmt.Sprintf("the energy still drifts by %.1e a sweep at full accuracy; the wanted precision is below the rounding error of this Hamiltonian", last.drift()), est, nil
+		if verdict, reason = s.grow(&bond, est); verdict != unfinished {
+			return verdict, reason, nil
 		}
-		s.opt.weight = max(1e-26, s.opt.weight*1e-2)
 	}
+}
+
+// ended makes a verdict of the cap on time; other errors pass.
+func (s *search[T]) ended(err error) (Verdict, string, error) {
+	if errors.Is(err, errTime) {
+		return TimeCap, fmt.Sprintf("%v have passed; allow more time, or start from the saved state", s.opt.Time), nil
+	}
+	return unfinished, "", err
+}
+
+// grow raises the bond dimension within the caps; where none is left it says which, after a second stage.
+func (s *search[T]) grow(bond *int, est estimate) (Verdict, string) {
+	wish := max(*bond+leastGrowth, int(bondGrowth*float64(*bond)))
+	next := min(s.opt.Bond, wish)
+	able := s.affordable(*bond, next)
+	// A little more is not worth a stage, unless the cap allows no more.
+	if able < next && able < *bond+min(leastGrowth, next-*bond) {
+		able = *bond
+	}
+	if able > *bond || len(s.stages) < 2 {
+		*bond = able
+		return unfinished, ""
+	}
+	if next == *bond {
+		return BondCap, fmt.Sprintf("bond dimension %d reached with an error of %.1e; allow a larger bond", *bond, est.err)
+	}
+	return MemoryCap, fmt.Sprintf("bond dimension %d fits the memory with an error of %.1e; %d would need about %.3g MiB", *bond, est.err, next, s.expected(next)/(1<<20))
 }
 
 // estimate is the error estimate after the last stage.
 func (s *search[T]) estimate() estimate {
-	if len(s.stages) == 0 || len(s.stages[len(s.stages)-1].energies) == 0 {
-		return estimate{limit: math.NaN(), err: math.Inf(1)}
-	}
 	return estimateError(s.stages, s.scale, s.engine.psi.Len())
 }
 
 // settledTwice asks that two stages, each with fresh mixing, agree: one stage alone may sit in a product state.
 func (s *search[T]) settledTwice() bool {
 	n := len(s.stages)
-	if n < 2 {
+	if n < 2 || !s.stages[n-1].settling() {
 		return false
 	}
-	a, b := s.stages[n-2], s.stages[n-1]
-	return math.Abs(a.energy()-b.energy()) <= math.Max(s.opt.Precision, 2*math.Abs(a.discarded)*s.scale*10)
+	a, b := &s.stages[n-2], &s.stages[n-1]
+	return math.Abs(a.energy()-b.energy()) <= math.Max(s.opt.Precision, 20*a.discarded*s.scale)
 }
 
 // stage settles one bond dimension: sweeps with decreasing mixing, then clean sweeps.
-func (s *search[T]) stage(ctx context.Context, bond int) (Verdict, string, error) {
-	first := len(s.stages) == 0
-	set := setting{bond: bond, weight: s.opt.weight, vectors: vectorsLate, tolerance: s.tolerance()}
-	if s.opt.Opening != Unperturbed && s.engine.psi.Len() > 1 {
-		count := 2
-		set.mixing = firstMixing
-		switch {
-		case first:
-			count = 4
-		case s.stages[len(s.stages)-1].largest < s.stages[len(s.stages)-1].bond:
-			count, set.mixing = 1, checkMixing
-		}
-		for k := 0; k < count; k++ {
-			set.noise, set.vectors = 0, vectorsLate
-			if first {
-				set.vectors = vectorsEarly
-				set.noise = 0.1 * math.Sqrt(set.mixing)
-			}
-			if v, r, err := s.sweep(ctx, set); v != unfinished || err != nil {
-				return v, r, err
-			}
-			set.mixing *= mixingDecay
-		}
+func (s *search[T]) stage(bond int) (Verdict, string, error) {
+	if v, r, err := s.mix(bond); v != unfinished || err != nil {
+		return v, r, err
 	}
-	set.mixing, set.noise = 0, 0
+	set := s.clean(bond)
 	s.stages = append(s.stages, settledStage{bond: bond})
 	st := &s.stages[len(s.stages)-1]
 	for k := 0; k < maxCleanStage || (k < maxCleanWhole && s.whole(st)); k++ {
 		if s.whole(st) {
 			set.vectors = vectorsWhole
 		}
-		v, r, err := s.sweep(ctx, set)
-		if err != nil || (v != unfinished && len(st.energies) == 0) {
+		v, r, err := s.sweep(set)
+		if len(st.energies) == 0 {
 			s.stages = s.stages[:len(s.stages)-1]
+		}
+		if v != unfinished || err != nil {
 			return v, r, err
 		}
-		if v != unfinished {
-			return v, r, nil
-		}
-		if len(st.energies) >= 2 && s.enough(st) {
+		if st.settling() && s.enough(st) {
 			break
 		}
 	}
-	report := Stage{Bond: bond, Energy: st.energy(), Discarded: s.sweeps[len(s.sweeps)-1].Discarded}
-	s.reports = append(s.reports, report)
-	if s.opt.OnStage != nil {
-		report.State = s.wrap(s.engine.psi)
-		s.opt.OnStage(report)
+	return unfinished, "", s.report(bond)
+}
+
+// clean is the setting of a clean sweep.
+func (s *search[T]) clean(bond int) setting {
+	return setting{bond: bond, weight: s.opt.weight, vectors: vectorsLate, tolerance: s.tolerance()}
+}
+
+// mix does the mixing sweeps of a stage.
+func (s *search[T]) mix(bond int) (Verdict, string, error) {
+	if s.opt.Opening == Unperturbed || s.engine.psi.Len() == 1 {
+		return unfinished, "", nil
+	}
+	set := s.clean(bond)
+	count := 2
+	set.mixing = firstMixing
+	first := len(s.stages) == 0
+	if first {
+		count, set.vectors = 4, vectorsEarly
+	} else if last := &s.stages[len(s.stages)-1]; last.largest < last.bond {
+		count, set.mixing = 1, checkMixing
+	}
+	for range count {
+		if first {
+			set.noise = 0.1 * math.Sqrt(set.mixing)
+		}
+		if v, r, err := s.sweep(set); v != unfinished || err != nil {
+			return v, r, err
+		}
+		set.mixing *= mixingDecay
 	}
 	return unfinished, "", nil
+}
+
+// report tells of a settled stage.
+func (s *search[T]) report(bond int) error {
+	last := &s.stages[len(s.stages)-1]
+	report := Stage{Bond: bond, Energy: last.energy(), Discarded: s.sweeps[len(s.sweeps)-1].Discarded}
+	s.reports = append(s.reports, report)
+	if s.opt.OnStage == nil {
+		return nil
+	}
+	var err error
+	if report.State, err = s.wrap(s.engine.psi); err != nil {
+		return err
+	}
+	s.opt.OnStage(report)
+	return nil
 }
 
 // enough ends a stage when further sweeps would gain less than the precision, or much less than the truncation costs.
@@ -180,12 +224,12 @@ func (s *search[T]) precise(est estimate) bool {
 }
 
 // sweep runs one sweep, records it, and checks the caps.
-func (s *search[T]) sweep(ctx context.Context, set setting) (Verdict, string, error) {
+func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	begin := time.Now()
 	if len(s.sweeps) >= s.opt.Sweeps {
 		return SweepCap, fmt.Sprintf("%d sweeps done; allow more sweeps", len(s.sweeps)), nil
 	}
-	out, err := s.engine.sweep(ctx, set)
+	out, err := s.engine.sweep(set)
 	if err != nil {
 		return unfinished, "", err
 	}
@@ -194,13 +238,10 @@ func (s *search[T]) sweep(ctx context.Context, set setting) (Verdict, string, er
 		st.energies, st.discarded, st.largest, st.change = append(st.energies, out.energy), out.total, out.largest, out.change
 	}
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Mixing: set.mixing, Energy: out.energy, Discarded: out.discarded,
-		Residual: out.residual, LargestBond: out.largest, Seconds: since(begin)}
+		Residual: out.residual, LargestBond: out.largest, Seconds: time.Since(begin).Seconds()}
 	s.sweeps = append(s.sweeps, w)
 	if s.opt.OnSweep != nil {
 		s.opt.OnSweep(w)
-	}
-	if s.opt.Time > 0 && time.Since(s.start) >= s.opt.Time {
-		return TimeCap, fmt.Sprintf("%v have passed; allow more time, or start from the saved state", s.opt.Time), nil
 	}
 	return unfinished, "", nil
 }
@@ -209,25 +250,4 @@ func (s *search[T]) sweep(ctx context.Context, set setting) (Verdict, string, er
 func (s *search[T]) tolerance() float64 {
 	t := 0.1 * min(math.Sqrt(s.opt.Precision*s.scale), s.opt.ObservablePrecision*s.scale)
 	return max(t, 1e-14*s.scale)
-}
-
-// bytesAt estimates the memory of state, environments and workspace at a bond dimension, scaled from the present one.
-func (s *search[T]) bytesAt(bond int) int64 {
-	var bytes int64
-	e := s.engine
-	size := int64(8)
-	if dense.IsComplex[T]() {
-		size = 16
-	}
-	for i, a := range e.psi.Sites {
-		bytes += size * int64(len(a.Data))
-		if e.left[i] != nil {
-			bytes += size * int64(len(e.left[i].Data))
-		}
-		if e.right[i] != nil {
-			bytes += size * int64(len(e.right[i].Data))
-		}
-	}
-	ratio := float64(bond) / float64(max(1, e.psi.MaxBond()))
-	return int64(float64(bytes) * ratio * ratio)
 }

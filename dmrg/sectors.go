@@ -1,132 +1,303 @@
 package dmrg
 
 import (
-	"context"
+	"cmp"
+	"errors"
 	"fmt"
+	"math"
+	"slices"
 
+	"rundle/internal/dense"
+	"rundle/mpo"
 	"rundle/mps/block"
 )
 
-// pickTotal returns the target where every charge is named; else the total of lowest energy among the values of the free charges.
-// Up to a dozen totals are all looked at. Of more, the walk starts at the total whose product state has the lowest diagonal
-// energy and steps to the best neighbour (one free charge up or down to its next possible value, or two at once) until none
-// is lower: for energies convex in the charges, which thermodynamic stability asks of a bulk, that is the global minimum.
-func (p *problem) pickTotal(ctx context.Context, energy func(block.Charge) (float64, error)) (block.Charge, error) {
-	totals, _ := p.frames.Totals(p.target, scoutLimit)
-	switch len(totals) {
-	case 0:
+// Settings of the choice among the values of free charges.
+const (
+	scoutBond  = 32
+	totalLimit = 1 << 18 // values of the free charges listed
+	lookAtAll  = 12      // up to so many are all looked at
+	walkStarts = 64      // product states compared for the start of a walk
+)
+
+// pickTotal returns the target where every charge is named, that of the start state where there is one; else the total of lowest energy among
+// the values of the free charges.
+//
+// Each total looked at gets a scout, a short search. Up to a dozen totals are all looked at. Of more, a walk starts at the total whose product
+// state has the lowest diagonal energy and steps to lower neighbours, at a distance that is halved as often as none is lower, down to the
+// two nearest in each direction: for energies convex in the charges, which thermodynamic stability asks of a bulk, up to an alternation of even
+// and odd values, that is the global minimum. At last the scouts of the lowest are sent on, at growing bond dimensions, until their error
+// bars separate or nothing is left to gain.
+//
+// At the cap on time it returns the best so far.
+func pickTotal[T dense.Scalar](p *problem, op *mpo.Operator[T]) (block.Charge, error) {
+	if p.opt.Start != nil {
+		return p.totalOfStart()
+	}
+	totals, all := p.frames.Totals(p.target, totalLimit)
+	switch {
+	case len(totals) == 0:
 		return block.Charge{}, fmt.Errorf("dmrg: no state of the ladder lies in the sector")
-	case 1:
+	case len(totals) == 1:
 		return totals[0], nil
+	case !all:
+		return block.Charge{}, fmt.Errorf("dmrg: the sector leaves more than %d values of the conserved charges open; name some of %v", totalLimit, p.freeNames())
 	}
-	known := make(map[block.Charge]float64)
-	look := func(q block.Charge) (float64, error) {
-		if e, ok := known[q]; ok {
-			return e, nil
+	c := &choice[T]{p: p, op: op, scouts: make(map[block.Charge]*scout[T]), totals: totals}
+	best, err := c.lowest()
+	if errors.Is(err, errTime) {
+		err = nil
+	}
+	return best, err
+}
+
+// freeNames lists the charges that the target leaves open.
+func (p *problem) freeNames() (names []string) {
+	for i, free := range p.target.Free {
+		if free {
+			names = append(names, p.frames.Charges[i].Name)
 		}
-		e, err := energy(q)
-		if err == nil {
-			known[q] = e
+	}
+	return names
+}
+
+// totalOfStart lets the start state decide what the sector leaves open. A start that does not fit is reported later.
+func (p *problem) totalOfStart() (block.Charge, error) {
+	total := p.target.Charge
+	start := p.opt.Start
+	for i, free := range p.target.Free {
+		if free && start.Frames().Group == p.frames.Group {
+			total[i] = start.Charge()[i]
 		}
-		return e, err
 	}
-	if len(totals) <= 12 {
-		return lowestOf(totals, look, p.scale)
+	return total, nil
+}
+
+// choice looks for the total of lowest energy.
+type choice[T dense.Scalar] struct {
+	p      *problem
+	op     *mpo.Operator[T]
+	totals []block.Charge // those that most basis states have first
+	scouts map[block.Charge]*scout[T]
+	best   block.Charge // of those looked at
+}
+
+// scout is a short search in one sector.
+type scout[T dense.Scalar] struct {
+	total  block.Charge
+	search *search[T]
+	est    estimate
+}
+
+// energy is an upper bound of the lowest energy of the sector, low a lower one as far as the estimate goes.
+func (s *scout[T]) energy() float64 { return s.search.stages[len(s.search.stages)-1].energy() }
+func (s *scout[T]) low() float64    { return s.est.limit - s.est.err }
+
+func (c *choice[T]) lowest() (block.Charge, error) {
+	c.best = c.totals[0]
+	near := c.totals
+	if len(c.totals) > lookAtAll {
+		if err := c.walkStart(); err != nil {
+			return c.best, err
+		}
+		var err error
+		if near, err = c.walk(); err != nil {
+			return c.best, err
+		}
 	}
-	at, err := p.walkStart(totals)
+	for _, q := range near {
+		if _, err := c.look(q); err != nil {
+			return c.best, err
+		}
+	}
+	return c.separate(near)
+}
+
+// look sends a scout to a total, once, and keeps the best up to date: of equals, the first.
+func (c *choice[T]) look(q block.Charge) (*scout[T], error) {
+	if s := c.scouts[q]; s != nil {
+		return s, nil
+	}
+	psi, err := productChain[T](c.p, q)
 	if err != nil {
-		return at, err
+		return nil, err
 	}
-	for {
-		near := neighbours(p.strings.Group, totals, at)
-		next, err := lowestOf(append([]block.Charge{at}, near...), look, p.scale)
-		if err != nil || next == at {
-			return next, err
+	s := &scout[T]{total: q, search: &search[T]{engine: newEngine(c.op, psi, c.p.opt, c.p.halt), opt: c.p.opt, scale: c.p.scale}}
+	s.search.opt.OnSweep, s.search.opt.OnStage, s.search.opt.Sweeps = nil, nil, math.MaxInt
+	if err := s.search.engine.prepare(); err != nil {
+		return nil, err
+	}
+	if err := s.goOn(min(scoutBond, c.p.opt.Bond)); err != nil {
+		return nil, err
+	}
+	c.scouts[q] = s
+	if b := c.scouts[c.best]; b == nil || s.energy() < b.energy()-c.tie() {
+		c.best = q
+	}
+	for _, s := range c.scouts {
+		if s.low() > c.scouts[c.best].energy()+c.p.opt.Precision {
+			s.search.engine = nil // out of the race: its memory is of use elsewhere
 		}
-		at = next
 	}
+	return s, nil
 }
 
-// lowestOf returns the first total whose energy is lowest up to a rounding of the scouts.
-func lowestOf(totals []block.Charge, look func(block.Charge) (float64, error), scale float64) (block.Charge, error) {
-	var best block.Charge
-	var low float64
-	for i, q := range totals {
-		e, err := look(q)
+// tie is the difference of energies that says nothing.
+func (c *choice[T]) tie() float64 { return 1e-9 * c.p.scale }
+
+// goOn settles one bond dimension.
+func (s *scout[T]) goOn(bond int) error {
+	_, _, err := s.search.stage(bond)
+	s.est = s.search.estimate()
+	return err
+}
+
+// walkStart sets out from the total with the lowest diagonal energy of a product state; of equals, the first.
+func (c *choice[T]) walkStart() error {
+	stride := 1 + len(c.totals)/walkStarts
+	low := math.Inf(1)
+	for i := 0; i < len(c.totals); i += stride {
+		_, e, err := c.p.starter.states(c.totals[i])
 		if err != nil {
-			return best, err
+			return err
 		}
-		if i == 0 || e < low-1e-9*scale {
-			best, low = q, e
+		if e < low-c.tie() {
+			c.best, low = c.totals[i], e
 		}
 	}
-	return best, nil
+	return nil
 }
 
-// walkStart is the total with the lowest diagonal energy of a product state; of equals, the middle one.
-func (p *problem) walkStart(totals []block.Charge) (block.Charge, error) {
-	stride := 1 + len(totals)/64
-	type seen struct {
-		q block.Charge
-		e float64
+// walk steps to lower totals until none of the nearest is lower, and returns those with the last one.
+func (c *choice[T]) walk() ([]block.Charge, error) {
+	if _, err := c.look(c.best); err != nil {
+		return nil, err
 	}
-	var all []seen
-	for i := 0; i < len(totals); i += stride {
-		_, e, err := startStates(p.strings, totals[i])
-		if err != nil {
-			return totals[i], err
+	for reach := c.span() / 4; ; {
+		at := c.best
+		ring := c.around(at, max(1, reach))
+		for _, q := range ring {
+			if _, err := c.look(q); err != nil {
+				return nil, err
+			}
+			if c.best != at {
+				break // the first that is lower will do
+			}
 		}
-		all = append(all, seen{totals[i], e})
-	}
-	low := all[0].e
-	for _, s := range all {
-		low = min(low, s.e)
-	}
-	var equal []block.Charge
-	for _, s := range all {
-		if s.e <= low+1e-9*p.scale {
-			equal = append(equal, s.q)
+		if c.best != at {
+			continue
 		}
+		if reach <= 1 {
+			return append([]block.Charge{at}, ring...), nil
+		}
+		reach /= 2
 	}
-	return equal[len(equal)/2], nil
 }
 
-// neighbours lists the totals that differ from at by the smallest steps: for every total, the others that are nearest in
-// their direction.
-func neighbours(g block.Group, totals []block.Charge, at block.Charge) []block.Charge {
-	type direction [4]int32
-	best := make(map[direction]block.Charge)
-	var order []direction
-	dist := func(q block.Charge) (d int64) {
-		for k := 0; k < g.Len(); k++ {
-			x := int64(q[k] - at[k])
-			d += x * x
+// span is the widest range of a charge among the totals.
+func (c *choice[T]) span() int64 {
+	var widest int64
+	for k := range c.p.strings.Group.Len() {
+		low, top := c.totals[0][k], c.totals[0][k]
+		for _, q := range c.totals {
+			low, top = min(low, q[k]), max(top, q[k])
 		}
-		return d
+		widest = max(widest, int64(top)-int64(low))
 	}
-	for _, q := range totals {
+	return widest
+}
+
+// around returns for every direction (the signs of the steps of the charges) the total whose distance is nearest to reach, at reach 1 the two nearest
+// totals: the closest first.
+func (c *choice[T]) around(at block.Charge, reach int64) []block.Charge {
+	type spot struct {
+		q           block.Charge
+		miss, apart int64
+	}
+	byDirection := make(map[block.Charge][]spot)
+	for _, q := range c.totals {
 		if q == at {
 			continue
 		}
-		var dir direction
-		for k := 0; k < g.Len(); k++ {
-			switch {
-			case q[k] > at[k]:
-				dir[k] = 1
-			case q[k] < at[k]:
-				dir[k] = -1
+		var direction block.Charge
+		s := spot{q: q}
+		for k := range c.p.strings.Group.Len() {
+			step := int64(q[k]) - int64(at[k])
+			direction[k] = int32(cmp.Compare(step, 0))
+			s.miss = max(s.miss, step, -step)
+			s.apart += step * step
+		}
+		s.miss = max(s.miss-reach, reach-s.miss)
+		byDirection[direction] = append(byDirection[direction], s)
+	}
+	order := func(a, b spot) int {
+		return cmp.Or(cmp.Compare(a.miss, b.miss), cmp.Compare(a.apart, b.apart), a.q.Compare(b.q))
+	}
+	var out []spot
+	for _, list := range byDirection {
+		slices.SortFunc(list, order)
+		n := 1
+		if reach == 1 {
+			n = 2
+		}
+		out = append(out, list[:min(n, len(list))]...)
+	}
+	slices.SortFunc(out, order)
+	ring := make([]block.Charge, len(out))
+	for i, s := range out {
+		ring[i] = s.q
+	}
+	return ring
+}
+
+// separate sends the scouts of the totals on until one is the lowest beyond error bars, or all that may be the lowest are known to the wanted
+// precision: then they are degenerate for the user, and the first of them, in the order of the totals, stands for all.
+func (c *choice[T]) separate(near []block.Charge) (block.Charge, error) {
+	for bond := min(scoutBond, c.p.opt.Bond); ; bond = min(c.p.opt.Bond, 2*bond) {
+		low := c.scouts[near[0]].energy()
+		for _, q := range near {
+			low = min(low, c.scouts[q].energy())
+		}
+		var rivals []block.Charge
+		known := true
+		for _, q := range near {
+			s := c.scouts[q]
+			if s.low() > low+c.p.opt.Precision {
+				s.search.engine = nil
+				continue
+			}
+			rivals = append(rivals, q)
+			known = known && s.est.err <= c.p.opt.Precision
+		}
+		near = rivals
+		if len(near) == 1 || known || bond >= c.p.opt.Bond {
+			return c.firstLowest(near), nil
+		}
+		next := min(c.p.opt.Bond, 2*bond)
+		for _, q := range near {
+			s := c.scouts[q]
+			if s.search.affordable(bond, next) < next {
+				return c.firstLowest(near), nil
+			}
+			if s.est.err > c.p.opt.Precision {
+				if err := s.goOn(next); err != nil {
+					return c.best, err
+				}
 			}
 		}
-		if b, ok := best[dir]; !ok {
-			best[dir] = q
-			order = append(order, dir)
-		} else if dist(q) < dist(b) {
-			best[dir] = q
+	}
+}
+
+// firstLowest is the first of the totals, in their order, within the precision of the lowest.
+func (c *choice[T]) firstLowest(near []block.Charge) block.Charge {
+	low := math.Inf(1)
+	for _, q := range near {
+		low = min(low, c.scouts[q].energy())
+	}
+	for _, q := range c.totals {
+		if slices.Contains(near, q) && c.scouts[q].energy() <= low+max(c.p.opt.Precision, c.tie()) {
+			return q
 		}
 	}
-	var out []block.Charge
-	for _, d := range order {
-		out = append(out, best[d])
-	}
-	return out
+	return near[0]
 }

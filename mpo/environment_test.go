@@ -166,77 +166,99 @@ func testEnvironments[T dense.Scalar](t *testing.T, rng *rand.Rand, s *sum) {
 	}
 }
 
-// testPerturbation compares the matrices with a network of full arrays.
+// testPerturbation compares the density matrices with a network of full arrays.
 func testPerturbation[T dense.Scalar](t *testing.T, o *Operator[T], p *Projected[T], theta, left, right *block.Tensor[T], ws *Workspace[T]) {
-	d := theta.Dims()
-	nl, d1, d2, nr := d[0], d[1], d[2], d[3]
-	full := toComplex(theta.Dense())
 	for _, side := range []bool{true, false} {
-		// z[x, w, y]: x the kept side's states, y the rest; only crossing terms.
-		var weights = map[block.Charge]float64{}
+		z, rows, inner := reachedLeft(o, p, theta, left), theta.Axes[0], theta.Axes[1]
+		if !side {
+			z, rows, inner = reachedRight(o, p, theta, right), theta.Axes[3], theta.Axes[2]
+		}
+		seen := 0.0
 		plan := p.PlanPerturbation(side)
-		slab := plan.Run(p, theta.Data, ws, task.New(2))
-		for _, b := range plan.Blocks {
-			w := dense.Norm(slab[b.Offset : b.Offset+b.Rows*b.Cols])
-			weights[b.Charge] += w * w
-		}
-		want := map[block.Charge]float64{}
-		if side {
-			env := toComplex(left.Dense()) // l' a l
-			na := left.Dims()[1]
-			nw := o.Bonds[p.first+1].Dim()
-			z := make([]complex128, nl*d1*nw*d2*nr)
-			for _, e := range o.Sites[p.first] {
-				if !o.Bonds[p.first+1].crosses(e.Right) {
-					continue
-				}
-				for lp := range nl {
-					for l := range nl {
-						c := dense.ToComplex(e.Value) * env[(lp*na+int(e.Left))*nl+l]
-						for k := range d2 * nr {
-							z[((lp*d1+int(e.Out))*nw+int(e.Right))*d2*nr+k] += c * full[(l*d1+int(e.In))*d2*nr+k]
-						}
+		for i, rho := range plan.Densities(p, theta.Data, ws, task.New(2)) {
+			b := plan.Blocks[i]
+			// The states of each row, counted along the whole axes.
+			type pair struct{ bond, site int }
+			states := make([]pair, b.Rows)
+			for _, s := range b.Segments {
+				d := inner.Sectors[s.Site].Dim
+				for k := range s.Dim {
+					at := pair{rows.Offset(s.Outer) + k/d, inner.Offset(s.Site) + k%d}
+					if !side {
+						n := rows.Sectors[s.Outer].Dim
+						at = pair{rows.Offset(s.Outer) + k%n, inner.Offset(s.Site) + k/n}
 					}
+					states[s.Start+k] = at
+					q := o.Group.Add(chargeOf(rows, at.bond), chargeOf(inner, at.site))
+					if !side {
+						q = o.Group.Sub(chargeOf(rows, at.bond), chargeOf(inner, at.site))
+					}
+					require.Equal(t, b.Charge, q)
 				}
 			}
-			for lp := range nl {
-				for s := range d1 {
-					q := o.Group.Add(chargeOf(theta.Axes[0], lp), chargeOf(theta.Axes[1], s))
-					for _, v := range z[(lp*d1+s)*nw*d2*nr : (lp*d1+s+1)*nw*d2*nr] {
-						want[q] += abs(v) * abs(v)
-					}
+			for x, s := range states {
+				for y, v := range states {
+					want := braket(z[v.bond*inner.Dim()+v.site], z[s.bond*inner.Dim()+s.site])
+					got := dense.ToComplex(rho[x*b.Rows+y])
+					require.InDelta(t, 0, abs(got-want), 1e-11*(1+abs(want)), "left %v, charge %v, element %d, %d", side, b.Charge, x, y)
 				}
-			}
-		} else {
-			env := toComplex(right.Dense()) // c r r'
-			nw := o.Bonds[p.first+1].Dim()
-			z := make([]complex128, d2*nr*nw*nl*d1)
-			for _, e := range o.Sites[p.first+1] {
-				if !o.Bonds[p.first+1].crosses(e.Left) {
-					continue
-				}
-				for rp := range nr {
-					for r := range nr {
-						c := dense.ToComplex(e.Value) * env[(int(e.Right)*nr+r)*nr+rp]
-						for k := range nl * d1 {
-							z[((int(e.Out)*nr+rp)*nw+int(e.Left))*nl*d1+k] += c * full[(k*d2+int(e.In))*nr+r]
-						}
-					}
-				}
-			}
-			for s := range d2 {
-				for rp := range nr {
-					q := o.Group.Sub(chargeOf(theta.Axes[3], rp), chargeOf(theta.Axes[2], s))
-					for _, v := range z[(s*nr+rp)*nw*nl*d1 : (s*nr+rp+1)*nw*nl*d1] {
-						want[q] += abs(v) * abs(v)
-					}
-				}
+				seen += dense.Real(rho[x*b.Rows+x])
 			}
 		}
-		for q, w := range want {
-			require.InDelta(t, w, weights[q], 1e-11*(1+w), "side %v charge %v", side, q)
+		all := 0.0
+		for _, row := range z {
+			all += real(braket(row, row))
+		}
+		require.InDelta(t, all, seen, 1e-11*(1+all), "nothing may be missing")
+	}
+}
+
+// reachedLeft applies the terms that cross the bond to the left of theta: z[l' * d1 + s1'], over all w, s2, r.
+func reachedLeft[T dense.Scalar](o *Operator[T], p *Projected[T], theta, left *block.Tensor[T]) [][]complex128 {
+	d, full, env := theta.Dims(), toComplex(theta.Dense()), toComplex(left.Dense()) // env: l' a l
+	nl, d1, rest, na, nw := d[0], d[1], d[2]*d[3], left.Dims()[1], o.Bonds[p.first+1].Dim()
+	z := make([][]complex128, nl*d1)
+	for i := range z {
+		z[i] = make([]complex128, nw*rest)
+	}
+	for _, e := range o.Sites[p.first] {
+		if !o.Bonds[p.first+1].crosses(e.Right) {
+			continue
+		}
+		for lp := range nl {
+			for l := range nl {
+				c := dense.ToComplex(e.Value) * env[(lp*na+int(e.Left))*nl+l]
+				for k := range rest {
+					z[lp*d1+int(e.Out)][int(e.Right)*rest+k] += c * full[(l*d1+int(e.In))*rest+k]
+				}
+			}
 		}
 	}
+	return z
+}
+
+// reachedRight applies them to the right: z[r' * d2 + s2'], over all w, l, s1.
+func reachedRight[T dense.Scalar](o *Operator[T], p *Projected[T], theta, right *block.Tensor[T]) [][]complex128 {
+	d, full, env := theta.Dims(), toComplex(theta.Dense()), toComplex(right.Dense()) // env: c r r'
+	rest, d2, nr, nw := d[0]*d[1], d[2], d[3], o.Bonds[p.first+1].Dim()
+	z := make([][]complex128, nr*d2)
+	for i := range z {
+		z[i] = make([]complex128, nw*rest)
+	}
+	for _, e := range o.Sites[p.first+1] {
+		if !o.Bonds[p.first+1].crosses(e.Left) {
+			continue
+		}
+		for rp := range nr {
+			for r := range nr {
+				c := dense.ToComplex(e.Value) * env[(int(e.Right)*nr+r)*nr+rp]
+				for k := range rest {
+					z[rp*d2+int(e.Out)][int(e.Left)*rest+k] += c * full[(k*d2+int(e.In))*nr+r]
+				}
+			}
+		}
+	}
+	return z
 }
 
 func chargeOf(a block.Axis, state int) block.Charge {

@@ -6,40 +6,65 @@ import (
 	"rundle/mps/block"
 )
 
-// Perturbation holds, for each charge of the bond between two sites, the matrix of states that the Hamiltonian reaches from
+// Perturbation plans, for each charge of the bond between two sites, the density matrix of the states that the Hamiltonian reaches from
 // theta on one side of the bond: the terms that cross it, applied on that side only (White 2005). A row is a combination of
-// (l', s1') for the left side, of (s2', r') for the right side; the columns are what the rest of the network leaves open.
+// (l', s1') for the left side, of (s2', r') for the right side; what the rest of the network leaves open is summed over.
 // Charges absent from theta itself are there too.
 type Perturbation[T dense.Scalar] struct {
+	Blocks []PerturbationBlock
+
 	net    network[T]
 	left   bool
-	Blocks []PerturbationBlock
+	spans  []span // of the moves, by block
+	order  []int  // blocks, most work first
+	widest int    // elements of the largest matrix
+	flops  float64
 }
 
-// PerturbationBlock is the matrix of one bond charge: Rows × Cols at Offset of the slab, row-major; for the right side it is
-// stored transposed, Cols × Rows.
+// PerturbationBlock is the density matrix of one bond charge, Rows × Rows.
 type PerturbationBlock struct {
-	Charge             block.Charge
-	Rows, Cols, Offset int
-	Segments           []Segment
+	Charge   block.Charge
+	Rows     int
+	Segments []Segment
+
+	cols int
 }
 
 // Segment places a pair of sectors (bond, site) or (site, bond) among the rows of a block.
 type Segment struct{ Outer, Site, Start, Dim int }
 
-// Size returns the elements of the slab.
-func (p *Perturbation[T]) Size() int { return p.net.ySize }
+type span struct{ from, to int }
 
-// Run computes the matrices for the slab theta; the result is valid until the workspace is used again.
-func (p *Perturbation[T]) Run(h *Projected[T], theta []T, ws *Workspace[T], pool *task.Pool) []T {
-	ws.x, ws.y = grow(ws.x, p.net.xSize), grow(ws.y, p.net.ySize)
+// Densities computes the matrix of each block for the slab theta: element (x, y) is the sum of m_x conj(m_y) over the open indices of what was
+// reached, m. Workers hold one m at a time.
+func (p *Perturbation[T]) Densities(h *Projected[T], theta []T, ws *Workspace[T], pool *task.Pool) [][]T {
+	ws.x = grow(ws.x, p.net.xSize)
 	a, b := h.left.Data, theta
 	if !p.left {
 		a, b = theta, h.right.Data
 	}
 	pool.Do(len(p.net.first), p.net.firstFlops, func(_, i int) { multiply(&p.net.first[i], a, b, ws.x) })
-	p.net.runMiddle(ws.x, ws.y, pool)
-	return ws.y
+	reached, rho := make([][]T, pool.Threads()), make([][]T, len(p.Blocks))
+	pool.Do(len(p.Blocks), p.flops, func(worker, j int) {
+		i := p.order[j]
+		k := &p.Blocks[i]
+		if reached[worker] == nil {
+			reached[worker] = make([]T, p.widest)
+		}
+		m := reached[worker][:k.Rows*k.cols]
+		clear(m)
+		for q := p.spans[i].from; q < p.spans[i].to; q++ {
+			move(&p.net.moves[q], ws.x, m)
+		}
+		rho[i] = make([]T, k.Rows*k.Rows)
+		one, zero := dense.FromFloat[T](1), dense.FromFloat[T](0)
+		if p.left {
+			dense.Gemm(dense.NoTrans, dense.ConjTrans, k.Rows, k.Rows, k.cols, one, m, k.cols, m, k.cols, zero, rho[i], k.Rows)
+		} else {
+			dense.Gemm(dense.Trans, dense.ConjNoTrans, k.Rows, k.Rows, k.cols, one, m, k.Rows, m, k.Rows, zero, rho[i], k.Rows)
+		}
+	})
+	return rho
 }
 
 // PlanPerturbation plans the perturbation of the left (or right) side of the bond between the two sites of h.
@@ -50,7 +75,7 @@ func (h *Projected[T]) PlanPerturbation(left bool) *Perturbation[T] {
 	return h.perturbRight()
 }
 
-// draft is a perturbation under construction: its blocks, and where the combinations of sectors stand among their rows and columns.
+// draft is a perturbation under construction: the matrices m of its blocks, for the right side stored transposed, and where the combinations of sectors stand among their rows and columns.
 type draft[T dense.Scalar] struct {
 	blocks []PerturbationBlock
 	sites  int             // sectors of the site that is kept
@@ -108,30 +133,35 @@ func (d *draft[T]) addColumns(g block.Group, b *PerturbationBlock, mid, other, f
 	for _, w := range mid.Sectors {
 		rest := g.Sub(b.Charge, w.Charge)
 		for _, s := range other.Sectors {
-			d.cols = append(d.cols, b.Cols)
+			d.cols = append(d.cols, b.cols)
 			q := g.Sub(rest, s.Charge)
 			if sign > 0 {
 				q = g.Add(rest, s.Charge)
 			}
 			if k, ok := far.Find(q); ok {
-				b.Cols += w.Dim * s.Dim * far.Sectors[k].Dim
+				b.cols += w.Dim * s.Dim * far.Sectors[k].Dim
 			}
 		}
 	}
 }
 
-// finish gives the blocks that anything reaches their places.
+// finish keeps the blocks that anything reaches.
 func (d *draft[T]) finish(p *Perturbation[T], x slab) {
-	var y slab
+	var work []float64
 	for i, b := range d.blocks {
 		if len(d.moves[i]) == 0 {
 			continue
 		}
+		from := len(p.net.moves)
 		p.net.moves = append(p.net.moves, d.moves[i]...)
-		b.Offset = p.net.piece(&y, b.Rows*b.Cols)
-		p.Blocks = append(p.Blocks, b)
+		p.Blocks, p.spans = append(p.Blocks, b), append(p.spans, span{from, len(p.net.moves)})
+		p.widest = max(p.widest, b.Rows*b.cols)
+		cost := 2 * float64(b.Rows) * float64(b.Rows) * float64(b.cols)
+		work = append(work, cost)
+		p.flops += cost
 	}
-	p.net.seal(x, y)
+	p.order = task.ByWork(work)
+	p.net.seal(x, slab{})
 }
 
 // perturbLeft: y(l', s1' | w, s2, r) = sum W1(a, w; s1', s1) env(l', a, l) theta(l, s1, s2, r).
@@ -156,7 +186,7 @@ func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 			m, lds := outer.Sectors[lp].Dim, w.wl.Sectors[a].Dim*d1*cols
 			for _, k := range links[a*len(w.states)+s1] {
 				row := d.rows[lp*d.sites+k.out]
-				col, ld := d.cols[(row[0]*nm+k.right)*d.others+s2], d.blocks[row[0]].Cols
+				col, ld := d.cols[(row[0]*nm+k.right)*d.others+s2], d.blocks[row[0]].cols
 				for _, e := range w.local[k.from:k.to] {
 					d.moves[row[0]] = append(d.moves[row[0]], moveTask[T]{src: src + (e.left*d1+e.in)*cols,
 						dst: (row[1]+e.out)*ld + col + e.right*cols, rows: m, cols: cols, lds: lds, ldd: w.states[k.out].dim * ld, value: e.value})
