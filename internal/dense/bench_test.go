@@ -64,7 +64,7 @@ func BenchmarkSVD(b *testing.B) {
 }
 
 func benchmarkSVD[T Scalar](b *testing.B) {
-	for _, s := range [][3]int{{8, 8, 8}, {16, 16, 16}, {32, 32, 32}, {64, 64, 64}, {64, 64, 32}, {128, 128, 128}, {128, 128, 64}, {256, 256, 256}, {256, 256, 128}, {256, 64, 64}, {64, 256, 64}} {
+	for _, s := range [][3]int{{8, 8, 8}, {16, 16, 16}, {32, 32, 32}, {64, 64, 64}, {64, 64, 32}, {128, 128, 128}, {128, 128, 64}, {256, 256, 256}, {256, 256, 128}, {512, 512, 256}, {256, 64, 64}, {64, 256, 64}} {
 		b.Run(fmt.Sprintf("m=%d/n=%d/keep=%d", s[0], s[1], s[2]), func(b *testing.B) {
 			a, u, vh := random[T](s[0]*s[1]), make([]T, s[0]*s[2]), make([]T, s[2]*s[1])
 			var f SVD[T]
@@ -113,6 +113,47 @@ func benchmarkEigen[T Scalar](b *testing.B) {
 					b.Fatal(err)
 				}
 			}
+		})
+	}
+}
+
+// BenchmarkHermitian asks for half of the vectors.
+func BenchmarkHermitian(b *testing.B) {
+	b.Run("type=real", benchmarkHermitian[float64])
+	b.Run("type=complex", benchmarkHermitian[complex128])
+}
+
+func benchmarkHermitian[T Scalar](b *testing.B) {
+	for _, n := range []int{16, 32, 64, 128, 256, 512} {
+		b.Run(fmt.Sprintf("n=%d/keep=%d", n, n/2), func(b *testing.B) {
+			a, v := random[T](n*n), make([]T, n*n/2)
+			var f Hermitian[T]
+			for b.Loop() {
+				if err := f.Factor(n, a, n); err != nil {
+					b.Fatal(err)
+				}
+				f.Largest(n/2, v, n/2)
+			}
+		})
+	}
+}
+
+func BenchmarkPivotedQR(b *testing.B) {
+	b.Run("type=real", benchmarkPivotedQR[float64])
+	b.Run("type=complex", benchmarkPivotedQR[complex128])
+}
+
+func benchmarkPivotedQR[T Scalar](b *testing.B) {
+	for _, n := range []int{16, 64, 256} {
+		b.Run(fmt.Sprintf("n=%d", n), func(b *testing.B) {
+			a, q, r, pivot := random[T](n*n), make([]T, n*n), make([]T, n*n), make([]int, n)
+			var w Workspace[T]
+			for b.Loop() {
+				if _, err := PivotedQR(n, n, a, n, q, n, r, n, pivot, 0, &w); err != nil {
+					b.Fatal(err)
+				}
+			}
+			reportFlops(b, flopFactor[T]()*8/3*float64(n)*float64(n)*float64(n))
 		})
 	}
 }

@@ -31,10 +31,13 @@
 // JacobiSVD and JacobiEigen are slow, short and another method: the oracle that tests compare with.
 //
 // Factorizations work on rows: a reflection is a row of an array, a singular or eigenvector is a row until it is written out, so that
-// vectors are contiguous and blocks of them enter products as they lie. QR is the LQ of the adjoint.
+// vectors are contiguous and blocks of them enter products as they lie. QR is the LQ of the adjoint. SVD and Hermitian split the work:
+// Factor finds all values, and the vectors are multiplied out for as many as are kept.
 //
-// Papers: Golub, Kahan, SIAM J. Numer. Anal. B 2, 205 (1965); Chan, ACM TOMS 8, 72 (1982); Dongarra, Sorensen, Hammarling, J. Comput.
-// Appl. Math. 27, 215 (1989); Schreiber, Van Loan, SIAM J. Sci. Stat. Comput. 10, 53 (1989); Demmel, Veselic, SIAM J. Matrix Anal.
-// Appl. 13, 1204 (1992); Li, LAPACK Working Note 89 (1993); Gu, Eisenstat, SIAM J. Matrix Anal. Appl. 16, 79 (1995); Lehoucq, ACM TOMS
-// 22, 393 (1996); Elmroth, Gustavson, IBM J. Res. Dev. 44, 605 (2000).
+// Papers: Businger, Golub, Numer. Math. 7, 269 (1965); Golub, Kahan, SIAM J. Numer. Anal. B 2, 205 (1965); Cuppen, Numer. Math. 36,
+// 177 (1981); Chan, ACM TOMS 8, 72 (1982); Dongarra, Sorensen, Hammarling, J. Comput. Appl. Math. 27, 215 (1989); Schreiber, Van
+// Loan, SIAM J. Sci. Stat. Comput. 10, 53 (1989); Demmel, Veselic, SIAM J. Matrix Anal. Appl. 13, 1204 (1992); Li, LAPACK Working
+// Note 89 (1993); Gu, Eisenstat, SIAM J. Matrix Anal. Appl. 16, 79 (1995); Lehoucq, ACM TOMS 22, 393 (1996); Quintana-Orti, Sun,
+// Bischof, SIAM J. Sci. Comput. 19, 1486 (1998); Elmroth, Gustavson, IBM J. Res. Dev. 44, 605 (2000); Drmac, Bujanovic, ACM TOMS 35,
+// 12 (2008).
 package dense

@@ -223,7 +223,9 @@ func TestFactorsAllocateNothing(t *testing.T) {
 	a, x, y := random[complex128](n*n), make([]complex128, n*n), make([]complex128, n*n)
 	values := make([]float64, n)
 	var f SVD[complex128]
+	var h Hermitian[complex128]
 	var w Workspace[complex128]
+	pivot := make([]int, n)
 	assert.Zero(t, testing.AllocsPerRun(20, func() {
 		QR(n, n, a, n, x, n, y, n, &w)
 		LQ(n, n, a, n, x, n, y, n, &w)
@@ -234,6 +236,9 @@ func TestFactorsAllocateNothing(t *testing.T) {
 		_ = f.Factor(4, n, a, n)
 		f.Vectors(4, x, 4, y, n)
 		_ = Eigen(n, a, n, values, x, n, &w)
+		_ = h.Factor(n, a, n)
+		h.Largest(3, x, n)
+		_, _ = PivotedQR(n, n, a, n, x, n, y, n, pivot, 0, &w)
 	}))
 }
 

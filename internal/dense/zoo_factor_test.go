@@ -93,20 +93,17 @@ func zooSVD[T Scalar](t *testing.T, f *SVD[T], name string, m, n int, a []T) {
 
 // rescaled brings matrices of extreme magnitude, and their values, to where norms of differences are meaningful.
 func rescaled[T Scalar](a []T, values []float64) ([]T, []float64) {
-	top := largest(1, len(a), a, len(a))
-	scale := 1.0
-	if top != 0 {
+	return scaledLike(a, a), scaledLike(a, values)
+}
+
+// scaledLike returns x divided by a power of two near the largest entry of a.
+func scaledLike[T, U Scalar](a []T, x []U) []U {
+	out := append([]U(nil), x...)
+	if top := largest(1, len(a), a, len(a)); top != 0 {
 		_, exp := math.Frexp(top)
-		scale = math.Ldexp(1, max(-1022, min(1022, -exp)))
+		Scale(FromFloat[U](math.Ldexp(1, max(-1022, min(1022, -exp)))), out)
 	}
-	c, v := append([]T(nil), a...), append([]float64(nil), values...)
-	for i := range c {
-		c[i] *= FromFloat[T](scale)
-	}
-	for i := range v {
-		v[i] *= scale
-	}
-	return c, v
+	return out
 }
 
 // coarseness is how much further apart numbers of the size of a's largest are than eps times that size: more than 1 for subnormal ones.
@@ -141,14 +138,7 @@ func zooQR[T Scalar](t *testing.T, name string, m, n int, a []T, w *Workspace[T]
 	c, _ := rescaled(a, nil)
 	small(t, orthogonality(m, k, q), qrBound, "QR of %s: Q", name)
 	checkTrapezoid(t, input(k, n, 0, 0, r), name)
-	if top := largest(1, len(a), a, len(a)); top > 0 {
-		_, exp := math.Frexp(top)
-		scaled := append([]T(nil), r...)
-		for i := range scaled {
-			scaled[i] *= FromFloat[T](math.Ldexp(1, max(-1022, min(1022, -exp))))
-		}
-		small(t, reconstruction(m, n, k, c, q, scaled), qrBound*coarseness(a), "QR of %s: A - QR", name)
-	}
+	small(t, reconstruction(m, n, k, c, q, scaledLike(a, r)), qrBound*coarseness(a), "QR of %s: A - QR", name)
 }
 
 func zooHermitian[T Scalar](t *testing.T, h *Hermitian[T], name string, n int, a []T) {
