@@ -285,3 +285,24 @@ func TestOperatorRankOfRandomTerms(t *testing.T) {
 		}
 	}
 }
+
+// TestOperatorRankOfTunedTerms couples all pairs of sites by numbers of low rank: the covers of strings are far larger.
+func TestOperatorRankOfTunedTerms(t *testing.T) {
+	rng := rand.New(rand.NewPCG(5, 5))
+	draw := func() complex128 { return complex(0.1+0.9*rng.Float64(), 0) }
+	w := newTwice(2, 6)
+	first, second, third := make([]complex128, w.sites()), make([]complex128, w.sites()), make([]complex128, w.sites())
+	for x := range w.sites() {
+		first[x], second[x], third[x] = draw(), draw(), draw()
+	}
+	for x := range w.sites() {
+		for y := x + 1; y < w.sites(); y++ {
+			w.add(first[x]*second[y], "n", x, "n", y)                        // rank one
+			w.add(first[x]*second[y]+second[x]*third[y], "c^+", x, "c", y)   // rank two, and as much for the conjugate
+			w.add(complex(math.Pow(0.8, float64(y-x)), 0), "c^+", x, "c", y) // decays: one more
+		}
+	}
+	h := w.hamiltonian(t, ladder.Fermion())
+	requireOperatorRank(t, h)
+	require.Equal(t, 1+2*3+2, operatorBond(h.Poly, w.sites()/2))
+}
