@@ -55,7 +55,7 @@ func (m model) follow(ctx context.Context, out io.Writer, couplings []float64) e
 	for _, k := range couplings {
 		p, state, err := m.solve(ctx, k, last)
 		if err != nil {
-			return fmt.Errorf("K = %v: %w", k, err)
+			return fmt.Errorf("at K = %v: %w", k, err)
 		}
 		last = state
 		fmt.Fprintf(out, "%5.2f  %11.5f ± %.0e  %12.5f  %8d  %s\n", k, p.energy, p.energyError, p.edge, p.reversed, p.verdict)
