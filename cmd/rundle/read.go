@@ -1,6 +1,7 @@
 package main
 
 import (
+	"context"
 	"errors"
 
 	"rundle/internal/solve"
@@ -20,8 +21,10 @@ func (k readCommand) run(c *console) (int, error) {
 		}
 		opt.Model = m
 	}
-	result, notes, err := solve.Read(c.ctx, k.Dir, opt)
-	if c.ctx.Err() != nil && err != nil {
+	ctx, release := untilSignal(context.Background(), c.stderr)
+	defer release()
+	result, notes, err := solve.Read(ctx, k.Dir, opt)
+	if ctx.Err() != nil && err != nil {
 		return 0, errors.Join(errStopped, err)
 	}
 	if err != nil {

@@ -1,7 +1,6 @@
 package main
 
 import (
-	"context"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -31,7 +30,6 @@ var commands = []string{"check", "solve", "read", "version"}
 
 // console is what a command talks to.
 type console struct {
-	ctx            context.Context
 	stdout, stderr io.Writer
 	json           bool
 	threads        int
@@ -92,9 +90,6 @@ func (c *console) dispatch(args []string) (int, error) {
 		runtime.GOMAXPROCS(g.Threads)
 	}
 	c.json, c.threads = g.JSON, g.Threads
-	var release func()
-	c.ctx, release = untilSignal(context.Background(), c.stderr)
-	defer release()
 	return parsed.Selected().Target.Addr().Interface().(runner).run(c)
 }
 

@@ -22,7 +22,7 @@ func untilSignal(parent context.Context, stderr io.Writer) (ctx context.Context,
 		select {
 		case s := <-caught:
 			signal.Stop(caught) // the next one has its usual effect
-			fmt.Fprintf(stderr, "%v: saving a checkpoint; once more to end at once\n", s)
+			fmt.Fprintf(stderr, "%v: stopping; once more to end at once\n", s)
 			cancel()
 		case <-over:
 		}

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"context"
 	"path/filepath"
 
 	"rundle/internal/modelfile"
@@ -31,10 +32,12 @@ func (k solveCommand) run(c *console) (int, error) {
 	for _, w := range m.Hamiltonian.Warnings() {
 		c.say("warning: %s", w)
 	}
+	ctx, release := untilSignal(context.Background(), c.stderr)
+	defer release()
 	show := newDisplay(c.stderr)
 	opt.OnProgress = show.update
 	opt.OnNote = func(note string) { c.say("%s", note) }
-	out, err := solve.Run(c.ctx, m, opt)
+	out, err := solve.Run(ctx, m, opt)
 	show.close()
 	if err != nil {
 		return 0, err

@@ -47,6 +47,9 @@ func withError(v, err float64) string { return digits(v, err) + " ± " + shortEr
 
 // digits writes a value as far as its error lets it be known.
 func digits(v, err float64) string {
+	if a := math.Abs(v); a > err && (a < 1e-6 || a >= 1e15) {
+		return strconv.FormatFloat(v, 'g', 12, 64)
+	}
 	places := 12
 	if err > 0 && !math.IsInf(err, 0) {
 		places = min(13, max(0, 1-int(math.Floor(math.Log10(err)))))

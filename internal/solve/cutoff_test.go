@@ -4,12 +4,12 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"strings"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 
-	"rundle/dmrg"
 	"rundle/internal/runfolder"
 )
 
@@ -60,15 +60,15 @@ func TestCutoff(t *testing.T) {
 	}
 }
 
-// TestTooDear: the variance is left out where long-range couplings make its operator large and the search was short.
-func TestTooDear(t *testing.T) {
-	m := chain(t, 8, 4, 1e-8)
-	found := &dmrg.Result{LargestBond: 100, OperatorBonds: []int{1, 5, 5, 5, 1}, Sweeps: []dmrg.Sweep{{LargestBond: 100}, {LargestBond: 100}}}
-	assert.False(t, tooDear(found, m.Ladder))
-	found.OperatorBonds = []int{1, 500, 500, 500, 1}
-	assert.True(t, tooDear(found, m.Ladder))
-	for range 50 {
-		found.Sweeps = append(found.Sweeps, dmrg.Sweep{LargestBond: 100})
-	}
-	assert.False(t, tooDear(found, m.Ladder))
+// TestGiantCouplings: an energy near the largest numbers is a result; its variance is none.
+func TestGiantCouplings(t *testing.T) {
+	m := parse(t, strings.Replace(fmt.Sprintf(hopping, 6, 3, 1e-8), "t = 1.0", "t = 1e200", 1))
+	dir := filepath.Join(t.TempDir(), "a.run")
+	s := solved(t, m, Options{Dir: dir}).Result.States[0]
+	energy, _ := filled(6, 3)
+	assert.InEpsilon(t, 1e200*energy, s.Energy, 1e-10)
+	assert.Nil(t, s.Variance)
+	log, err := runfolder.ReadLog(dir)
+	require.NoError(t, err)
+	assert.Contains(t, log[len(log)-1].Note, "the variance is left out")
 }

@@ -19,16 +19,23 @@ type Forecast struct {
 // forecastBonds are the bond dimensions looked at.
 var forecastBonds = []int{100, 300, 1000, 3000}
 
+// forecastWork bounds the forecast's own work, in charges visited: about two seconds.
+const forecastWork = 2e7
+
 // forecast counts elements and operations for states whose bonds are shared among the charges as the configurations are. largest is the
-// cap that the model sets, 0 for none. It stops where the ladder has no more states.
+// cap that the model sets, 0 for none. It stops where the ladder has no more states, and on very long ladders after the first bond dimensions.
 func forecast[T dense.Scalar](op *mpo.Operator[T], total block.Charge, largest int) ([]Forecast, error) {
 	var all []Forecast
 	list := forecastBonds
 	if largest > 0 {
 		list = append(slices.DeleteFunc(slices.Clone(list), func(b int) bool { return b >= largest }), largest)
 	}
-	last := 0
-	for _, bond := range list {
+	last, work := 0, 0.0
+	for i, bond := range list {
+		work += float64(len(op.Phys)) * float64(max(512, 4*bond)) // the charges that ExpectedBonds follows
+		if i > 0 && work > forecastWork {
+			break
+		}
 		bonds, err := mps.ExpectedBonds(op.Group, op.Phys, total, bond)
 		if err != nil {
 			return nil, err
@@ -88,6 +95,9 @@ func environmentRows[T dense.Scalar](op *mpo.Operator[T], bonds []block.Axis, b 
 	}
 	return rows
 }
+
+// updateProducts is about how many products with the effective Hamiltonian a bond update takes, environments included.
+const updateProducts = 7
 
 // svdWork is about the operations of a singular value decomposition of a square matrix in units of a product of two such.
 const svdWork = 10

@@ -18,10 +18,9 @@ func (r *run) result(ctx context.Context, w *watch, found *dmrg.Result) (*runfol
 	}
 	model := describe(r.model, found)
 	model.Hash = r.origin.Hash
-	return &runfolder.Result{
-		Model: model, States: []runfolder.State{state},
-		Resources: r.used.resources(r.opt.Threads, r.opt.Version),
-	}, nil
+	used := r.used.resources(r.opt.Threads, r.opt.Version)
+	used.GemmFlops = &found.Flops
+	return &runfolder.Result{Model: model, States: []runfolder.State{state}, Resources: used}, nil
 }
 
 // describe says what was solved.

@@ -333,7 +333,7 @@ func TestLimits(t *testing.T) {
 	}
 	again := solved(t, m, Options{Dir: dir})
 	assert.True(t, again.Resumed)
-	assert.Equal(t, s.Sweeps+1, again.Result.States[0].Sweeps)
+	assert.GreaterOrEqual(t, again.Result.States[0].Sweeps, s.Sweeps)
 
 	m.Solve.Time = 0
 	free := solved(t, m, Options{Dir: dir})
