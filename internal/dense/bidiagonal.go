@@ -23,7 +23,7 @@ func bidiagonalize[T Scalar](m, n int, a []T, d, e []float64, q, p *reflectors[T
 	width := bidiagonalPanel(n)
 	vx, yu := w.elems.take(2*width*m), w.elems.take(2*width*n)
 	x := bidiagonalPanelState[T]{m: m, n: n, a: a, vx: vx, yu: yu, q: q, p: p,
-		s: w.elems.take(2 * width), v: w.elems.take(m), u: w.elems.take(n)}
+		s: w.elems.take(2 * width), v: w.elems.take(m), u: w.elems.take(n), x: w.elems.take(m)}
 	for k := 0; k < n; k += width {
 		size := min(width, n-k)
 		clear(vx)
@@ -31,6 +31,7 @@ func bidiagonalize[T Scalar](m, n int, a []T, d, e []float64, q, p *reflectors[T
 		for i := range size {
 			d[k+i] = x.column(k+i, 2*i)
 			if k+i+1 < n {
+				x.sweep(k+i, 2*i)
 				e[k+i] = x.row(k+i, 2*i)
 			}
 		}
@@ -51,73 +52,86 @@ type bidiagonalPanelState[T Scalar] struct {
 	s      []T // 2 panel widths
 	v      []T // m
 	u      []T // n
+	x      []T // m
 }
 
-// column brings column k up to date with the first done rows of vx and yu, makes its reflection, and the row y^H; it returns the
-// diagonal element.
+// column brings column k up to date with the first done rows of vx and yu and makes its reflection; it returns the diagonal element.
 func (b *bidiagonalPanelState[T]) column(k, done int) float64 {
 	m, n := b.m, b.n
 	v, vh := b.v[:m-k], b.q.rows[k*m+k:k*m+m]
 	readColumn(k, b.a[k*n:], n, v)
 	Conjugate(v, v)
-	if done > 0 {
-		s := b.s[:done]
-		readColumn(k, b.yu, n, s)
-		negateConjugate(s)
-		addCombination(done, m-k, s, b.vx[k:], m, v)
-	}
+	s := b.s[:done]
+	readColumn(k, b.yu, n, s)
+	Conjugate(s, s)
+	matVec(Trans, done, m-k, -1, b.vx[k:], m, s, 1, v)
 	Conjugate(v, v)
 	beta, tau := reflector(v)
 	b.q.tau[k] = tau
 	Conjugate(vh, v)
 	copy(b.vx[done*m+k:], vh)
-	if k+1 == n {
-		return beta
-	}
-	y := b.yu[done*n+k+1 : done*n+n]
-	matVec(Trans, m-k, n-k-1, b.a[k*n+k+1:], n, vh, y)
-	if done > 0 {
-		s := b.s[:done]
-		matVec(NoTrans, done, m-k, b.vx[k:], m, v, s)
-		negateConjugate(s)
-		addCombination(done, n-k-1, s, b.yu[k+1:], n, y)
-	}
-	Scale(Conj(tau), y)
 	return beta
 }
 
-// row does the same for row k right of the diagonal, and makes x^H; it returns the off-diagonal element.
+// sweepBytes is the size of the piece of the matrix that sweep reads twice: it should stay in the cache meanwhile. BenchmarkSVD sets it
+// anew.
+const sweepBytes = 400 << 10
+
+// sweep makes y^H, and row k right of the diagonal up to date as the column u to reflect, and x = A u. A is read once: as soon as some
+// columns of A have given their part of y^H, that part of u is known and they serve for x (Howell, Demmel, Fulton, Hammarling,
+// Marmol, ACM TOMS 34, 14 (2008)).
+func (b *bidiagonalPanelState[T]) sweep(k, done int) {
+	m, n := b.m, b.n
+	v, vh, tau := b.v[:m-k], b.q.rows[k*m+k:k*m+m], Conj(b.q.tau[k])
+	y, u, x := b.yu[done*n:done*n+n], b.u[:n], b.x[:m-k-1]
+
+	// What the panel takes off y and off the row.
+	s := b.s[:done]
+	matVec(NoTrans, done, m-k, 1, b.vx[k:], m, v, 0, s)
+	Conjugate(s, s)
+	matVec(Trans, done, n-k-1, -tau, b.yu[k+1:], n, s, 0, y[k+1:])
+	copy(u[k+1:], b.a[k*n+k+1:k*n+n])
+	readColumn(k, b.vx, m, s)
+	Conjugate(s, s)
+	matVec(Trans, done, n-k-1, -1, b.yu[k+1:], n, s, 1, u[k+1:])
+
+	clear(x)
+	width := max(32, sweepBytes/(8*(m-k)*realParts[T]())&^7)
+	for j := k + 1; j < n; j += width {
+		end := min(j+width, n)
+		matVec(Trans, m-k, end-j, tau, b.a[k*n+j:], n, vh, 1, y[j:end])
+		Axpy(-1, y[j:end], u[j:end])
+		Conjugate(u[j:end], u[j:end])
+		matVec(NoTrans, m-k-1, end-j, 1, b.a[(k+1)*n+j:], n, u[j:end], 1, x)
+	}
+}
+
+// row makes the reflection of row k and x^H; it returns the off-diagonal element.
 func (b *bidiagonalPanelState[T]) row(k, done int) float64 {
 	m, n := b.m, b.n
-	u, uh := b.u[:n-k-1], b.p.rows[k*n+k+1:k*n+n]
-	copy(u, b.a[k*n+k+1:])
-	s := b.s[:done+1]
-	readColumn(k, b.vx, m, s)
-	negateConjugate(s)
-	addCombination(done+1, n-k-1, s, b.yu[k+1:], n, u)
-	Conjugate(u, u)
+	u, uh := b.u[k+1:n], b.p.rows[k*n+k+1:k*n+n]
+	alpha := u[0]
 	beta, tau := reflector(u)
 	b.p.tau[k] = tau
 	Conjugate(uh, u)
 	copy(b.yu[(done+1)*n+k+1:], uh)
-	if k+1 == m {
+	x := b.vx[(done+1)*m+k+1 : (done+1)*m+m]
+	if tau == 0 {
+		clear(x)
 		return beta
 	}
-	x := b.vx[(done+1)*m+k+1 : (done+1)*m+m]
-	matVec(NoTrans, m-k-1, n-k-1, b.a[(k+1)*n+k+1:], n, u, x)
+	// The reflector made (u - beta e_0)/(alpha - beta) of u.
+	readColumn(k+1, b.a[(k+1)*n:], n, x)
+	Scale(FromFloat[T](-beta), x)
+	Axpy(1, b.x[:m-k-1], x)
+	Scale(1/(alpha-FromFloat[T](beta)), x)
 	Conjugate(x, x)
-	matVec(NoTrans, done+1, n-k-1, b.yu[k+1:], n, u, s)
-	negateConjugate(s)
-	addCombination(done+1, m-k-1, s, b.vx[k+1:], m, x)
+	s := b.s[:done+1]
+	matVec(NoTrans, done+1, n-k-1, 1, b.yu[k+1:], n, u, 0, s)
+	Conjugate(s, s)
+	matVec(Trans, done+1, m-k-1, -1, b.vx[k+1:], m, s, 1, x)
 	Scale(Conj(tau), x)
 	return beta
-}
-
-// addCombination adds sum_i s_i rows_i to x; the rows are those of a count×length matrix.
-func addCombination[T Scalar](count, length int, s []T, rows []T, ld int, x []T) {
-	for i := range count {
-		Axpy(s[i], rows[i*ld:i*ld+length], x[:length])
-	}
 }
 
 // readColumn copies column j of a into x.
@@ -139,4 +153,12 @@ func writeColumn[T Scalar](j int, a []T, lda int, x []T) {
 	for i := range x {
 		a[i*lda+j] = x[i]
 	}
+}
+
+// realParts is the number of real numbers in a T.
+func realParts[T Scalar]() int {
+	if IsComplex[T]() {
+		return 2
+	}
+	return 1
 }

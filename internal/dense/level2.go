@@ -2,10 +2,10 @@ package dense
 
 import "gonum.org/v1/gonum/blas"
 
-// matVec computes y = op(A) x for the m×n matrix A; op is NoTrans or Trans.
-func matVec[T Scalar](op Op, m, n int, a []T, lda int, x, y []T) {
+// matVec computes y = alpha op(A) x + beta y for the m×n matrix A; op is NoTrans or Trans. beta == 0: y is not read.
+func matVec[T Scalar](op Op, m, n int, alpha T, a []T, lda int, x []T, beta T, y []T) {
 	if m == 0 || n == 0 {
-		clear(y)
+		Scale(beta, y)
 		return
 	}
 	tr := blas.NoTrans
@@ -14,8 +14,8 @@ func matVec[T Scalar](op Op, m, n int, a []T, lda int, x, y []T) {
 	}
 	switch a := any(a).(type) {
 	case []float64:
-		ref.Dgemv(tr, m, n, 1, a, lda, any(x).([]float64), 1, 0, any(y).([]float64), 1)
+		ref.Dgemv(tr, m, n, any(alpha).(float64), a, lda, any(x).([]float64), 1, any(beta).(float64), any(y).([]float64), 1)
 	case []complex128:
-		ref.Zgemv(tr, m, n, 1, a, lda, any(x).([]complex128), 1, 0, any(y).([]complex128), 1)
+		ref.Zgemv(tr, m, n, any(alpha).(complex128), a, lda, any(x).([]complex128), 1, any(beta).(complex128), any(y).([]complex128), 1)
 	}
 }

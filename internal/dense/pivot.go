@@ -168,9 +168,9 @@ func (p *pivoting[T]) reflect(k, i int) {
 	}
 	// g[:,done] = tau (x - g R) u
 	s, t := p.s[:rest], p.s[rest:rest+done]
-	matVec(NoTrans, rest, m-i, p.x[(i+1)*m+i:], m, u, s)
+	matVec(NoTrans, rest, m-i, 1, p.x[(i+1)*m+i:], m, u, 0, s)
 	if done > 0 {
-		matVec(NoTrans, done, m-i, p.h.rows[k*m+i:], m, u, t)
+		matVec(NoTrans, done, m-i, 1, p.h.rows[k*m+i:], m, u, 0, t)
 	}
 	for r := range rest {
 		g := p.g[(i+1+r)*pivotPanel:][:done+1]

@@ -56,7 +56,11 @@ func (s *secular) step(pole, t, h float64) float64 {
 		return t + h
 	}
 	w := pole + t
-	return t + h/(w+math.Sqrt(math.Max(w*w+h, 0)))
+	square := w*w + h
+	if square < 0 {
+		square = 0
+	}
+	return t + h/(w+math.Sqrt(square))
 }
 
 // solve finds all roots. It reports false if one does not converge.
@@ -161,7 +165,7 @@ func (s *secular) refine(i, origin int, t, low, high float64) bool {
 		psi, dpsi := s.sums(s.d[:first+1], s.z[:first+1], pole, t)
 		phi, dphi := s.sums(s.d[first+1:], s.z[first+1:], pole, t)
 		f, slope := 1+psi+phi, dpsi+dphi
-		moved := math.Abs(t)
+		moved := t
 		if s.squared {
 			moved *= 2*pole + t
 		}

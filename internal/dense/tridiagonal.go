@@ -57,8 +57,8 @@ func (x *tridiagonal[T]) column(k, done int) (diagonal, off float64) {
 	row, s := x.y[:n-k], x.s[:done]
 	copy(row, x.a[k*n+k:])
 	readColumn(k, x.vw, n, s)
-	negateConjugate(s)
-	addCombination(done, n-k, s, x.wv[k:], n, row)
+	Conjugate(s, s)
+	matVec(Trans, done, n-k, -1, x.wv[k:], n, s, 1, row)
 	diagonal = Real(row[0])
 	if k+1 == n {
 		return diagonal, 0
@@ -74,9 +74,9 @@ func (x *tridiagonal[T]) column(k, done int) (diagonal, off float64) {
 	// With p = tau A v: H^H A H = A - w v^H - v w^H, w = p - (conj(tau)/2) (v^H p) v.
 	w := x.vw[(done+1)*n+k+1 : (done+1)*n+n]
 	x.multiply(k+1, v, vh, w)
-	matVec(NoTrans, done, n-k-1, x.wv[k+1:], n, v, s)
-	negateConjugate(s)
-	addCombination(done, n-k-1, s, x.vw[k+1:], n, w)
+	matVec(NoTrans, done, n-k-1, 1, x.wv[k+1:], n, v, 0, s)
+	Conjugate(s, s)
+	matVec(Trans, done, n-k-1, -1, x.vw[k+1:], n, s, 1, w)
 	Scale(Conj(tau), w)
 	Axpy(-tau*Dot(vh, w)/FromFloat[T](2), vh, w)
 	copy(x.wv[done*n+k+1:], w)
@@ -90,26 +90,15 @@ func (x *tridiagonal[T]) column(k, done int) (diagonal, off float64) {
 func (x *tridiagonal[T]) multiply(from int, v, vh, out []T) {
 	n := x.n
 	clear(out)
-	t := x.y
+	upper := x.y[:n-from]
 	for i := from; i < n; {
 		end := min(n, i-i%stripRows+stripRows)
-		upper := t[:end-i]
-		matVec(NoTrans, end-i, n-i, x.a[i*n+i:], n, v[i-from:], upper)
-		Conjugate(upper, upper)
-		Axpy(FromFloat[T](1), upper, out[i-from:end-from])
+		matVec(NoTrans, end-i, n-i, 1, x.a[i*n+i:], n, v[i-from:], 0, upper[i-from:end-from])
 		if end < n {
-			lower := t[:n-end]
-			matVec(Trans, end-i, n-end, x.a[i*n+end:], n, vh[i-from:end-from], lower)
-			Axpy(FromFloat[T](1), lower, out[end-from:])
+			matVec(Trans, end-i, n-end, 1, x.a[i*n+end:], n, vh[i-from:end-from], 1, out[end-from:])
 		}
 		i = end
 	}
-}
-
-// negateConjugate replaces x by -conj(x).
-func negateConjugate[T Scalar](x []T) {
-	Conjugate(x, x)
-	for i := range x {
-		x[i] = -x[i]
-	}
+	Conjugate(upper, upper)
+	Axpy(1, upper, out)
 }
