@@ -95,13 +95,13 @@ func sweeping(text []byte, process int) bool {
 	return json.Unmarshal(text, &s) == nil && s.Phase == "running" && s.Process == process && s.Sweep > 0
 }
 
-// interrupts SIGNAL CODE DIR COMMAND ARG... runs a command, sends it a signal (int, term) once its run folder DIR tells of sweeps done, and checks its
+// interrupts SIGNAL CODE DIR COMMAND ARG... runs a command, sends it a signal (int, term, kill) once its run folder DIR tells of sweeps done, and checks its
 // exit code. Standard output goes to the file interrupted.out, standard error to interrupted.err.
 func interrupts(ts *testscript.TestScript, neg bool, args []string) {
 	if neg || len(args) < 4 {
 		ts.Fatalf("usage: interrupts SIGNAL CODE DIR COMMAND ARG...")
 	}
-	signal := map[string]os.Signal{"int": os.Interrupt, "term": syscall.SIGTERM}[args[0]]
+	signal := map[string]os.Signal{"int": os.Interrupt, "term": syscall.SIGTERM, "kill": os.Kill}[args[0]]
 	program, err := exec.LookPath(args[3])
 	ts.Check(err)
 	command := exec.Command(program, args[4:]...)

@@ -45,7 +45,7 @@ func Read(ctx context.Context, dir string, opt ReadOptions) (*runfolder.Result, 
 		if k == 0 {
 			notes = differing(m, psi.Scope())
 		}
-		if psi, err = onScope(psi, m.Scope); err != nil {
+		if psi, err = rebound(psi, psi.Frames(), m.Scope); err != nil {
 			return nil, nil, err
 		}
 		if err := reread(ctx, &result.States[k], psi, m); err != nil {

@@ -98,7 +98,8 @@ func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyE
 		}
 		return observations(now, bars), nil
 	}
-	if before, err = onScope(before, r.model.Scope); err != nil {
+	// Frames from a file know no ladder: those of the state found spare them learning it at every place.
+	if before, err = rebound(before, found.State.Frames(), r.model.Scope); err != nil {
 		return nil, err
 	}
 	earlier, err := measure(ctx, before, r.model.Observe)

@@ -10,13 +10,14 @@ import (
 	"rundle/mps"
 )
 
-// onScope returns a state that reads formulas in another scope, of an equal ladder. It shares the state's memory.
-func onScope(s *mps.State, scope *ladder.Scope) (*mps.State, error) {
+// rebound returns a state that reads formulas in another scope, of an equal ladder, through given frames, which must equal its own. It
+// shares the state's memory.
+func rebound(s *mps.State, f *ladder.Frames, scope *ladder.Scope) (*mps.State, error) {
 	if c, ok := s.Real(); ok {
-		return mps.NewReal(c, s.Frames(), scope)
+		return mps.NewReal(c, f, scope)
 	}
 	c, _ := s.Complex()
-	return mps.NewComplex(c, s.Frames(), scope)
+	return mps.NewComplex(c, f, scope)
 }
 
 // differing names the constants that a model and a saved state understand differently.
