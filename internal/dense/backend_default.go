@@ -6,11 +6,7 @@ package dense
 
 const haveNetlib = false
 
-func netlibReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
-	panic("dense: built without netlib")
-}
-
-func netlibComplex(opA, opB Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
+func netlibGemm[T Scalar](opA, opB Op, m, n, k int, alpha T, a []T, lda int, b []T, ldb int, beta T, c []T, ldc int) {
 	panic("dense: built without netlib")
 }
 

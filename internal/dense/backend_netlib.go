@@ -29,6 +29,16 @@ func (op Op) blas() blas.Transpose {
 	return blas.NoTrans
 }
 
+// netlibGemm is Gemm; no size is zero.
+func netlibGemm[T Scalar](opA, opB Op, m, n, k int, alpha T, a []T, lda int, b []T, ldb int, beta T, c []T, ldc int) {
+	switch a := any(a).(type) {
+	case []float64:
+		netlibReal(opA, opB, m, n, k, any(alpha).(float64), a, lda, any(b).([]float64), ldb, any(beta).(float64), any(c).([]float64), ldc)
+	case []complex128:
+		netlibComplex(opA, opB, m, n, k, any(alpha).(complex128), a, lda, any(b).([]complex128), ldb, any(beta).(complex128), any(c).([]complex128), ldc)
+	}
+}
+
 func netlibReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
 	oneThread()
 	cblas.Dgemm(opA.blas(), opB.blas(), m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)

@@ -32,21 +32,10 @@ func BenchmarkGemm(b *testing.B) {
 func benchmarkGemm[T Scalar](b *testing.B) {
 	run := func(opA, opB Op, m, n, k int) {
 		b.Run(fmt.Sprintf("ops=%v%v/m=%d/n=%d/k=%d", opA, opB, m, n, k), func(b *testing.B) {
-			x, y, c := random[T](m*k), random[T](k*n), make([]T, m*n)
-			lda, ldb := k, n
-			if opA.transposes() {
-				lda = m
-			}
-			if opB.transposes() {
-				ldb = k
-			}
-			for b.Loop() {
-				Gemm(opA, opB, m, n, k, 1, x, lda, y, ldb, 0, c, n)
-			}
-			reportFlops(b, flopFactor[T]()*2*float64(m)*float64(n)*float64(k))
+			benchmarkProduct[T](b, opA, opB, m, n, k)
 		})
 	}
-	for _, n := range []int{2, 4, 6, 8, 16, 32, 64, 128, 256, 512, 1024} {
+	for _, n := range []int{1, 2, 4, 6, 8, 16, 32, 64, 128, 256, 512, 1024} {
 		run(NoTrans, NoTrans, n, n, n)
 	}
 	for _, ops := range [][2]Op{{NoTrans, ConjTrans}, {ConjTrans, NoTrans}, {ConjTrans, ConjTrans}, {NoTrans, ConjNoTrans}} {
@@ -56,6 +45,21 @@ func benchmarkGemm[T Scalar](b *testing.B) {
 	for _, s := range [][3]int{{512, 1, 512}, {512, 4, 512}, {1, 512, 512}, {512, 512, 4}, {512, 16, 512}, {16, 512, 512}} {
 		run(NoTrans, NoTrans, s[0], s[1], s[2])
 	}
+}
+
+func benchmarkProduct[T Scalar](b *testing.B, opA, opB Op, m, n, k int) {
+	x, y, c := random[T](m*k), random[T](k*n), make([]T, m*n)
+	lda, ldb := k, n
+	if opA.transposes() {
+		lda = m
+	}
+	if opB.transposes() {
+		ldb = k
+	}
+	for b.Loop() {
+		Gemm(opA, opB, m, n, k, 1, x, lda, y, ldb, 0, c, n)
+	}
+	reportFlops(b, flopFactor[T]()*2*float64(m)*float64(n)*float64(k))
 }
 
 func BenchmarkSVD(b *testing.B) {

@@ -104,8 +104,31 @@ func everySize[T Scalar](t *testing.T) {
 			for _, opA := range allOps {
 				for _, opB := range allOps {
 					seed++
-					if seed%2 == uint64(size%2) { // half of them: 5000 products for each kernel and type
+					if (seed+uint64(size))%share == 0 {
 						checkGemm(t, opA, opB, s[0], s[1], s[2], alphas[seed/4%3], betas[seed/12%3], seed)
+					}
+				}
+			}
+		}
+	}
+}
+
+// TestGemmNarrow takes few rows and columns through long sums: sizes for which other kernels serve than for the rest.
+func TestGemmNarrow(t *testing.T) {
+	eachKernels(t, func(t *testing.T) { both(t, narrow[float64], narrow[complex128]) })
+}
+
+func narrow[T Scalar](t *testing.T) {
+	seed := uint64(0)
+	for _, k := range []int{15, 16, 17, 63, 64, 65, 130, 512, 1030} {
+		for _, m := range []int{1, 2, 3, 4, 5, 6, 9, 33} {
+			for _, n := range []int{1, 2, 3, 4, 5, 7} {
+				for _, opA := range allOps {
+					for _, opB := range allOps {
+						seed++
+						if seed%share == 0 && (share == 1 || seed%5 == 0 || k < 100) {
+							checkGemm(t, opA, opB, m, n, k, FromFloat[T](1.5), FromFloat[T](float64(seed%3)), seed)
+						}
 					}
 				}
 			}

@@ -141,14 +141,14 @@ func TestGemmPlain(t *testing.T) {
 				ldb = k
 			}
 			got, want := make([]complex128, m*n), make([]complex128, m*n)
-			plainComplex(opA, opB, m, n, k, 2i, a, lda, b, ldb, 0, got, n)
+			plain(opA, opB, m, n, k, 2i, a, lda, b, ldb, 0, got, n)
 			Gemm(opA, opB, m, n, k, 2i, a, lda, b, ldb, 0, want, n)
 			Axpy(-1, want, got)
 			small(t, Norm(got)/Norm(want)/eps, 10, "complex %v%v", opA, opB)
 
 			x, y := random[float64](m*k), random[float64](k*n)
 			gotReal, wantReal := make([]float64, m*n), make([]float64, m*n)
-			plainReal(opA, opB, m, n, k, 2, x, lda, y, ldb, 0, gotReal, n)
+			plain(opA, opB, m, n, k, 2, x, lda, y, ldb, 0, gotReal, n)
 			Gemm(opA, opB, m, n, k, 2, x, lda, y, ldb, 0, wantReal, n)
 			Axpy(-1, wantReal, gotReal)
 			small(t, Norm(gotReal)/Norm(wantReal)/eps, 10, "real %v%v", opA, opB)

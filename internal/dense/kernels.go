@@ -81,25 +81,3 @@ func UseKernels(name string) error {
 }
 
 func useNetlib() bool { return haveNetlib && kernels == netlibKernels }
-
-func gemmReal(opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
-	switch kernels {
-	case avx512Kernels, avx2Kernels:
-		tiledReal(kernels, opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-	case netlibKernels:
-		netlibReal(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-	default:
-		blocked(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-	}
-}
-
-func gemmComplex(opA, opB Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
-	switch kernels {
-	case avx512Kernels, avx2Kernels:
-		tiledComplex(kernels, opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-	case netlibKernels:
-		netlibComplex(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-	default:
-		blocked(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
-	}
-}

@@ -8,10 +8,8 @@ const (
 	haveAVX2   = false
 )
 
-func tiledReal(set kernelSet, opA, opB Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
-	panic("dense: built without assembly")
-}
+const haveTiles = false
 
-func tiledComplex(set kernelSet, opA, opB Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
+func runTiles(p *tileCall, size int, transA, transB bool, m, n, k, lda, ldb, ldc int) {
 	panic("dense: built without assembly")
 }

@@ -22,7 +22,7 @@ import (
 
 func main() {
 	log.SetFlags(0)
-	tiles := declarations("../tile_amd64.go")
+	tiles := declarations("../tilecall.go", "../tile_amd64.go")
 	write("../tile_avx512_amd64.s", tiles, func(g *generator) {
 		for nv := 1; nv <= 3; nv++ {
 			g.tiles(avx512, false, 8, nv)
@@ -31,6 +31,23 @@ func main() {
 			g.tiles(avx512, true, 4, nv)
 		}
 		g.packs(avx512)
+	})
+	write("../dots_avx512_amd64.s", tiles, func(g *generator) {
+		for columns := 1; columns <= 4; columns++ {
+			g.dots(avx512, false, 4, columns)
+		}
+		for columns := 1; columns <= 2; columns++ {
+			g.dots(avx512, true, 4, columns)
+		}
+	})
+	write("../dots_avx2_amd64.s", tiles, func(g *generator) {
+		g.tailTable()
+		for columns := 1; columns <= 4; columns++ {
+			g.dots(avx2, false, 2, columns)
+		}
+		for columns := 1; columns <= 2; columns++ {
+			g.dots(avx2, true, 2, columns)
+		}
 	})
 	write("../tile_avx2_amd64.s", tiles, func(g *generator) {
 		g.tailTable()
@@ -72,15 +89,19 @@ func (g *generator) packs(s isa) {
 	g.packColumns(s, true)
 }
 
-// declarations type-checks one Go file that imports nothing.
-func declarations(path string) *types.Package {
+// declarations type-checks Go files that import nothing and need the rest of the package in function bodies alone.
+func declarations(paths ...string) *types.Package {
 	set := token.NewFileSet()
-	file, err := parser.ParseFile(set, path, nil, 0)
-	if err != nil {
-		log.Fatal(err)
+	var files []*ast.File
+	for _, path := range paths {
+		file, err := parser.ParseFile(set, path, nil, 0)
+		if err != nil {
+			log.Fatal(err)
+		}
+		files = append(files, file)
 	}
 	config := types.Config{IgnoreFuncBodies: true}
-	pkg, err := config.Check("rundle/internal/dense", set, []*ast.File{file}, nil)
+	pkg, err := config.Check("rundle/internal/dense", set, files, nil)
 	if err != nil {
 		log.Fatal(err)
 	}

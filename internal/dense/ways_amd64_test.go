@@ -31,6 +31,7 @@ func TestBlocks(t *testing.T) {
 		set(t, &tiling.depth, 13)
 		set(t, &tiling.width, 2*tiling.vectors*tiling.lanes)
 		set(t, &tiling.height, 11)
+		set(t, &tiling.dotHeight, 0)
 	}
 	for _, kernels := range []kernelSet{avx2Kernels, avx512Kernels} {
 		if kernels.available() {
@@ -38,6 +39,22 @@ func TestBlocks(t *testing.T) {
 				use(t, kernels)
 				both(t, everySize[float64], everySize[complex128])
 			})
+		}
+	}
+}
+
+// TestTurnedA: rows of a transposed A that lie a power of two apart are copied.
+func TestTurnedA(t *testing.T) {
+	for _, tiling := range allTilings() {
+		set(t, &tiling.turnedStride, 0)
+	}
+	for _, kernels := range []kernelSet{avx2Kernels, avx512Kernels} {
+		if kernels.available() {
+			use(t, kernels)
+			for seed := range uint64(8) { // the strides are random, 512 one time in four
+				checkGemm[float64](t, Trans, Op(seed%4), 512, 66, 35, 1, float64(seed%2), seed)
+				checkGemm[complex128](t, ConjTrans, Op(seed%4), 256, 66, 35, 1i, 0, seed)
+			}
 		}
 	}
 }
@@ -118,7 +135,7 @@ func TestSplit(t *testing.T) {
 	for _, g := range allTilings() {
 		for m := 1; m <= 300; m++ {
 			var p tileCall
-			g.split(&p, m)
+			p.split(m, g.rows)
 			assert.Equal(t, m, p.blocks*p.rows+p.rest*(p.rows-1))
 			assert.True(t, p.rows >= 1 && p.rows <= g.rows && p.blocks >= 1 && p.rest >= 0 && (p.rest == 0 || p.rows > 1), "%d: %+v", m, p)
 			w, wide, count := g.cut(m)
@@ -143,6 +160,65 @@ func TestTilesAtNaN(t *testing.T) {
 				for j := range n {
 					assert.Equal(t, i == n/2, math.IsNaN(c[i*n+j]), "n=%d C[%d,%d]", n, i, j)
 				}
+			}
+		}
+	}
+}
+
+// BenchmarkWays measures what the numbers of a tiling were set by.
+func BenchmarkWays(b *testing.B) {
+	saved, rows, bytes := real512, inPlaceRows, inPlaceBytes
+	defer func() { real512, inPlaceRows, inPlaceBytes = saved, rows, bytes }()
+	product := func(name string, opA, opB Op, m, n, k int) {
+		b.Run(fmt.Sprintf("%s/ops=%v%v/m=%d/n=%d/k=%d", name, opA, opB, m, n, k), func(b *testing.B) {
+			benchmarkProduct[float64](b, opA, opB, m, n, k)
+		})
+	}
+	if !haveAVX512 {
+		b.Skip("the benchmark is written for AVX-512")
+	}
+	for _, depth := range []int{128, 192, 256, 384, 512} {
+		real512.depth = depth
+		product(fmt.Sprintf("depth=%d", depth), NoTrans, NoTrans, 600, 600, 600)
+	}
+	real512 = saved
+	for _, height := range []int{64, 128, 256} {
+		real512.height = height
+		product(fmt.Sprintf("height=%d", height), NoTrans, NoTrans, 600, 600, 600)
+	}
+	real512 = saved
+	for _, width := range []int{240, 504, 1008} {
+		real512.width = width
+		product(fmt.Sprintf("width=%d", width), NoTrans, NoTrans, 600, 600, 600)
+	}
+	real512 = saved
+	for _, n := range []int{64, 96, 128, 200} {
+		for _, inPlaceBytes = range []int{0, 1 << 30} {
+			product(fmt.Sprintf("inPlaceBytes=%d", inPlaceBytes), NoTrans, NoTrans, n, n, n)
+		}
+	}
+	inPlaceBytes = bytes
+	for _, m := range []int{8, 16, 32, 48, 64} {
+		for _, inPlaceRows = range []int{0, 1 << 30} {
+			product(fmt.Sprintf("inPlaceRows=%d", inPlaceRows), NoTrans, NoTrans, m, 500, 500)
+		}
+	}
+	inPlaceRows = rows
+	for _, k := range []int{4, 8, 16, 32, 64} {
+		for _, m := range []int{4, 8, 16, 32} {
+			for _, n := range []int{8, 32} {
+				for _, real512.dotHeight = range []int{0, 1 << 30} {
+					real512.dotWeight = 0
+					product(fmt.Sprintf("dotHeight=%d", real512.dotHeight), NoTrans, Trans, m, n, k)
+				}
+			}
+		}
+	}
+	real512 = saved
+	for _, k := range []int{8, 16, 32, 64} {
+		for _, m := range []int{4, 16, 64} {
+			for _, real512.turnedFrom = range []int{0, 1 << 30} {
+				product(fmt.Sprintf("turnedFrom=%d", real512.turnedFrom), NoTrans, NoTrans, m, 3, k)
 			}
 		}
 	}

@@ -1,0 +1,5 @@
+//go:build long
+
+package dense
+
+const share = 1
