@@ -59,7 +59,7 @@ func TestOccupations(t *testing.T) {
 func TestOccupationsOfTurnedSites(t *testing.T) {
 	lad, err := ladder.New(3, ladder.Open, ladder.Leg("a", ladder.Spin(1)))
 	require.NoError(t, err)
-	h, err := lad.Hamiltonian(nil, ladder.Term{Formula: "-S^z[a,j] S^z[a,j+1] - 0.4*S^x[a,j]"})
+	h, err := lad.Hamiltonian(nil, ladder.Term{Formula: "-S^z[a,j] S^z[a,j+1]"}, ladder.Term{Formula: "-0.4*S^x[a,j]"})
 	require.NoError(t, err)
 	f, err := h.Frames(ladder.FrameOptions{})
 	require.NoError(t, err)
