@@ -2,9 +2,7 @@ package dense
 
 import (
 	"fmt"
-
-	"gonum.org/v1/gonum/lapack"
-	gonumlapack "gonum.org/v1/gonum/lapack/gonum"
+	"sync"
 )
 
 const eigenRoutine = "Hermitian eigenvalues"
@@ -133,17 +131,17 @@ func TridiagonalEigen(d, e []float64, values, v []float64) error {
 	if err := checkFinite(eigenRoutine, n, n, max(top, largest(1, n-1, e, n))); err != nil {
 		return err
 	}
-	copy(values, d)
-	var small [4 * 64]float64
-	scratch := small[:]
-	if 3*n > len(scratch) {
-		scratch = make([]float64, 3*n)
-	}
-	copy(scratch, e)
-	identity(n, v)
-	var reference gonumlapack.Implementation
-	if !reference.Dsteqr(lapack.EVOrig, n, values, scratch[:n-1], v, n, scratch[n:]) {
+	b := tridiagonalPool.Get().(*tridiagonalEigen)
+	defer tridiagonalPool.Put(b)
+	if !b.factor(d, e) {
 		return &NumericalError{eigenRoutine, n, n, "the iteration did not converge"}
 	}
+	b.sorted(values)
+	b.y = resize(b.y, n*n)
+	b.vectors(0, 1, n, b.y)
+	adjoint(n, n, b.y, n, v, n)
 	return nil
 }
+
+// tridiagonalPool keeps the memory of TridiagonalEigen, which is called with a matrix one larger each time.
+var tridiagonalPool = sync.Pool{New: func() any { return new(tridiagonalEigen) }}

@@ -2,10 +2,19 @@ package dense
 
 import "gonum.org/v1/gonum/blas"
 
-// matVec computes y = alpha op(A) x + beta y for the m×n matrix A; op is NoTrans or Trans. beta == 0: y is not read.
+// matVec computes y = alpha op(A) x + beta y for the m×n matrix A; op is NoTrans or Trans. beta == 0: y is not read. Where products have
+// kernels in assembly they serve, with one row or one column.
 func matVec[T Scalar](op Op, m, n int, alpha T, a []T, lda int, x []T, beta T, y []T) {
-	if m == 0 || n == 0 {
+	switch {
+	case m == 0 || n == 0:
 		Scale(beta, y)
+		return
+	case kernels == avx2Kernels || kernels == avx512Kernels:
+		if op == Trans {
+			Gemm(NoTrans, NoTrans, 1, n, m, alpha, x, m, a, lda, beta, y, n)
+		} else {
+			Gemm(NoTrans, Trans, m, 1, n, alpha, a, lda, x, n, beta, y, 1)
+		}
 		return
 	}
 	tr := blas.NoTrans

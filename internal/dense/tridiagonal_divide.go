@@ -19,6 +19,7 @@ type tridiagonalEigen struct {
 	spare   []float64 // rows on their way
 	all     []int     // 0, 1, ...
 	chosen  []int     // roots that vectors was asked for
+	y       []float64 // of TridiagonalEigen
 }
 
 // factor decomposes the matrix with diagonal d and off-diagonal e (len(d)-1 used). It reports false if a root is not found.
