@@ -152,14 +152,14 @@ func productChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T]
 
 // givenChain copies the start state, if it fits.
 func givenChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
+	theirs := p.opt.Start.Frames()
+	if theirs.Group != p.strings.Group || len(theirs.Sites) != len(p.strings.Axes) {
+		return nil, fmt.Errorf("dmrg: the start state has %d sites and charges %v, the Hamiltonian %d and %v", len(theirs.Sites), theirs.Group, len(p.strings.Axes), p.strings.Group)
+	}
 	c, err := mps.ChainOf[T](p.opt.Start)
 	if err != nil {
-		return nil, fmt.Errorf("dmrg: the start state does not fit: %w", err)
+		return nil, errors.New("dmrg: the start state is complex, this Hamiltonian real; start from a state of a real one, or ask for complex arithmetic (Options.Complex)")
 	}
-	if c.Group != p.strings.Group || c.Len() != len(p.strings.Axes) {
-		return nil, fmt.Errorf("dmrg: the start state has %d sites and charges %v, the Hamiltonian %d and %v", c.Len(), c.Group, len(p.strings.Axes), p.strings.Group)
-	}
-	theirs := p.opt.Start.Frames()
 	for i, a := range p.strings.Axes {
 		if !c.Sites[i].Axes[1].Equal(a) || theirs.Sites[i].Rotation != p.frames.Sites[i].Rotation {
 			return nil, fmt.Errorf("dmrg: site %d of the start state has other local states than the Hamiltonian's; start from a state of a Hamiltonian with the same charges", i)

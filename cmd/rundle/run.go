@@ -17,7 +17,7 @@ import (
 // grammar is the command line.
 type grammar struct {
 	JSON    bool `name:"json" help:"Print one JSON document on standard output."`
-	Threads int  `name:"threads" placeholder:"N" help:"Number of threads; default: all processors."`
+	Threads *int `name:"threads" placeholder:"N" help:"Number of threads; default: all processors."`
 
 	Check   checkCommand   `cmd:"" help:"Explain a model: unit cell, terms, charges, arithmetic, cost."`
 	Solve   solveCommand   `cmd:"" help:"Find the ground state of a model, with observations and error bars, in a run folder."`
@@ -83,13 +83,17 @@ func (c *console) dispatch(args []string) (int, error) {
 	if err != nil {
 		return 0, usageOf(err, args)
 	}
-	if g.Threads < 0 || g.Threads > 4096 {
-		return 0, &usageError{fmt.Sprintf("--threads %d: expected 1 to 4096", g.Threads), ""}
+	threads := 0
+	if g.Threads != nil {
+		threads = *g.Threads
 	}
-	if g.Threads > 0 {
-		runtime.GOMAXPROCS(g.Threads)
+	if g.Threads != nil && (threads < 1 || threads > 4096) {
+		return 0, &usageError{fmt.Sprintf("--threads %d: expected 1 to 4096", threads), ""}
 	}
-	c.json, c.threads = g.JSON, g.Threads
+	if threads > 0 {
+		runtime.GOMAXPROCS(threads)
+	}
+	c.json, c.threads = g.JSON, threads
 	return parsed.Selected().Target.Addr().Interface().(runner).run(c)
 }
 
