@@ -26,7 +26,6 @@ type node[T dense.Scalar] struct {
 	op       int32
 	children []*node[T]
 	ends     []end // strings that end here
-	env      *block.Tensor[T]
 }
 
 // end adds weight times the value of a string to a result.
