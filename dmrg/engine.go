@@ -32,6 +32,7 @@ type engine[T dense.Scalar] struct {
 	sweeps   int
 	flops    float64 // of environments and projected Hamiltonians, in real operations
 	residual float64 // of the last eigenvector
+	gain     float64 // of the last eigenvector against its start
 	growth   float64 // those of the environments of the last left-going half sweep
 }
 
@@ -52,6 +53,7 @@ type outcome struct {
 	total     float64 // sum over the bonds of the left-going half
 	largest   int
 	residual  float64 // largest of the left-going half
+	gain      float64 // of energy by all updates of the left-going half
 	change    float64 // largest norm by which an update changed its normalized two-site tensor, in the whole sweep
 }
 
@@ -181,6 +183,7 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) (float64, e
 	out.total += discarded
 	out.largest = max(out.largest, e.psi.Bond(i).Dim())
 	out.residual = max(out.residual, e.residual)
+	out.gain += e.gain
 	if e.onBond != nil {
 		e.onBond(Position{Sweep: e.sweeps, Bond: i, Bonds: e.psi.Len() - 1, Energy: energy})
 	}
@@ -243,14 +246,18 @@ func distance[T dense.Scalar](x, y *block.Tensor[T]) float64 {
 	return x.Norm()
 }
 
-// singleVectors bounds the Krylov space of a ladder of one site, whose whole problem is the sector of that site.
-const singleVectors = 256
+// A ladder of one site is solved at once: singleVectors bounds the Krylov space of a whole site, and singleNoise lets all states of the sector in. It must not
+// be one, or the noise could cancel a sector of one state.
+const (
+	singleVectors = 256
+	singleNoise   = 0.5
+)
 
 // single is the sweep of a ladder of one site.
 func (e *engine[T]) single(s setting) (outcome, error) {
 	theta := e.psi.Sites[0].Clone()
 	h := e.plan.Project(0, 1, e.left[0], e.right[0], theta.Structure)
-	e.shake(theta, 1)
+	e.shake(theta, singleNoise)
 	s.vectors = singleVectors
 	energy, err := e.lowest(h, theta, s)
 	if err != nil {
@@ -278,7 +285,7 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 	if math.IsNaN(r.Value) || math.IsInf(r.Value, 0) {
 		return 0, errors.New("the energy is not finite; look for couplings whose products overflow")
 	}
-	e.residual = r.Residual
+	e.residual, e.gain = r.Residual, r.Start-r.Value
 	return r.Value, nil
 }
 

@@ -46,7 +46,7 @@ const (
 type Result struct {
 	State            *mps.State
 	Energy           float64            // <H> of State; NaN where the context ended the search
-	EnergyLimit      float64            // extrapolated to zero discarded weight; Energy where nothing tells
+	EnergyLimit      float64            // extrapolated to no truncation; Energy where nothing tells
 	EnergyError      float64            // bounds |EnergyLimit - exact|; +Inf before two sweeps have settled a bond dimension
 	Variance         float64            // <(H - E)^2> of State; NaN where it would have cost more than a fair part of the search
 	VarianceRounding float64            // rounding error of Variance

@@ -120,7 +120,7 @@ func (s *search[T]) settledTwice() bool {
 		return false
 	}
 	a, b := &s.stages[n-2], &s.stages[n-1]
-	return math.Abs(a.energy()-b.energy()) <= math.Max(s.opt.Precision, 20*a.discarded*s.scale)
+	return math.Abs(a.energy()-b.energy()) <= max(s.opt.Precision, 3*a.gain, s.rounding(b))
 }
 
 // stage settles one bond dimension: sweeps with decreasing mixing, then clean sweeps.
@@ -196,10 +196,13 @@ func (s *search[T]) report(bond int) error {
 	return nil
 }
 
-// enough ends a stage when further sweeps would gain less than the precision, or much less than the truncation costs.
+// enough ends a stage when further sweeps would gain less than the precision or rounding, or much less than the truncation costs.
 func (s *search[T]) enough(st *settledStage) bool {
-	d := st.drift()
-	return (d <= 0.1*s.opt.Precision || d <= 0.05*s.scale*st.discarded) && s.stateSettled(st)
+	return st.drift() <= max(0.1*s.opt.Precision, 0.05*st.gain, s.rounding(st)) && s.stateSettled(st)
+}
+
+func (s *search[T]) rounding(st *settledStage) float64 {
+	return roundingOf(st.energy(), s.scale, s.engine.psi.Len())
 }
 
 // whole reports whether the last clean sweep truncated no more than the precision allows at every bond.
@@ -235,7 +238,8 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	}
 	if n := len(s.stages); n > 0 && set.mixing == 0 {
 		st := &s.stages[n-1]
-		st.energies, st.discarded, st.largest, st.change = append(st.energies, out.energy), out.total, out.largest, out.change
+		st.energies = append(st.energies, out.energy)
+		st.discarded, st.largest, st.residual, st.gain, st.change = out.total, out.largest, out.residual, out.gain, out.change
 	}
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Mixing: set.mixing, Energy: out.energy, Discarded: out.discarded,
 		Residual: out.residual, LargestBond: out.largest, Seconds: time.Since(begin).Seconds()}

@@ -24,8 +24,8 @@ const (
 // the values of the free charges.
 //
 // Each total looked at gets a scout, a short search. Up to a dozen totals are all looked at. Of more, a walk starts at the total whose product
-// state has the lowest diagonal energy and steps to lower neighbours, at a distance that is halved as often as none is lower, down to the
-// two nearest in each direction: for energies convex in the charges, which thermodynamic stability asks of a bulk, up to an alternation of even
+// state has the lowest diagonal energy and steps to lower neighbours, at a distance that is halved as often as none is lower, down to one and
+// two steps of every charge: for energies convex in the charges, which thermodynamic stability asks of a bulk, up to an alternation of even
 // and odd values, that is the global minimum. At last the scouts of the lowest are sent on, at growing bond dimensions, until their error
 // bars separate or nothing is left to gain.
 //
@@ -43,7 +43,7 @@ func pickTotal[T dense.Scalar](p *problem, op *mpo.Operator[T]) (block.Charge, e
 	case !all:
 		return block.Charge{}, fmt.Errorf("dmrg: the sector leaves more than %d values of the conserved charges open; name some of %v", totalLimit, p.freeNames())
 	}
-	c := &choice[T]{p: p, op: op, scouts: make(map[block.Charge]*scout[T]), totals: totals}
+	c := &choice[T]{p: p, op: op, scouts: make(map[block.Charge]*scout[T]), totals: totals, spacing: spacings(totals)}
 	best, err := c.lowest()
 	if errors.Is(err, errTime) {
 		err = nil
@@ -75,11 +75,12 @@ func (p *problem) totalOfStart() (block.Charge, error) {
 
 // choice looks for the total of lowest energy.
 type choice[T dense.Scalar] struct {
-	p      *problem
-	op     *mpo.Operator[T]
-	totals []block.Charge // those that most basis states have first
-	scouts map[block.Charge]*scout[T]
-	best   block.Charge // of those looked at
+	p       *problem
+	op      *mpo.Operator[T]
+	totals  []block.Charge // those that most basis states have first
+	spacing [block.MaxCharges]int64
+	scouts  map[block.Charge]*scout[T]
+	best    block.Charge // of those looked at
 }
 
 // scout is a short search in one sector.
@@ -207,47 +208,79 @@ func (c *choice[T]) span() int64 {
 	return widest
 }
 
-// around returns for every direction (the signs of the steps of the charges) the total whose distance is nearest to reach, at reach 1 the two nearest
-// totals: the closest first.
+// around returns the totals to compare with: for every direction (the signs of the steps of the charges) the one whose distance is nearest to
+// reach; at reach 1 all within two steps of each charge. The closest come first.
 func (c *choice[T]) around(at block.Charge, reach int64) []block.Charge {
-	type spot struct {
-		q           block.Charge
-		miss, apart int64
-	}
-	byDirection := make(map[block.Charge][]spot)
+	var all []spot
+	byDirection := make(map[block.Charge]spot)
 	for _, q := range c.totals {
-		if q == at {
-			continue
+		s := c.spot(at, q, reach)
+		switch {
+		case q == at:
+		case reach <= 1 && s.steps <= pairSteps:
+			all = append(all, s)
+		case reach > 1:
+			if old, ok := byDirection[s.direction]; !ok || s.compare(old) < 0 {
+				byDirection[s.direction] = s
+			}
 		}
-		var direction block.Charge
-		s := spot{q: q}
-		for k := range c.p.strings.Group.Len() {
-			step := int64(q[k]) - int64(at[k])
-			direction[k] = int32(cmp.Compare(step, 0))
-			s.miss = max(s.miss, step, -step)
-			s.apart += step * step
-		}
-		s.miss = max(s.miss-reach, reach-s.miss)
-		byDirection[direction] = append(byDirection[direction], s)
 	}
-	order := func(a, b spot) int {
-		return cmp.Or(cmp.Compare(a.miss, b.miss), cmp.Compare(a.apart, b.apart), a.q.Compare(b.q))
+	for _, s := range byDirection {
+		all = append(all, s)
 	}
-	var out []spot
-	for _, list := range byDirection {
-		slices.SortFunc(list, order)
-		n := 1
-		if reach == 1 {
-			n = 2
-		}
-		out = append(out, list[:min(n, len(list))]...)
-	}
-	slices.SortFunc(out, order)
-	ring := make([]block.Charge, len(out))
-	for i, s := range out {
+	slices.SortFunc(all, spot.compare)
+	ring := make([]block.Charge, len(all))
+	for i, s := range all {
 		ring[i] = s.q
 	}
 	return ring
+}
+
+// pairSteps is how far the last look around goes: pairs of particles move by two.
+const pairSteps = 2
+
+// spot is a total seen from another.
+type spot struct {
+	q, direction block.Charge
+	miss         int64 // of the largest difference of a charge against the wanted one
+	apart        int64 // squared distance
+	steps        int64 // largest number of steps of a charge
+}
+
+func (c *choice[T]) spot(at, q block.Charge, reach int64) spot {
+	s := spot{q: q}
+	var far int64
+	for k := range c.p.strings.Group.Len() {
+		d := int64(q[k]) - int64(at[k])
+		s.direction[k] = int32(cmp.Compare(d, 0))
+		s.apart += d * d
+		d = max(d, -d)
+		far, s.steps = max(far, d), max(s.steps, d/c.spacing[k])
+	}
+	s.miss = max(far-reach, reach-far)
+	return s
+}
+
+func (s spot) compare(o spot) int {
+	return cmp.Or(cmp.Compare(s.miss, o.miss), cmp.Compare(s.apart, o.apart), s.q.Compare(o.q))
+}
+
+// spacings returns the smallest difference of two values of each charge among the totals, 1 where there is one value.
+func spacings(totals []block.Charge) (least [block.MaxCharges]int64) {
+	for k := range least {
+		values := make([]int32, len(totals))
+		for i, q := range totals {
+			values[i] = q[k]
+		}
+		slices.Sort(values)
+		for i := 1; i < len(values); i++ {
+			if d := int64(values[i]) - int64(values[i-1]); d > 0 && (least[k] == 0 || d < least[k]) {
+				least[k] = d
+			}
+		}
+		least[k] = max(1, least[k])
+	}
+	return least
 }
 
 // separate sends the scouts of the totals on until one is the lowest beyond error bars, or all that may be the lowest are known to the wanted

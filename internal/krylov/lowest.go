@@ -45,6 +45,7 @@ func (r Reason) String() string {
 // Result is what Lowest reports; the vector itself replaces the start vector.
 type Result struct {
 	Value        float64 // <x|H|x>
+	Start        float64 // the same of the start vector, normalized
 	Residual     float64 // norm of H x - value x, outside the span of against
 	Applications int     // calls of apply
 	Converged    bool    // Stopped is WithinTolerance or Invariant
@@ -155,6 +156,9 @@ func (r *run[T]) expand(x []T) bool {
 			return true
 		}
 		w.alpha[j], w.beta[j] = alpha, beta
+		if r.result.Applications == 1 {
+			r.result.Start = alpha
+		}
 		left := 0.0
 		if j > 0 {
 			left = w.beta[j-1]

@@ -94,7 +94,12 @@ func testAgainstDense[T dense.Scalar](t *testing.T) {
 		p := newProblem[T](t, rng, uniform(rng, n))
 		x := make([]T, n)
 		dense.Random(rng, x)
+		y := make([]T, n)
+		p.apply(y, x)
+		p.applied--
+		start := dense.Real(dense.Dot(x, y)) / (dense.Norm(x) * dense.Norm(x))
 		res := Lowest(p.apply, x, nil, Options{MaxVectors: 80, Tolerance: 1e-11}, &w)
+		assert.InDelta(t, start, res.Start, 1e-13, "n=%d", n)
 		assert.True(t, res.Converged, "n=%d %+v", n, res)
 		assert.InDelta(t, p.values[0], res.Value, 1e-13, "n=%d", n)
 		assert.InDelta(t, 1, dense.Norm(x), 1e-14, "n=%d", n)

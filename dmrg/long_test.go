@@ -1,0 +1,26 @@
+//go:build long
+
+package dmrg
+
+import (
+	"context"
+	"testing"
+
+	"github.com/stretchr/testify/require"
+
+	"rundle/mpo/ladder"
+)
+
+func TestErrorBarsAtMoreBonds(t *testing.T) {
+	testErrorBars(t, 2, 4, 5, 6, 8, 10, 14, 17, 20, 25, 35, 40, 60)
+}
+
+// TestTooManyTotals needs a quarter of a million totals.
+func TestTooManyTotals(t *testing.T) {
+	species := []ladder.Site{ladder.Fermion(), ladder.Fermion(), ladder.Fermion(), ladder.Fermion()}
+	h := hamiltonian(t, 23, ladder.Open, species, "-c^+[a,j+1] c[a,j] + h.c.", "-c^+[b,j+1] c[b,j] + h.c.", "-c^+[c,j+1] c[c,j] + h.c.",
+		"-c^+[d,j+1] c[d,j] + h.c.", "n[a,j] n[b,j] n[c,j] n[d,j]")
+	_, err := Ground(context.Background(), h, nil, Options{})
+	require.ErrorContains(t, err, "name some of")
+	require.ErrorContains(t, err, "N_a")
+}
