@@ -62,6 +62,37 @@ func benchmarkProduct[T Scalar](b *testing.B, opA, opB Op, m, n, k int) {
 	reportFlops(b, flopFactor[T]()*2*float64(m)*float64(n)*float64(k))
 }
 
+func BenchmarkVector(b *testing.B) {
+	b.Run("type=real", benchmarkVector[float64])
+	b.Run("type=complex", benchmarkVector[complex128])
+}
+
+func benchmarkVector[T Scalar](b *testing.B) {
+	alpha := FromFloat[T](0.999)
+	if IsComplex[T]() {
+		alpha = FromComplex[T](complex(0.6, 0.8))
+	}
+	for _, n := range []int{1, 8, 64, 512, 4096} {
+		x, y := random[T](n), make([]T, n)
+		for _, row := range []struct {
+			name string
+			call func()
+		}{
+			{"dot", func() { Dot(x, y) }},
+			{"axpy", func() { Axpy(alpha, x, y) }},
+			{"scale", func() { Scale(alpha, y) }},
+			{"norm", func() { Norm(x) }},
+			{"largest", func() { largest(1, n, x, n) }},
+		} {
+			b.Run(fmt.Sprintf("n=%d/%s", n, row.name), func(b *testing.B) {
+				for b.Loop() {
+					row.call()
+				}
+			})
+		}
+	}
+}
+
 func BenchmarkSVD(b *testing.B) {
 	b.Run("type=real", benchmarkSVD[float64])
 	b.Run("type=complex", benchmarkSVD[complex128])

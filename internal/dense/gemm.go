@@ -70,7 +70,7 @@ func Gemm[T Scalar](opA, opB Op, m, n, k int, alpha T, a []T, lda int, b []T, ld
 		scaleRows(m, n, beta, c, ldc)
 		return
 	}
-	if !haveTiles || kernels == netlibKernels || kernels == goKernels {
+	if !useTiles() {
 		otherGemm(opA, opB, m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
 		return
 	}

@@ -78,3 +78,30 @@ func staysInside[T Scalar](t *testing.T) {
 		}
 	}
 }
+
+// TestVectorsStayInside does so for the kernels on vectors.
+func TestVectorsStayInside(t *testing.T) {
+	eachKernels(t, func(t *testing.T) { both(t, vectorsStayInside[float64], vectorsStayInside[complex128]) })
+}
+
+func vectorsStayInside[T Scalar](t *testing.T) {
+	defer debug.SetPanicOnFault(debug.SetPanicOnFault(true))
+	place := fenced[T](t)
+	alpha := FromFloat[T](0.5)
+	if IsComplex[T]() {
+		alpha = FromComplex[T](complex(0.5, 0.5))
+	}
+	for n := 1; n < 70; n++ {
+		for _, before := range []bool{true, false} {
+			x, y := place(random[T](n), before), place(random[T](n), before)
+			require.NotPanics(t, func() {
+				Dot(x, y)
+				Axpy(alpha, x, y)
+				Axpy(2, x, y)
+				Scale(alpha, x)
+				Scale(2, x)
+				largest(1, n, x, n)
+			}, "n=%d", n)
+		}
+	}
+}

@@ -80,4 +80,7 @@ func UseKernels(name string) error {
 	return err
 }
 
+// useTiles tells whether the assembly kernels are in use.
+func useTiles() bool { return haveTiles && (kernels == avx512Kernels || kernels == avx2Kernels) }
+
 func useNetlib() bool { return haveNetlib && kernels == netlibKernels }

@@ -25,6 +25,14 @@ func Dot[T Scalar](x, y []T) T {
 	if len(x) == 0 {
 		return out
 	}
+	if useTiles() {
+		if unsafe.Sizeof(out) == 8 {
+			*(*float64)(unsafe.Pointer(&out)) = dotRealTiles(floats(x), floats(y))
+		} else {
+			*(*complex128)(unsafe.Pointer(&out)) = dotComplexTiles(floats(x), floats(y))
+		}
+		return out
+	}
 	switch x := any(x).(type) {
 	case []float64:
 		*any(&out).(*float64) = ref.Ddot(len(x), x, 1, any(y).([]float64), 1)
@@ -40,6 +48,10 @@ func Axpy[T Scalar](alpha T, x, y []T) {
 	if len(x) == 0 {
 		return
 	}
+	if useTiles() {
+		axpyTiles(wide(alpha), floats(x), floats(y))
+		return
+	}
 	switch x := any(x).(type) {
 	case []float64:
 		ref.Daxpy(len(x), any(alpha).(float64), x, 1, any(y).([]float64), 1)
@@ -53,7 +65,10 @@ func Scale[T Scalar](alpha T, x []T) {
 	switch {
 	case alpha == 0:
 		clear(x)
-	case alpha != 1:
+	case alpha == 1:
+	case useTiles():
+		scaleTiles(wide(alpha), floats(x))
+	default:
 		for i := range x {
 			x[i] *= alpha
 		}
@@ -67,7 +82,8 @@ func Norm[T Scalar](x []T) float64 {
 	}
 	// The plain sum is exact enough unless it has left the range where squares are normal numbers.
 	const small, large = 1e-280, 1e280
-	if s := Real(Dot(x, x)); s > small && s < large {
+	parts := floats(x)
+	if s := Dot(parts, parts); s > small && s < large {
 		return math.Sqrt(s)
 	}
 	switch x := any(x).(type) {
@@ -95,20 +111,28 @@ func Conjugate[T Scalar](dst, src []T) {
 
 // floats views numbers as real ones, complex ones as pairs.
 func floats[T Scalar](x []T) []float64 {
-	switch x := any(x).(type) {
-	case []float64:
-		return x
-	case []complex128:
-		return unsafe.Slice((*float64)(unsafe.Pointer(unsafe.SliceData(x))), 2*len(x))
+	var one T
+	return unsafe.Slice((*float64)(unsafe.Pointer(unsafe.SliceData(x))), len(x)*int(unsafe.Sizeof(one))/8)
+}
+
+// wide is ToComplex without the way over an interface.
+func wide[T Scalar](x T) complex128 {
+	if unsafe.Sizeof(x) == 8 {
+		return complex(*(*float64)(unsafe.Pointer(&x)), 0)
 	}
-	return nil
+	return *(*complex128)(unsafe.Pointer(&x))
 }
 
 // largest returns max |x| over the real and imaginary parts of an m×n matrix; NaN if any entry is NaN.
 func largest[T Scalar](m, n int, a []T, lda int) float64 {
 	top := 0.0
 	for i := range m {
-		top = larger(top, floats(a[i*lda:i*lda+n]))
+		row := floats(a[i*lda : i*lda+n])
+		if useTiles() {
+			top = max(top, largestTiles(row))
+		} else {
+			top = larger(top, row)
+		}
 	}
 	return top
 }

@@ -9,7 +9,9 @@ import (
 	"github.com/stretchr/testify/assert"
 )
 
-func TestVectors(t *testing.T) { both(t, testVectors[float64], testVectors[complex128]) }
+func TestVectors(t *testing.T) {
+	eachKernels(t, func(t *testing.T) { both(t, testVectors[float64], testVectors[complex128]) })
+}
 
 func testVectors[T Scalar](t *testing.T) {
 	for n := range 70 {

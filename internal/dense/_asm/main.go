@@ -49,6 +49,12 @@ func main() {
 			g.dots(avx2, true, 2, columns)
 		}
 	})
+	vectors := declarations("../vector_amd64.go")
+	write("../vector_avx512_amd64.s", vectors, func(g *generator) { g.vectors(avx512) })
+	write("../vector_avx2_amd64.s", vectors, func(g *generator) {
+		g.tailTable()
+		g.vectors(avx2)
+	})
 	write("../tile_avx2_amd64.s", tiles, func(g *generator) {
 		g.tailTable()
 		for nv := 1; nv <= 3; nv++ {

@@ -346,7 +346,7 @@ func (t *tile) loadC(v int, dst, temp reg.VecPhysical) {
 	}
 }
 
-// storeC writes vector v of a row of C. Masked stores of AVX2 are slow on some processors: a cut vector is written in pieces.
+// storeC writes vector v of a row of C.
 func (t *tile) storeC(v int, x reg.VecPhysical) {
 	to := Mem{Base: t.c, Disp: v * t.bytes}
 	switch {
@@ -357,17 +357,7 @@ func (t *tile) storeC(v int, x reg.VecPhysical) {
 	case t.complex:
 		t.VMOVUPD(x.AsX(), to)
 	default:
-		one, end := t.label("one"), t.label("end")
-		t.CMPQ(t.field("tail"), Imm(2))
-		t.JLT(LabelRef(one))
-		t.VMOVUPD(x.AsX(), to)
-		t.JEQ(LabelRef(end))
-		t.VEXTRACTF128(Imm(1), x, x.AsX())
-		t.VMOVSD(x.AsX(), to.Offset(16))
-		t.JMP(LabelRef(end))
-		t.Label(one)
-		t.VMOVSD(x.AsX(), to)
-		t.Label(end)
+		t.storeCut(x, to, t.field("tail"))
 	}
 }
 
