@@ -6,7 +6,7 @@ func bidiagonalPanel(n int) int {
 	if n < 384 {
 		return 8
 	}
-	return 24
+	return 12
 }
 
 // bidiagonalize reduces the m×n matrix a, m >= n, no padding, to a real upper bidiagonal B = Q^H A P with diagonal d (n) and
@@ -75,7 +75,7 @@ func (b *bidiagonalPanelState[T]) column(k, done int) float64 {
 
 // sweepBytes is the size of the piece of the matrix that sweep reads twice: it should stay in the cache meanwhile. BenchmarkSVD sets it
 // anew.
-const sweepBytes = 400 << 10
+const sweepBytes = 640 << 10
 
 // sweep makes y^H, and row k right of the diagonal up to date as the column u to reflect, and x = A u. A is read once: as soon as some
 // columns of A have given their part of y^H, that part of u is known and they serve for x (Howell, Demmel, Fulton, Hammarling,

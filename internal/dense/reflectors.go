@@ -12,13 +12,10 @@ type reflectors[T Scalar] struct {
 
 // blockWidth is the number of reflections that are applied at once; BenchmarkSVD and BenchmarkQR set it anew.
 func blockWidth(count int) int {
-	switch {
-	case count <= 32:
+	if count <= 256 {
 		return min(count, 16)
-	case count <= 128:
-		return 32
 	}
-	return 48
+	return 32
 }
 
 // reset makes room for so many reflections.

@@ -4,7 +4,7 @@ package dense
 // strips in which the upper half of the matrix is read and updated: low enough that a strip stays in the cache between its two uses.
 // BenchmarkEigen sets them anew.
 const (
-	tridiagonalPanel = 16
+	tridiagonalPanel = 12
 	stripRows        = 32
 )
 
