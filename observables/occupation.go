@@ -42,9 +42,11 @@ func Occupations(ctx context.Context, s *mps.State) ([][]float64, error) {
 // occupations goes through the sites with the orthogonality centre; states count in the order of the axes.
 func occupations[T dense.Scalar](ctx context.Context, chain *mps.Chain[T]) ([][]float64, error) {
 	pool := task.New(runtime.GOMAXPROCS(0))
-	c := chain.Clone()
-	c.Canonicalize(0, pool)
+	c := centred(chain, pool)
 	center := c.Sites[0]
+	if !(center.Norm() > 0) {
+		return nil, errZero
+	}
 	out := make([][]float64, c.Len())
 	for site := range out {
 		if err := ctx.Err(); err != nil {
@@ -52,8 +54,7 @@ func occupations[T dense.Scalar](ctx context.Context, chain *mps.Chain[T]) ([][]
 		}
 		out[site] = weights(center)
 		if site+1 < c.Len() {
-			_, r := block.QR(center, 2)
-			center = block.Contract(r, c.Sites[site+1], []int{1}, []int{0})
+			center = moved(center, c.Sites[site+1], pool)
 		}
 	}
 	return out, nil

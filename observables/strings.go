@@ -11,14 +11,16 @@ import (
 
 // forest holds operator strings by common beginnings: a node is an operator on a site with all that stands to its left.
 type forest[T dense.Scalar] struct {
-	ops    []*block.Tensor[T] // by operator number; nil: identity
+	ops    []*block.Tensor[T] // by number of the operator, axes (out In, in Out); nil: identity
 	byKey  map[opKey]int32
+	axes   map[string]int32
 	starts [][]*node[T] // per site: nodes of strings that begin there
 }
 
+// opKey knows an operator by its axis and the bytes of its matrix.
 type opKey struct {
-	axis   string // the physical axis
-	matrix string // the bytes of the matrix
+	axis   int32
+	matrix string
 }
 
 // node is one step of a string on one site.
@@ -35,11 +37,12 @@ type end struct {
 }
 
 func newForest[T dense.Scalar](sites int) *forest[T] {
-	return &forest[T]{byKey: make(map[opKey]int32), starts: make([][]*node[T], sites)}
+	return &forest[T]{byKey: make(map[opKey]int32), axes: make(map[string]int32), starts: make([][]*node[T], sites)}
 }
 
 // add enters all strings of s with the factor weight for a result. Strings without factors are returned as a constant.
 func (f *forest[T]) add(s *ladder.Strings, result int, weight complex128) (constant complex128) {
+	numbers := make(map[*ladder.OpTable][]int32) // of the operators of s; 0: not asked yet, else one more than the number
 	for i, c := range s.Coef {
 		factors := s.Factors[s.Start[i]:s.Start[i+1]]
 		if len(factors) == 0 {
@@ -62,11 +65,18 @@ func (f *forest[T]) add(s *ladder.Strings, result int, weight complex128) (const
 				}
 				k++
 			}
-			number := f.number(table.Matrices[op], s.Axes[site], s.Group, table.Charges[op])
+			known := numbers[table]
+			if known == nil {
+				known = make([]int32, len(table.Matrices))
+				numbers[table] = known
+			}
+			if known[op] == 0 {
+				known[op] = 1 + f.number(table.Matrices[op], s.Axes[site], s.Group, table.Charges[op])
+			}
 			if at == nil {
-				at = child(&f.starts[site], number)
+				at = child(&f.starts[site], known[op]-1)
 			} else {
-				at = child(&at.children, number)
+				at = child(&at.children, known[op]-1)
 			}
 		}
 		at.ends = append(at.ends, end{result, c * weight})
@@ -87,7 +97,13 @@ func child[T dense.Scalar](list *[]*node[T], op int32) *node[T] {
 
 // number interns a local matrix as a tensor with axes (out In, in Out).
 func (f *forest[T]) number(m []complex128, axis block.Axis, g block.Group, charge block.Charge) int32 {
-	key := opKey{fmt.Sprint(axis.Sectors), matrixKey(m)}
+	text := fmt.Sprint(axis.Sectors)
+	place, ok := f.axes[text]
+	if !ok {
+		place = int32(len(f.axes))
+		f.axes[text] = place
+	}
+	key := opKey{place, matrixKey(m)}
 	if n, ok := f.byKey[key]; ok {
 		return n
 	}
