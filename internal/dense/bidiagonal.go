@@ -141,13 +141,6 @@ func readColumn[T Scalar](j int, a []T, lda int, x []T) {
 	}
 }
 
-func identity(n int, a []float64) {
-	clear(a)
-	for i := range n {
-		a[i*n+i] = 1
-	}
-}
-
 // writeColumn copies x into column j of a.
 func writeColumn[T Scalar](j int, a []T, lda int, x []T) {
 	for i := range x {

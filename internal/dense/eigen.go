@@ -66,14 +66,15 @@ func (f *hermitian[T]) factor(n int, a []T, lda int, w *Workspace[T]) error {
 	}
 	defer w.release(w.mark())
 	s := w.elems.take(n * n)
-	fillHermitian(n, a, lda, s)
-	top := largest(n, n, s, n)
+	top := fillStrips(n, a, lda, s)
 	if err := checkFinite(eigenRoutine, n, n, top); err != nil {
 		return err
 	}
 	scale := safeScale(top)
 	if scale != 1 {
-		copyMatrix(n, n, scale, s, n, s, n)
+		for i := range n {
+			Scale(FromFloat[T](scale), s[i*n+stripStart(i):(i+1)*n])
+		}
 	}
 	d, e := w.reals.take(n), w.reals.take(n)
 	tridiagonalize(n, s, d, e, &f.q, w)
@@ -104,17 +105,20 @@ func (f *hermitian[T]) vectors(first, step, keep int, v []T, ldv int, w *Workspa
 	adjoint(keep, n, vh, n, v, ldv)
 }
 
-// fillHermitian fills s (n×n) with the Hermitian matrix whose upper triangle a holds.
-func fillHermitian[T Scalar](n int, a []T, lda int, s []T) {
+// fillStrips copies what tridiagonalize reads of the Hermitian matrix whose upper triangle a holds, and returns the largest entry.
+func fillStrips[T Scalar](n int, a []T, lda int, s []T) (top float64) {
 	for i := range n {
-		s[i*n+i] = FromFloat[T](Real(a[i*lda+i]))
-		row := s[i*n+i+1 : i*n+n]
-		Conjugate(row, a[i*lda+i+1:i*lda+n])
-		for j, x := range row {
-			s[(i+1+j)*n+i] = x
+		row := s[i*n+i : i*n+n]
+		copy(row, a[i*lda+i:i*lda+n])
+		row[0] = FromFloat[T](Real(row[0]))
+		if x := largest(1, n-i, row, n-i); !(x <= top) && top == top {
+			top = x
 		}
-		copy(row, a[i*lda+i+1:i*lda+n])
+		for j := i + 1; j < n && stripStart(j) <= i; j++ {
+			s[j*n+i] = Conj(row[j-i])
+		}
 	}
+	return top
 }
 
 // TridiagonalEigen computes the eigenvalues, ascending, of the real symmetric tridiagonal matrix with diagonal d (n) and off-diagonal

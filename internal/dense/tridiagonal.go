@@ -8,6 +8,9 @@ const (
 	stripRows        = 32
 )
 
+// stripStart returns the first row of the strip that holds row i; also the first column of which that row's entries are read.
+func stripStart(i int) int { return i - i%stripRows }
+
 // tridiagonal is what the reduction of a Hermitian matrix carries from column to column. In a panel the matrix is A - V W^H - W V^H
 // with V the reflections done so far. The rows of vw are v_0^H, w_0^H, v_1^H, ..., those of wv w_0^H, v_0^H, ....
 type tridiagonal[T Scalar] struct {
@@ -20,7 +23,7 @@ type tridiagonal[T Scalar] struct {
 }
 
 // tridiagonalize reduces the n×n Hermitian matrix a, no padding, to a real tridiagonal Q^H A Q with diagonal d (n) and off-diagonal e
-// (n-1 used). a is destroyed; of entries below the diagonal only those within stripRows of it are read.
+// (n-1 used). a is destroyed; of entries below the diagonal only those from the start of the strip on are read.
 func tridiagonalize[T Scalar](n int, a []T, d, e []float64, q *reflectors[T], w *Workspace[T]) {
 	defer w.release(w.mark())
 	q.reset(max(0, n-1), n, 1)
@@ -44,7 +47,7 @@ func tridiagonalize[T Scalar](n int, a []T, d, e []float64, q *reflectors[T], w 
 func (x *tridiagonal[T]) update(from, count int) {
 	n := x.n
 	for i := from; i < n; {
-		end := min(n, i-i%stripRows+stripRows)
+		end := min(n, stripStart(i)+stripRows)
 		Gemm(ConjTrans, NoTrans, end-i, n-i, count, FromFloat[T](-1), x.vw[i:], n, x.wv[i:], n, 1, x.a[i*n+i:], n)
 		i = end
 	}
@@ -92,7 +95,7 @@ func (x *tridiagonal[T]) multiply(from int, v, vh, out []T) {
 	clear(out)
 	upper := x.y[:n-from]
 	for i := from; i < n; {
-		end := min(n, i-i%stripRows+stripRows)
+		end := min(n, stripStart(i)+stripRows)
 		matVec(NoTrans, end-i, n-i, 1, x.a[i*n+i:], n, v[i-from:], 0, upper[i-from:end-from])
 		if end < n {
 			matVec(Trans, end-i, n-end, 1, x.a[i*n+end:], n, vh[i-from:end-from], 1, out[end-from:])
