@@ -2,7 +2,7 @@
 //
 //	go run -tags netlib ./internal/bench/kernels
 //
-// Each row is one product. The contestants take turns in slices of about two milliseconds; a figure is the median over the rounds, in
+// Each row is one product or decomposition, in Gflop/s. The contestants take turns in slices of about two milliseconds; a figure is the median over the rounds, in
 // CPU time of the one thread that runs, so that other work on the machine costs precision but not fairness. A ratio above one means that
 // Rundle's kernels are the faster ones. At the end of each group stand the smallest ratio and the geometric mean.
 //

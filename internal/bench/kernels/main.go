@@ -2,8 +2,10 @@ package main
 
 import (
 	"encoding/json"
+	"errors"
 	"flag"
 	"fmt"
+	"io"
 	"os"
 	"regexp"
 	"strings"
@@ -12,19 +14,26 @@ import (
 )
 
 func main() {
-	if err := run(); err != nil {
+	err := run(os.Args[1:], os.Stdout)
+	if errors.Is(err, flag.ErrHelp) {
+		return
+	}
+	if err != nil {
 		fmt.Fprintln(os.Stderr, "kernels:", err)
 		os.Exit(1)
 	}
 }
 
-func run() error {
+func run(args []string, w io.Writer) error {
+	flag := flag.NewFlagSet("kernels", flag.ContinueOnError)
 	asJSON := flag.Bool("json", false, "print one JSON object a line instead of the table")
 	quick := flag.Bool("quick", false, "fewer sizes and rounds: under 40 seconds")
 	only := flag.String("only", "", "measure only the rows whose name matches this regular `expression`")
 	sets := flag.String("kernels", strings.Join(own(), ","), "Rundle's kernels to measure, by comma")
 	core := flag.String("core", "", "the `processor` whose kernels OpenBLAS uses, such as Haswell for AVX2 (default: the best that runs)")
-	flag.Parse()
+	if err := flag.Parse(args); err != nil {
+		return err
+	}
 	if flag.NArg() > 0 {
 		return fmt.Errorf("unexpected argument %q; see -help", flag.Arg(0))
 	}
@@ -42,15 +51,15 @@ func run() error {
 		}
 	}
 	var rows []row
-	out := newTable(os.Stdout, names)
-	for _, c := range cases(*quick) {
+	out := newTable(w, names)
+	for _, c := range tasks(*quick) {
 		if !match.MatchString(c.name()) {
 			continue
 		}
 		for _, r := range c.measure(names, *quick) {
 			rows = append(rows, r)
 			if *asJSON {
-				if err := json.NewEncoder(os.Stdout).Encode(r); err != nil {
+				if err := json.NewEncoder(w).Encode(r); err != nil {
 					return err
 				}
 			}

@@ -1,11 +1,8 @@
 package main
 
 import (
-	"math"
 	"runtime"
 	"slices"
-
-	"golang.org/x/sys/unix"
 
 	"rundle/internal/dense"
 )
@@ -27,17 +24,17 @@ type row struct {
 const slice = 2e-3
 
 // measure lets the named kernels and the reference take turns.
-func (p product) measure(names []string, quick bool) []row {
+func (t task) measure(names []string, quick bool) []row {
 	runtime.LockOSThread()
 	defer runtime.UnlockOSThread()
 	rounds := 15
 	switch {
 	case quick:
-		rounds = 5
-	case p.flops() > 2e8:
+		rounds = 7
+	case t.flops > 2e8:
 		rounds = 7
 	}
-	ours, theirs := p.call()
+	ours, theirs := t.prepare()
 	contestants := make([]contestant, 0, len(names)+1)
 	for _, name := range names {
 		contestants = append(contestants, contestant{kernels: name, run: ours})
@@ -53,17 +50,14 @@ func (p product) measure(names []string, quick bool) []row {
 			contestants[i].turn()
 		}
 	}
-	reference := math.NaN()
-	if theirs != nil {
-		reference = contestants[len(names)].median()
-	}
 	out := make([]row, len(names))
 	for i, name := range names {
-		t := contestants[i].median()
-		out[i] = row{Routine: p.routine(), Op: p.ops(), M: p.m, N: p.n, K: p.k, Kernels: name, Gflops: p.flops() / t / 1e9}
+		seconds := contestants[i].median()
+		out[i] = row{Routine: t.routine, Op: t.op, M: t.m, N: t.n, K: t.k, Kernels: name, Gflops: t.flops / seconds / 1e9}
 		if theirs != nil {
-			out[i].Reference = p.flops() / reference / 1e9
-			out[i].Ratio = reference / t
+			reference := contestants[len(names)].median()
+			out[i].Reference = t.flops / reference / 1e9
+			out[i].Ratio = reference / seconds
 		}
 	}
 	return out
@@ -108,13 +102,4 @@ func (c *contestant) turn() {
 func (c *contestant) median() float64 {
 	t := slices.Sorted(slices.Values(c.times))
 	return t[len(t)/2]
-}
-
-// threadSeconds is the CPU time of the calling thread.
-func threadSeconds() float64 {
-	var t unix.Timespec
-	if err := unix.ClockGettime(unix.CLOCK_THREAD_CPUTIME_ID, &t); err != nil {
-		panic(err)
-	}
-	return float64(t.Sec) + 1e-9*float64(t.Nsec)
 }

@@ -2,7 +2,13 @@
 
 package main
 
-// #cgo LDFLAGS: -lopenblas -llapacke
+/*
+#cgo LDFLAGS: -lopenblas -llapacke
+int LAPACKE_dgesdd_work(int, char, int, int, double *, int, double *, double *, int, double *, int, double *, int, int *);
+int LAPACKE_zgesdd_work(int, char, int, int, void *, int, double *, void *, int, void *, int, void *, int, double *, int *);
+int LAPACKE_dsyevd_work(int, char, char, int, double *, int, double *, double *, int, int *, int);
+int LAPACKE_zheevd_work(int, char, char, int, void *, int, double *, void *, int, double *, int, int *, int);
+*/
 import "C"
 
 import (
@@ -11,6 +17,7 @@ import (
 	"os"
 	"slices"
 	"syscall"
+	"unsafe"
 
 	"golang.org/x/sys/cpu"
 	"gonum.org/v1/gonum/blas"
@@ -20,18 +27,95 @@ import (
 	"rundle/internal/dense/openblas"
 )
 
+const haveReference = true
+
 var library netlib.Implementation
 
-func transpose(op dense.Op) blas.Transpose {
-	return map[dense.Op]blas.Transpose{dense.NoTrans: blas.NoTrans, dense.Trans: blas.Trans, dense.ConjTrans: blas.ConjTrans}[op]
+var transposes = [...]blas.Transpose{dense.NoTrans: blas.NoTrans, dense.Trans: blas.Trans, dense.ConjTrans: blas.ConjTrans}
+
+func referenceProduct[T dense.Scalar](opA, opB dense.Op, m, n, k int, a []T, lda int, b []T, ldb int, c []T) {
+	switch a := any(a).(type) {
+	case []float64:
+		library.Dgemm(transposes[opA], transposes[opB], m, n, k, 1, a, lda, any(b).([]float64), ldb, 0, any(c).([]float64), n)
+	case []complex128:
+		library.Zgemm(transposes[opA], transposes[opB], m, n, k, 1, a, lda, any(b).([]complex128), ldb, 0, any(c).([]complex128), n)
+	}
 }
 
-func referenceReal(opA, opB dense.Op, m, n, k int, alpha float64, a []float64, lda int, b []float64, ldb int, beta float64, c []float64, ldc int) {
-	library.Dgemm(transpose(opA), transpose(opB), m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
+// columnMajor is LAPACK's own order: the bindings of gonum have matrices by rows, and LAPACKE turns those at a cost. It also copies them
+// to memory that ends where they end, and OpenBLAS 0.3.21 reads on (zgemv), now and then into a page that is not there.
+const columnMajor = 102
+
+func must(info C.int) {
+	if info != 0 {
+		panic(fmt.Sprintf("the reference failed: %d", info))
+	}
 }
 
-func referenceComplex(opA, opB dense.Op, m, n, k int, alpha complex128, a []complex128, lda int, b []complex128, ldb int, beta complex128, c []complex128, ldc int) {
-	library.Zgemm(transpose(opA), transpose(opB), m, n, k, alpha, a, lda, b, ldb, beta, c, ldc)
+func reals(x []float64) *C.double             { return (*C.double)(unsafe.Pointer(&x[0])) }
+func complexes(x []complex128) unsafe.Pointer { return unsafe.Pointer(&x[0]) }
+func integers(x []int32) *C.int               { return (*C.int)(unsafe.Pointer(&x[0])) }
+
+// beyond is how many numbers of slack follow a matrix.
+const beyond = 64
+
+// referenceSVD returns a call of gesdd on a copy of a, which it destroys, with all vectors and memory at hand.
+func referenceSVD[T dense.Scalar](n int, a []T) func() {
+	size := C.int(n)
+	s, iwork := make([]float64, n), make([]int32, 8*n)
+	switch a := any(a).(type) {
+	case []float64:
+		matrix := func() []float64 { return make([]float64, n*n+beyond) }
+		input, u, vt, work := matrix(), matrix(), matrix(), make([]float64, 1)
+		call := func(lwork C.int) {
+			must(C.LAPACKE_dgesdd_work(columnMajor, 'S', size, size, reals(input), size, reals(s), reals(u), size, reals(vt), size,
+				reals(work), lwork, integers(iwork)))
+		}
+		call(-1)
+		work = make([]float64, int(work[0]))
+		return func() {
+			copy(input, a)
+			call(C.int(len(work)))
+		}
+	case []complex128:
+		matrix := func() []complex128 { return make([]complex128, n*n+beyond) }
+		input, u, vt, work := matrix(), matrix(), matrix(), make([]complex128, 1)
+		rwork := make([]float64, n*(7*n+7))
+		call := func(lwork C.int) {
+			must(C.LAPACKE_zgesdd_work(columnMajor, 'S', size, size, complexes(input), size, reals(s), complexes(u), size, complexes(vt), size,
+				complexes(work), lwork, reals(rwork), integers(iwork)))
+		}
+		call(-1)
+		work = make([]complex128, int(real(work[0])))
+		return func() {
+			copy(input, a)
+			call(C.int(len(work)))
+		}
+	}
+	return nil
+}
+
+// referenceEigen returns a call of syevd or heevd on a copy of a.
+func referenceEigen[T dense.Scalar](n int, a []T) func() {
+	size := C.int(n)
+	w, iwork := make([]float64, n), make([]int32, 3+5*n)
+	switch a := any(a).(type) {
+	case []float64:
+		v, work := make([]float64, n*n+beyond), make([]float64, 1+6*n+2*n*n+32*n)
+		return func() {
+			copy(v, a)
+			must(C.LAPACKE_dsyevd_work(columnMajor, 'V', 'U', size, reals(v), size, reals(w), reals(work), C.int(len(work)), integers(iwork),
+				C.int(len(iwork))))
+		}
+	case []complex128:
+		v, work, rwork := make([]complex128, n*n+beyond), make([]complex128, 2*n+n*n+32*n), make([]float64, 1+5*n+2*n*n)
+		return func() {
+			copy(v, a)
+			must(C.LAPACKE_zheevd_work(columnMajor, 'V', 'U', size, complexes(v), size, reals(w), complexes(work), C.int(len(work)), reals(rwork),
+				C.int(len(rwork)), integers(iwork), C.int(len(iwork))))
+		}
+	}
+	return nil
 }
 
 // coreVariable tells OpenBLAS which processor to serve. It is read before main is.

@@ -23,8 +23,8 @@ type summary struct {
 
 func newTable(w io.Writer, names []string) *table { return &table{w: w, names: names} }
 
-func (t *table) add(p product, rows []row) {
-	if g := fmt.Sprintf("%s %s, %s", p.routine(), p.ops(), p.group); g != t.group {
+func (t *table) add(x task, rows []row) {
+	if g := x.title() + ", " + string(x.group); g != t.group {
 		t.end()
 		t.group = g
 		t.sum = make([]summary, len(t.names))
@@ -34,8 +34,17 @@ func (t *table) add(p product, rows []row) {
 		}
 		fmt.Fprintln(t.w)
 	}
-	fmt.Fprintf(t.w, "%-30s %10.1f", fmt.Sprintf("  %d,%d,%d", p.m, p.n, p.k), rows[0].Reference)
+	shape := fmt.Sprintf("  %d,%d,%d", x.m, x.n, x.k)
+	if rows[0].Reference > 0 {
+		fmt.Fprintf(t.w, "%-30s %10.1f", shape, rows[0].Reference)
+	} else {
+		fmt.Fprintf(t.w, "%-30s %10s", shape, "-")
+	}
 	for i, r := range rows {
+		if r.Ratio == 0 {
+			fmt.Fprintf(t.w, " %8.1f %6s", r.Gflops, "-")
+			continue
+		}
 		fmt.Fprintf(t.w, " %8.1f %6.2f", r.Gflops, r.Ratio)
 		s := &t.sum[i]
 		if s.members == 0 || r.Ratio < s.worst {
@@ -49,7 +58,11 @@ func (t *table) add(p product, rows []row) {
 
 // end prints the summary of the group in hand.
 func (t *table) end() {
-	if t.group == "" {
+	switch {
+	case t.group == "":
+		return
+	case t.sum[0].members == 0: // without a reference
+		fmt.Fprintln(t.w)
 		return
 	}
 	fmt.Fprintf(t.w, "%-30s %10s", "  worst, geometric mean", "")
