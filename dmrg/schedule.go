@@ -279,6 +279,6 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 
 // tolerance is the residual to which the eigenvector of a bond is solved: energies err as its square, observables linearly.
 func (s *search[T]) tolerance() float64 {
-	t := 0.1 * min(math.Sqrt(s.opt.Precision*s.scale), s.opt.ObservablePrecision*s.scale)
+	t := 0.03 * min(math.Sqrt(s.opt.Precision*s.scale), s.opt.ObservablePrecision*s.scale)
 	return max(t, 1e-14*s.scale)
 }
