@@ -53,7 +53,7 @@ const (
 	crude        = 50    // in units of the gain times the discarded weight: where much is discarded, costs do not add up
 	mostCrude    = 3     // in units of the gain
 	roundingUnit = 2e-15 // relative error of an energy, and error for each coupling that a bond sees
-	narrowGap    = 0.1  // couplings between the lowest levels of a bond: an eigenvector with a residual r errs by r²/gap in energy
+	narrowGap    = 0.1   // couplings between the lowest levels of a bond: an eigenvector with a residual r errs by r²/gap in energy
 )
 
 // estimateError judges the stages that have settled. scale is the size of the Hamiltonian's terms, bonds the number of bonds.
