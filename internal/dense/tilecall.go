@@ -12,6 +12,8 @@ package dense
 //	}
 //
 // A kernel that is x vectors wide stops after tail elements of the last vector: nothing beyond is read or written.
+//
+//lint:file-ignore U1000 the fields are for assembly
 type tileCall struct {
 	a, b, c      *float64
 	k            int // at least 1

@@ -191,12 +191,16 @@ func (t *tiling) panels(p *tileCall, n int, b, c unsafe.Pointer, packed bool) {
 		p.b, p.c = (*float64)(b), (*float64)(c)
 		if packed {
 			p.rowB = bytes
-			b = unsafe.Add(b, bytes*p.k)
-		} else {
-			b = unsafe.Add(b, bytes)
+		}
+		t.runTile(p, w)
+		if i == count-1 {
+			return // a pointer must not leave its matrix, not even unused
 		}
 		c = unsafe.Add(c, bytes)
-		t.runTile(p, w)
+		if packed {
+			bytes *= p.k
+		}
+		b = unsafe.Add(b, bytes)
 	}
 }
 
@@ -218,6 +222,9 @@ func (t *tiling) pack(to, b unsafe.Pointer, k, n, rowB, colB int, transposed boo
 			packRows512((*float64)(to), (*float64)(b), k, rowB, w, tail)
 		default:
 			packRows256((*float64)(to), (*float64)(b), k, rowB, w, tail)
+		}
+		if i == count-1 {
+			return
 		}
 		to = unsafe.Add(to, bytes*k)
 		b = unsafe.Add(b, columns*colB)

@@ -11,7 +11,6 @@ type table struct {
 	w     io.Writer
 	names []string
 	group string
-	lines int
 	sum   []summary
 }
 
