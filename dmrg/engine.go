@@ -318,7 +318,7 @@ func (e *engine[T]) shake(theta *block.Tensor[T], size float64) {
 
 // split cuts theta by singular values; the centre goes to the right or the left tensor, normalized.
 func (e *engine[T]) split(theta *block.Tensor[T], right bool, s setting) (a, b *block.Tensor[T], discarded float64, err error) {
-	u, spec, v, err := block.SVD(theta, 2, block.Cut{Bond: s.bond, Weight: s.weight, MinBond: min(s.bond, leastBond)}, e.pool)
+	u, spec, v, err := block.SVD(theta, 2, block.Cut{Bond: s.bond, Weight: s.weight}, e.pool)
 	if err != nil {
 		return nil, nil, 0, err
 	}

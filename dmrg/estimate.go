@@ -11,7 +11,6 @@ type settledStage struct {
 	residual  float64 // of the last clean sweep, see outcome
 	gain      float64 // the same
 	change    float64 // the same
-	verified  float64 // energy that the last sweep found by solving the bonds further, see verify
 }
 
 func (s *settledStage) energy() float64 { return s.energies[len(s.energies)-1] }
@@ -62,8 +61,7 @@ const (
 // that is what the truncations of the half sweep cost, measured and not inferred from a discarded weight, and the energy lies above
 // the exact one by about as much. The slope comes from the line through this stage and the last one before it that is apart.
 //
-// The error adds up a part of the extrapolated distance, what sweeping on would gain, what the eigensolver left (found by solving further
-// at the end, or guessed from the residual), and rounding.
+// The error adds up a part of the extrapolated distance, what sweeping on would gain, what the eigensolver left, and rounding.
 func estimateError(stages []settledStage, scale float64, bonds int) estimate {
 	for len(stages) > 0 && !stages[len(stages)-1].settling() {
 		stages = stages[:len(stages)-1]
@@ -83,7 +81,7 @@ func estimateError(stages []settledStage, scale float64, bonds int) estimate {
 		}
 	}
 	rounding := roundingOf(last.energy(), scale, bonds)
-	err += min(mostCrude, crude*last.discarded)*gain + last.drift() + last.verified + last.residual*(last.residual/(narrowGap*scale)) + rounding
+	err += min(mostCrude, crude*last.discarded)*gain + last.drift() + last.residual*(last.residual/(narrowGap*scale)) + rounding
 	return estimate{limit: last.energy() - distance, err: err, rounding: rounding}
 }
 
