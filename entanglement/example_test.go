@@ -26,7 +26,7 @@ func Example() {
 			fmt.Printf("xi %.4f, Sz %v\n", level.Xi, level.Charge["Sz"])
 		}
 	}
-	// Output:
+	// Unordered output:
 	// after site 0 (rung edge: false): entropy 0.6931
 	// after site 1 (rung edge: true): entropy 0.0000
 	// after site 2 (rung edge: false): entropy 0.6931
