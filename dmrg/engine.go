@@ -27,6 +27,7 @@ type engine[T dense.Scalar] struct {
 	rng      *rand.Rand
 	work     mpo.Workspace[T]
 	kry      krylov.Workspace[T]
+	unit     float64      // of energy, near the largest coupling where that is far from one
 	halt     func() error // why the search has to stop now; nil: go on
 	onBond   func(Position)
 	sweeps   int
@@ -61,7 +62,7 @@ type outcome struct {
 // that.
 func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settled, halt func() error) *engine[T] {
 	n := psi.Len()
-	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt,
+	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt, unit: opt.unit,
 		rng:  rand.New(rand.NewPCG(opt.Seed, noiseStream)),
 		left: make([]*block.Tensor[T], n), right: make([]*block.Tensor[T], n)}
 	psi.Canonicalize(0, e.pool)

@@ -82,7 +82,7 @@ func densities[T dense.Scalar](theta *block.Tensor[T], left bool) []side[T] {
 // perturb adds what the Hamiltonian reaches, scaled to the weight mixing, and appends the charges that are new.
 func (e *engine[T]) perturb(sides []side[T], h *mpo.Projected[T], theta *block.Tensor[T], left bool, mixing float64) []side[T] {
 	p := h.PlanPerturbation(left)
-	reached := p.Densities(h, theta.Data, &e.work, e.pool)
+	reached := p.Densities(h, theta.Data, e.unit, &e.work, e.pool)
 	var total float64
 	for i, b := range p.Blocks {
 		for k := range b.Rows {

@@ -40,6 +40,7 @@ type settled struct {
 	Options
 	weight float64 // weight that a truncation may discard for the wanted precision
 	strict bool    // the user named a precision of observables
+	unit   float64 // of energy: a power of two near the largest coupling if squares of that are no good numbers, else 1
 }
 
 // Defaults and bounds of Options.
@@ -51,6 +52,7 @@ const (
 	observablesPerPower = 1000  // energies err by this part less than the square of observables, by default
 	largestWeight       = 1e-6  // discarded at a bond, whatever the precision
 	leastWeight         = 1e-26 // beyond double precision
+	plain               = 1e-60 // couplings from here to its inverse can be squared
 )
 
 // check refuses what no search could mean.
@@ -98,5 +100,9 @@ func (o Options) settle(scale float64) settled {
 	// Observables err as the square root of the discarded weight, energies as the weight itself.
 	s.weight = 1e-2 * min(s.Precision/scale, s.ObservablePrecision*s.ObservablePrecision)
 	s.weight = max(leastWeight, min(largestWeight, s.weight))
+	s.unit = 1
+	if scale > 1/plain || scale < plain {
+		s.unit = math.Ldexp(1, math.Ilogb(scale))
+	}
 	return s
 }

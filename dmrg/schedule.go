@@ -198,7 +198,7 @@ func (s *search[T]) report(bond int) error {
 
 // enough ends a stage when further sweeps would gain less than the precision or rounding, or much less than the truncation costs.
 func (s *search[T]) enough(st *settledStage) bool {
-	return st.drift() <= max(0.1*s.opt.Precision, 0.003*st.gain, s.rounding(st)) && s.stateSettled(st)
+	return st.drift() <= max(0.1*s.opt.Precision, 0.02*st.gain, s.rounding(st)) && s.stateSettled(st)
 }
 
 func (s *search[T]) rounding(st *settledStage) float64 {

@@ -173,9 +173,9 @@ func testPerturbation[T dense.Scalar](t *testing.T, o *Operator[T], p *Projected
 		if !side {
 			z, rows, inner = reachedRight(o, p, theta, right), theta.Axes[3], theta.Axes[2]
 		}
-		seen := 0.0
+		seen, unit := 0.0, 4.0
 		plan := p.PlanPerturbation(side)
-		for i, rho := range plan.Densities(p, theta.Data, ws, task.New(2)) {
+		for i, rho := range plan.Densities(p, theta.Data, unit, ws, task.New(2)) {
 			b := plan.Blocks[i]
 			// The states of each row, counted along the whole axes.
 			type pair struct{ bond, site int }
@@ -199,10 +199,10 @@ func testPerturbation[T dense.Scalar](t *testing.T, o *Operator[T], p *Projected
 			for x, s := range states {
 				for y, v := range states {
 					want := braket(z[v.bond*inner.Dim()+v.site], z[s.bond*inner.Dim()+s.site])
-					got := dense.ToComplex(rho[x*b.Rows+y])
+					got := 16 * dense.ToComplex(rho[x*b.Rows+y])
 					require.InDelta(t, 0, abs(got-want), 1e-11*(1+abs(want)), "left %v, charge %v, element %d, %d", side, b.Charge, x, y)
 				}
-				seen += dense.Real(rho[x*b.Rows+x])
+				seen += 16 * dense.Real(rho[x*b.Rows+x])
 			}
 		}
 		all := 0.0

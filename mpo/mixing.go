@@ -36,8 +36,8 @@ type Segment struct{ Outer, Site, Start, Dim int }
 type span struct{ from, to int }
 
 // Densities computes the matrix of each block for the slab theta: element (x, y) is the sum of m_x conj(m_y) over the open indices of what was
-// reached, m. Workers hold one m at a time.
-func (p *Perturbation[T]) Densities(h *Projected[T], theta []T, ws *Workspace[T], pool *task.Pool) [][]T {
+// reached, m, in units of the energy unit: couplings whose squares are no numbers need one of their size. Workers hold one m at a time.
+func (p *Perturbation[T]) Densities(h *Projected[T], theta []T, unit float64, ws *Workspace[T], pool *task.Pool) [][]T {
 	ws.x = grow(ws.x, p.net.xSize)
 	a, b := h.left.Data, theta
 	if !p.left {
@@ -55,6 +55,9 @@ func (p *Perturbation[T]) Densities(h *Projected[T], theta []T, ws *Workspace[T]
 		clear(m)
 		for q := p.spans[i].from; q < p.spans[i].to; q++ {
 			move(&p.net.moves[q], ws.x, m)
+		}
+		if unit != 1 {
+			dense.Scale(dense.FromFloat[T](1/unit), m)
 		}
 		rho[i] = make([]T, k.Rows*k.Rows)
 		one, zero := dense.FromFloat[T](1), dense.FromFloat[T](0)
