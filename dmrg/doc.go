@@ -33,7 +33,7 @@
 // exact one by about as much: between one and two gains, where no more than a hundredth is discarded. EnergyLimit
 // is taken from the line through energies and gains at two bond dimensions, EnergyError from a fixed part of the distance, what
 // further sweeps would gain, what the eigensolver left, and rounding. It is calibrated on models with known energies (TestErrorBars).
-// It knows nothing of states that the search never came near.
+// It knows nothing of states that the search never came near, and little at bond dimensions below the square of the local one.
 //
 // Precision is absolute, in the units of the Hamiltonian; a precision below the rounding error of the energy ends in the verdict Suspect.
 //

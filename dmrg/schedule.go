@@ -63,7 +63,7 @@ func (s *search[T]) run() (Verdict, string, error) {
 		if verdict != unfinished {
 			return verdict, reason, nil
 		}
-		if est.rounding > s.opt.Precision && est.err < 4*est.rounding && s.settledTwice() {
+		if est.rounding > s.opt.Precision && est.above < 4*est.rounding && s.settledTwice() {
 			return Suspect, fmt.Sprintf("the wanted precision %.1e is below the rounding error %.1e of an energy of this size; ask for less", s.opt.Precision, est.rounding), nil
 		}
 		last := &s.stages[len(s.stages)-1]
@@ -216,11 +216,11 @@ func (s *search[T]) stateSettled(st *settledStage) bool {
 	return st.change <= max(0.3*s.opt.ObservablePrecision, 2*math.Sqrt(st.discarded), stateRounding)
 }
 
-// precise reports whether the last stage meets both wishes: the energy's by its estimate, the observables' (where the user named
-// it) by the change of the last sweep and the root of the discarded weight.
+// precise reports whether the last stage meets both wishes: the energy's by its estimate, for the limit and the state itself, the observables' (where
+// the user named it) by the change of the last sweep and the root of the discarded weight.
 func (s *search[T]) precise(est estimate) bool {
 	last := &s.stages[len(s.stages)-1]
-	if est.err > s.opt.Precision || !s.stateSettled(last) {
+	if est.above > s.opt.Precision || !s.stateSettled(last) {
 		return false
 	}
 	return !s.opt.strict || math.Sqrt(last.discarded) <= s.opt.ObservablePrecision
