@@ -160,7 +160,7 @@ func diagonalized(t testing.TB, sites []exact.Site, numbers []exact.Number, valu
 }
 
 // TestErrorBars stops searches for known energies at several bond dimensions: the bar must hold, and not be blown up beyond use.
-func TestErrorBars(t *testing.T) { testErrorBars(t, 6, 13, 26) }
+func TestErrorBars(t *testing.T) { testErrorBars(t, 8, 20) }
 
 func testErrorBars(t *testing.T, bonds ...int) {
 	var ratios []float64

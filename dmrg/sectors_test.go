@@ -57,7 +57,7 @@ func TestFreeCharges(t *testing.T) {
 
 // TestPairsAlternate: attractive bosons bound in pairs make the energy alternate with the number: single steps see hills only.
 func TestPairsAlternate(t *testing.T) {
-	h := hamiltonian(t, 7, ladder.Open, []ladder.Site{ladder.Fermion(), ladder.Fermion()},
+	h := hamiltonian(t, 6, ladder.Open, []ladder.Site{ladder.Fermion(), ladder.Fermion()},
 		"-0.5 c^+[a,j+1] c[a,j] + h.c.", "-0.5 c^+[b,j+1] c[b,j] + h.c.", "-4 n[a,j] n[b,j]", "0.6 n[a,j] n[a,j+1]", "1.9 n[a,j]", "1.9 n[b,j]")
 	r := ground1(t, h, ladder.Sector{}, Options{Precision: 1e-4})
 	n := r.Sector["N_a"]
