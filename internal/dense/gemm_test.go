@@ -223,7 +223,7 @@ func starters(work func()) []string {
 					seen = append(seen, name)
 				}
 			}
-			runtime.Gosched()
+			time.Sleep(50 * time.Microsecond)
 		}
 		found <- seen
 	}()
