@@ -10,11 +10,11 @@
 // where there is one. A product state of low diagonal energy in the sector is the start. Each update solves the lowest
 // eigenvector of two neighbouring sites between their environments with a few Lanczos vectors and cuts it at the middle bond.
 //
-// While a bond dimension is new, the cut is made by the reduced density matrix with a small part of the states mixed in that
+// While a bond dimension is new, the cut is made by the reduced density matrix with a small part of the states added that
 // the Hamiltonian reaches from it (White 2005), charge by charge, so that terms that hop far, move pairs or need a third
 // particle do not leave the search in the product state. Then clean sweeps follow, cut by singular values. A stage (one bond
 // dimension) ends when sweeping on would gain less than the wish, or much less than the truncation costs; the next has a
-// larger bond, until the error estimate is below the wanted precision, two stages agree, or a cap is met.
+// larger bond, until the error estimate is below the wanted precision and two stages agree, or a cap is met.
 //
 // Between updates an environment stands for each site only on the side away from the centre; slabs are used again. So a search holds
 // the state and its environments once, besides the workspace of the widest bond. A cap on memory is kept by forecasting the blocks of the

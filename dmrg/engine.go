@@ -39,12 +39,12 @@ type engine[T dense.Scalar] struct {
 
 // setting is what one sweep is told.
 type setting struct {
-	bond      int     // cap on the bond dimension
-	weight    float64 // weight a truncation may discard
-	mixing    float64 // weight of the perturbation
-	noise     float64 // size of the random part of the start vectors
-	vectors   int     // Krylov vectors a bond
-	tolerance float64 // residual of the eigenvector
+	bond         int     // cap on the bond dimension
+	weight       float64 // weight a truncation may discard
+	perturbation float64 // weight of the perturbation
+	noise        float64 // size of the random part of the start vectors
+	vectors      int     // Krylov vectors a bond
+	tolerance    float64 // residual of the eigenvector
 }
 
 // outcome is what one sweep reports.
@@ -205,8 +205,8 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 	}
 	change = distance(before, theta)
 	var a, b *block.Tensor[T]
-	if s.mixing > 0 {
-		a, b, discarded, err = e.splitMixed(h, theta, right, s)
+	if s.perturbation > 0 {
+		a, b, discarded, err = e.splitPerturbed(h, theta, right, s)
 	} else {
 		a, b, discarded, err = e.split(theta, right, s)
 	}

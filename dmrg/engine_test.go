@@ -70,24 +70,24 @@ func testEnvironmentsStand[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, 
 	}
 	check()
 	e.onBond = func(Position) { check() }
-	for _, mixing := range []float64{1e-2, 0} {
-		_, err := e.sweep(setting{bond: 12, mixing: mixing, noise: mixing, vectors: 3, tolerance: 1e-6})
+	for _, perturbation := range []float64{1e-2, 0} {
+		_, err := e.sweep(setting{bond: 12, perturbation: perturbation, noise: perturbation, vectors: 3, tolerance: 1e-6})
 		require.NoError(t, err)
 	}
 	require.Positive(t, e.growth)
 	require.Greater(t, e.flops, e.growth)
 }
 
-// TestSplitMixed: the halves are an isometry and a centre of norm one, within the bond; without mixing they are those of the singular values.
-func TestSplitMixed(t *testing.T) {
-	t.Run("real", func(t *testing.T) { testSplitMixed[float64](t, heisenberg(t, 8), ladder.Sector{"Sz": 0}) })
+// TestSplitPerturbed: the halves are an isometry and a centre of norm one, within the bond; without perturbation they are those of the singular values.
+func TestSplitPerturbed(t *testing.T) {
+	t.Run("real", func(t *testing.T) { testSplitPerturbed[float64](t, heisenberg(t, 8), ladder.Sector{"Sz": 0}) })
 	t.Run("complex", func(t *testing.T) {
 		h := hamiltonian(t, 4, ladder.Open, []ladder.Site{ladder.Boson(2), ladder.Boson(2)}, fluxTerms...)
-		testSplitMixed[complex128](t, h, ladder.Sector{"N": 4})
+		testSplitPerturbed[complex128](t, h, ladder.Sector{"N": 4})
 	})
 }
 
-func testSplitMixed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector ladder.Sector) {
+func testSplitPerturbed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector ladder.Sector) {
 	e := randomEngine[T](t, h, sector, 12)
 	e.psi.MoveCenter(3, nil)
 	e.left[1] = nil
@@ -98,9 +98,9 @@ func testSplitMixed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector 
 	theta.Scale(dense.FromFloat[T](1 / theta.Norm()))
 	proj := e.plan.Project(3, 2, e.left[3], e.right[4], theta.Structure)
 	for _, right := range []bool{true, false} {
-		for _, mixing := range []float64{1e-14, 1e-3, 0.3} {
+		for _, perturbation := range []float64{1e-14, 1e-3, 0.3} {
 			for _, bond := range []int{1, 2, 5, 11, 1000} {
-				a, b, discarded, err := e.splitMixed(proj, theta, right, setting{bond: bond, mixing: mixing})
+				a, b, discarded, err := e.splitPerturbed(proj, theta, right, setting{bond: bond, perturbation: perturbation})
 				require.NoError(t, err)
 				require.LessOrEqual(t, a.Axes[2].Dim(), bond)
 				iso, center := a, b
@@ -111,13 +111,13 @@ func testSplitMixed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector 
 				}
 				one := block.Identity[T](theta.Group, overlap.Axes[0])
 				overlap.Axpy(dense.FromFloat[T](-1), one)
-				require.InDelta(t, 0, overlap.Norm(), 1e-12, "no isometry: right %v, mixing %v, bond %d", right, mixing, bond)
+				require.InDelta(t, 0, overlap.Norm(), 1e-12, "no isometry: right %v, perturbation %v, bond %d", right, perturbation, bond)
 				require.InDelta(t, 1, center.Norm(), 1e-12)
 				require.Positive(t, iso.Size)
 				// The product is theta projected and normalized.
 				joined := block.Contract(a, b, []int{2}, []int{0})
 				require.InDelta(t, 1-discarded, dense.Abs(block.Dot(joined, theta))*dense.Abs(block.Dot(joined, theta)), 1e-11)
-				if mixing < 1e-10 && (bond == 1 || bond == 1000) { // in between, starved charges take seats
+				if perturbation < 1e-10 && (bond == 1 || bond == 1000) { // in between, starved charges take seats
 					_, s, _, err := block.SVD(theta, 2, block.Cut{Bond: bond}, nil)
 					require.NoError(t, err)
 					require.InDelta(t, s.Discarded, discarded, 1e-9)
@@ -127,20 +127,20 @@ func testSplitMixed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector 
 	}
 }
 
-// TestMixingReachesNewCharges: from a product state the perturbation brings the charges that one application of H reaches, and
+// TestPerturbationReachesNewCharges: from a product state the perturbation brings the charges that one application of H reaches, and
 // nothing else does.
-func TestMixingReachesNewCharges(t *testing.T) {
+func TestPerturbationReachesNewCharges(t *testing.T) {
 	h := hamiltonian(t, 6, ladder.Open, one(ladder.Boson(2)), "-b^+[a,j+3]^2 b[a,j]^2 + h.c.", "0.1 n[a,j]")
 	p, err := newProblem(h, ladder.Sector{"N": 2}, Options{})
 	require.NoError(t, err)
 	psi, err := mps.Product[float64](p.strings.Group, p.strings.Axes, []int{2, 0, 0, 0, 0, 0})
 	require.NoError(t, err)
-	for _, mixing := range []float64{0, 1e-3} {
+	for _, perturbation := range []float64{0, 1e-3} {
 		e := newEngine(build(t, p), psi.Clone(), p.opt, func() error { return nil })
 		require.NoError(t, e.prepare())
-		out, err := e.sweep(setting{bond: 8, mixing: mixing, vectors: 4, tolerance: 1e-12})
+		out, err := e.sweep(setting{bond: 8, perturbation: perturbation, vectors: 4, tolerance: 1e-12})
 		require.NoError(t, err)
-		if mixing == 0 {
+		if perturbation == 0 {
 			require.InDelta(t, 0.2, out.energy, 1e-12, "the pair cannot move")
 		} else {
 			require.InDelta(t, 0.2-2, out.energy, 1e-12, "the pair hops from site 0 to 3 with amplitude 2")

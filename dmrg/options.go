@@ -20,7 +20,7 @@ type Options struct {
 	Seed                uint64         // of the small noise in the first sweeps; results are the same for the same seed
 	Charges             []string       // conserved charges to use; nil: the choice that cuts blocks most
 	Complex             bool           // complex arithmetic even where a real gauge exists
-	Opening               Opening          // how new states enter the bond; 0: DensityMatrix
+	Opening             Opening        // how new states enter the bond; 0: PerturbedDensity
 	Start               *mps.State     // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
 	OnSweep             func(Sweep)    // called after every sweep
 	OnStage             func(Stage)    // called with the state at each settled bond dimension
@@ -31,8 +31,8 @@ type Options struct {
 type Opening int
 
 const (
-	DensityMatrix Opening = iota // perturbation of the reduced density matrix (White 2005)
-	Unperturbed                    // two-site truncation alone; for measurements
+	PerturbedDensity Opening = iota // perturbation of the reduced density matrix (White 2005)
+	Unperturbed                     // two-site truncation alone; for measurements
 )
 
 // settled are the options after the defaults.
@@ -76,8 +76,8 @@ func (o Options) check() error {
 		return bad("Memory", o.Memory, "a positive number of bytes, or 0 for none")
 	case o.Threads < 0:
 		return bad("Threads", o.Threads, "a positive number, or 0 for all")
-	case o.Opening != DensityMatrix && o.Opening != Unperturbed:
-		return bad("Opening", int(o.Opening), "DensityMatrix or Unperturbed")
+	case o.Opening != PerturbedDensity && o.Opening != Unperturbed:
+		return bad("Opening", int(o.Opening), "PerturbedDensity or Unperturbed")
 	}
 	return nil
 }

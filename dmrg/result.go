@@ -4,14 +4,14 @@ import "rundle/mps"
 
 // Sweep reports one sweep: right and left again.
 type Sweep struct {
-	Number      int     // from 1
-	Bond        int     // cap on the bond dimension in this sweep
-	Mixing      float64 // weight of the perturbation, 0 in clean sweeps
-	Energy      float64 // of the last update
-	Discarded   float64 // largest discarded weight of a bond in the left-going half
-	Residual    float64 // largest norm of H psi - E psi left by a bond's eigensolver in the left-going half
-	LargestBond int
-	Seconds     float64
+	Number       int     // from 1
+	Bond         int     // cap on the bond dimension in this sweep
+	Perturbation float64 // weight of the perturbation, 0 in clean sweeps
+	Energy       float64 // of the last update
+	Discarded    float64 // largest discarded weight of a bond in the left-going half
+	Residual     float64 // largest norm of H psi - E psi left by a bond's eigensolver in the left-going half
+	LargestBond  int
+	Seconds      float64
 }
 
 // Position tells where in a sweep the engine stands.

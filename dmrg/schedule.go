@@ -12,19 +12,19 @@ import (
 
 // Figures of the automatic schedule. They set the pace, not the answer: a stage ends by the energies it reached.
 const (
-	firstBond     = 24
-	bondGrowth    = 1.6  // factor between stages
-	leastGrowth   = 8    // states more at the least
-	maxCleanStage = 12   // clean sweeps of a stage whose bond is full
-	maxCleanWhole = 60   // clean sweeps of a stage that truncates next to nothing: only sweeping gains more
-	maxStages     = 40   // of a search whose bond is not full
-	firstMixing   = 1e-3 // weight of the perturbation in the first sweep of a stage
-	checkMixing   = 1e-6 // the same, where the stage before left the bond unfilled: to see that no sector was missed
-	mixingDecay   = 0.1
-	stateRounding = 1e-12 // change of a tensor that is rounding
-	vectorsEarly  = 10
-	vectorsLate   = 5
-	vectorsWhole  = 16 // where nothing is truncated the middle bonds hold the whole problem
+	firstBond         = 24
+	stageGrowth       = 1.6  // factor between stages
+	leastGrowth       = 8    // states more at the least
+	maxCleanStage     = 12   // clean sweeps of a stage whose bond is full
+	maxCleanWhole     = 60   // clean sweeps of a stage that truncates next to nothing: only sweeping gains more
+	maxStages         = 40   // of a search whose bond is not full
+	firstPerturbation = 1e-3 // weight of the perturbation in the first sweep of a stage
+	checkPerturbation = 1e-6 // the same, where the stage before left the bond unfilled: to see that no sector was missed
+	perturbationDecay = 0.1
+	stateRounding     = 1e-12 // change of a tensor that is rounding
+	vectorsEarly      = 10
+	vectorsLate       = 5
+	vectorsWhole      = 16 // where nothing is truncated the middle bonds hold the whole problem
 )
 
 // search is one run of the engine to a verdict.
@@ -91,7 +91,7 @@ func (s *search[T]) ended(err error) (Verdict, string, error) {
 
 // grow raises the bond dimension within the caps; where none is left it says which, after a second stage.
 func (s *search[T]) grow(bond *int, est estimate) (Verdict, string) {
-	wish := max(*bond+leastGrowth, int(bondGrowth*float64(*bond)))
+	wish := max(*bond+leastGrowth, int(stageGrowth*float64(*bond)))
 	next := min(s.opt.Bond, wish)
 	able := s.affordable(*bond, next)
 	// A little more is not worth a stage, unless the cap allows no more.
@@ -113,7 +113,7 @@ func (s *search[T]) estimate() estimate {
 	return estimateError(s.stages, s.scale, s.engine.psi.Len())
 }
 
-// settledTwice asks that two stages, each with fresh mixing, agree: one stage alone may sit in a product state.
+// settledTwice asks that two stages, each with fresh perturbation, agree: one stage alone may sit in a product state.
 func (s *search[T]) settledTwice() bool {
 	n := len(s.stages)
 	if n < 2 || !s.stages[n-1].settling() {
@@ -123,9 +123,9 @@ func (s *search[T]) settledTwice() bool {
 	return math.Abs(a.energy()-b.energy()) <= max(s.opt.Precision, 3*a.gain, s.rounding(b))
 }
 
-// stage settles one bond dimension: sweeps with decreasing mixing, then clean sweeps.
+// stage settles one bond dimension: sweeps with decreasing perturbation, then clean sweeps.
 func (s *search[T]) stage(bond int) (Verdict, string, error) {
-	if v, r, err := s.mix(bond); v != unfinished || err != nil {
+	if v, r, err := s.open(bond); v != unfinished || err != nil {
 		return v, r, err
 	}
 	set := s.clean(bond)
@@ -154,28 +154,28 @@ func (s *search[T]) clean(bond int) setting {
 	return setting{bond: bond, weight: s.opt.weight, vectors: vectorsLate, tolerance: s.tolerance()}
 }
 
-// mix does the mixing sweeps of a stage.
-func (s *search[T]) mix(bond int) (Verdict, string, error) {
+// open does the perturbed sweeps of a stage.
+func (s *search[T]) open(bond int) (Verdict, string, error) {
 	if s.opt.Opening == Unperturbed || s.engine.psi.Len() == 1 {
 		return unfinished, "", nil
 	}
 	set := s.clean(bond)
 	count := 2
-	set.mixing = firstMixing
+	set.perturbation = firstPerturbation
 	first := len(s.stages) == 0
 	if first {
 		count, set.vectors = 4, vectorsEarly
 	} else if last := &s.stages[len(s.stages)-1]; last.largest < last.bond {
-		count, set.mixing = 1, checkMixing
+		count, set.perturbation = 1, checkPerturbation
 	}
 	for range count {
 		if first {
-			set.noise = 0.1 * math.Sqrt(set.mixing)
+			set.noise = 0.1 * math.Sqrt(set.perturbation)
 		}
 		if v, r, err := s.sweep(set); v != unfinished || err != nil {
 			return v, r, err
 		}
-		set.mixing *= mixingDecay
+		set.perturbation *= perturbationDecay
 	}
 	return unfinished, "", nil
 }
@@ -236,12 +236,12 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	if err != nil {
 		return unfinished, "", err
 	}
-	if n := len(s.stages); n > 0 && set.mixing == 0 {
+	if n := len(s.stages); n > 0 && set.perturbation == 0 {
 		st := &s.stages[n-1]
 		st.energies = append(st.energies, out.energy)
 		st.discarded, st.largest, st.residual, st.gain, st.change = out.total, out.largest, out.residual, out.gain, out.change
 	}
-	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Mixing: set.mixing, Energy: out.energy, Discarded: out.discarded,
+	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Perturbation: set.perturbation, Energy: out.energy, Discarded: out.discarded,
 		Residual: out.residual, LargestBond: out.largest, Seconds: time.Since(begin).Seconds()}
 	s.sweeps = append(s.sweeps, w)
 	if s.opt.OnSweep != nil {

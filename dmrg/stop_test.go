@@ -70,7 +70,7 @@ func TestHaltGivesUpTheUpdate(t *testing.T) {
 		return nil
 	}
 	e := newTestEngine(t, p)
-	set := setting{bond: 16, vectors: 8, tolerance: 1e-12, mixing: 1e-4}
+	set := setting{bond: 16, vectors: 8, tolerance: 1e-12, perturbation: 1e-4}
 	_, err = e.sweep(set)
 	require.NoError(t, err)
 	before := e.psi.Clone()
@@ -125,7 +125,7 @@ func TestHooks(t *testing.T) {
 			sweeps = append(sweeps, s)
 		},
 		OnStage: func(s Stage) {
-			require.Zero(t, sweeps[len(sweeps)-1].Mixing)
+			require.Zero(t, sweeps[len(sweeps)-1].Perturbation)
 			require.LessOrEqual(t, s.State.MaxBond(), s.Bond)
 			require.Equal(t, ladderCharges{"Sz": 0}, ladderCharges(s.State.Charges()))
 			energies = append(energies, s.Energy)
@@ -162,7 +162,7 @@ func TestCaps(t *testing.T) {
 		{"one sweep", Options{Sweeps: 1}, SweepCap, "1 sweeps done", true, 24},
 		{"five sweeps: one clean", Options{Sweeps: 5}, SweepCap, "5 sweeps done", true, 24},
 		{"six sweeps", Options{Sweeps: 6}, SweepCap, "6 sweeps done", false, 24},
-		{"in the second mixing", Options{Sweeps: 7}, SweepCap, "7 sweeps done", false, 38},
+		{"in the second perturbation", Options{Sweeps: 7}, SweepCap, "7 sweeps done", false, 38},
 		{"in the second stage", Options{Sweeps: 9}, SweepCap, "9 sweeps done", false, 38},
 		{"a nanosecond", Options{Time: 1}, TimeCap, "1ns have passed", true, 1},
 		{"a little memory", Options{Memory: 1}, MemoryCap, "bond dimension 1 fits", false, 1},

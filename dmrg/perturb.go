@@ -24,16 +24,16 @@ type side[T dense.Scalar] struct {
 	keep    int
 }
 
-// splitMixed cuts theta by the reduced density matrix of the side that is left behind, perturbed by what the Hamiltonian
-// reaches from it: rho + mixing * tr(rho) * sum_w P_w P_w^H / tr (White 2005). Charges that theta does not hold but the
+// splitPerturbed cuts theta by the reduced density matrix of the side that is left behind, perturbed by what the Hamiltonian
+// reaches from it: rho + perturbation * tr(rho) * sum_w P_w P_w^H / tr (White 2005). Charges that theta does not hold but the
 // Hamiltonian reaches get at least one state each, within a tenth of the bond, so that no sector is starved. discarded is
 // the weight of theta outside of the states kept.
-func (e *engine[T]) splitMixed(h *mpo.Projected[T], theta *block.Tensor[T], right bool, s setting) (a, b *block.Tensor[T], discarded float64, err error) {
-	sides := e.perturb(densities(theta, right), h, theta, right, s.mixing)
+func (e *engine[T]) splitPerturbed(h *mpo.Projected[T], theta *block.Tensor[T], right bool, s setting) (a, b *block.Tensor[T], discarded float64, err error) {
+	sides := e.perturb(densities(theta, right), h, theta, right, s.perturbation)
 	if err := e.diagonalize(sides); err != nil {
 		return nil, nil, 0, err
 	}
-	choose(sides, s.bond, s.mixing)
+	choose(sides, s.bond, s.perturbation)
 	iso, center := assemble(theta, sides, right)
 	kept, total := center.Norm(), theta.Norm()
 	if !(kept > 0) {
@@ -79,8 +79,8 @@ func densities[T dense.Scalar](theta *block.Tensor[T], left bool) []side[T] {
 	return sides
 }
 
-// perturb adds what the Hamiltonian reaches, scaled to the weight mixing, and appends the charges that are new.
-func (e *engine[T]) perturb(sides []side[T], h *mpo.Projected[T], theta *block.Tensor[T], left bool, mixing float64) []side[T] {
+// perturb adds what the Hamiltonian reaches, scaled to the given weight, and appends the charges that are new.
+func (e *engine[T]) perturb(sides []side[T], h *mpo.Projected[T], theta *block.Tensor[T], left bool, perturbation float64) []side[T] {
 	p := h.PlanPerturbation(left)
 	reached := p.Densities(h, theta.Data, e.unit, &e.work, e.pool)
 	var total float64
@@ -93,7 +93,7 @@ func (e *engine[T]) perturb(sides []side[T], h *mpo.Projected[T], theta *block.T
 		return sides
 	}
 	norm := theta.Norm()
-	scale := dense.FromFloat[T](mixing * norm * norm / total)
+	scale := dense.FromFloat[T](perturbation * norm * norm / total)
 	at := make(map[block.Charge]int)
 	for i := range sides {
 		at[sides[i].charge] = i
@@ -138,15 +138,15 @@ func (e *engine[T]) diagonalize(sides []side[T]) error {
 	return nil
 }
 
-// rounding of a density matrix of trace one, and the part of the mixing below which an eigenvalue is not worth a state.
+// rounding of a density matrix of trace one, and the part of the perturbation below which an eigenvalue is not worth a state.
 const (
-	densityRounding = 1e-15
-	mixingFloor     = 1e-8
+	densityRounding   = 1e-15
+	perturbationFloor = 1e-8
 )
 
 // choose marks how many of the largest eigenvalues of each charge stay, bond in all. Charges that would get none share up to a tenth of the
 // seats, at least one where there are two or more.
-func choose[T dense.Scalar](sides []side[T], bond int, mixing float64) {
+func choose[T dense.Scalar](sides []side[T], bond int, perturbation float64) {
 	type candidate struct {
 		value float64
 		side  int
@@ -160,7 +160,7 @@ func choose[T dense.Scalar](sides []side[T], bond int, mixing float64) {
 		}
 	}
 	slices.SortStableFunc(all, func(a, b candidate) int { return cmp.Compare(b.value, a.value) })
-	floor := trace * min(densityRounding, mixingFloor*mixing)
+	floor := trace * min(densityRounding, perturbationFloor*perturbation)
 	worth := 1
 	for worth < len(all) && all[worth].value > floor {
 		worth++
