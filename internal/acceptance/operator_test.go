@@ -223,21 +223,7 @@ func TestOperatorRankOfRandomLadders(t *testing.T) {
 				c := &cell{rng: rand.New(rand.NewPCG(uint64(i), uint64(b))), rungs: 5 + i%2, legs: []string{"a", "b", "d"}[:2+b%2],
 					ring: boundary != "open", tube: boundary == "tube"}
 				k.fill(c)
-				along, across := ladder.Open, ladder.Open
-				if c.ring {
-					along = ladder.Periodic
-				}
-				if c.tube {
-					across = ladder.Periodic
-				}
-				parts := []ladder.Part{ladder.Across(across)}
-				for _, l := range c.legs {
-					parts = append(parts, k.leg(l))
-				}
-				lad, err := ladder.New(c.rungs, along, parts...)
-				require.NoError(t, err)
-				h, err := lad.Hamiltonian(nil, c.formulas...)
-				require.NoError(t, err)
+				_, h := c.hamiltonian(t, k)
 				requireOperatorRank(t, h)
 			})
 		}

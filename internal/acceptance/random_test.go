@@ -302,6 +302,21 @@ func compare(t *testing.T, k kind, c *cell) bool {
 	if gap < 1e-3 {
 		return false
 	}
+	lad, h := c.hamiltonian(t, k)
+	res, err := dmrg.Ground(context.Background(), h, sector, dmrg.Options{Precision: 1e-11, ObservablePrecision: 1e-9})
+	require.NoError(t, err)
+	require.Equal(t, dmrg.Converged, res.Verdict, res.Reason)
+
+	scale := max(math.Abs(ground.Energy), c.largest)
+	require.InDelta(t, ground.Energy, res.Energy, 1e-10*scale)
+	require.LessOrEqual(t, math.Abs(res.EnergyLimit-ground.Energy), res.EnergyError+1e-13*scale)
+	compareState(t, k, lad, basis, ground.Vector, res)
+	return true
+}
+
+// hamiltonian builds the ladder and its Hamiltonian from the formulas.
+func (c *cell) hamiltonian(t *testing.T, k kind) (*ladder.Ladder, *ladder.Hamiltonian) {
+	t.Helper()
 	along, across := ladder.Open, ladder.Open
 	if c.ring {
 		along = ladder.Periodic
@@ -317,15 +332,7 @@ func compare(t *testing.T, k kind, c *cell) bool {
 	require.NoError(t, err)
 	h, err := lad.Hamiltonian(nil, c.formulas...)
 	require.NoError(t, err)
-	res, err := dmrg.Ground(context.Background(), h, sector, dmrg.Options{Precision: 1e-11, ObservablePrecision: 1e-9})
-	require.NoError(t, err)
-	require.Equal(t, dmrg.Converged, res.Verdict, res.Reason)
-
-	scale := max(math.Abs(ground.Energy), c.largest)
-	require.InDelta(t, ground.Energy, res.Energy, 1e-10*scale)
-	require.LessOrEqual(t, math.Abs(res.EnergyLimit-ground.Energy), res.EnergyError+1e-13*scale)
-	compareState(t, k, lad, basis, ground.Vector, res)
-	return true
+	return lad, h
 }
 
 const everythingElse = 1e-8
