@@ -47,6 +47,7 @@ type Result struct {
 	Value        float64 // <x|H|x>
 	Start        float64 // the same of the start vector, normalized
 	Residual     float64 // norm of H x - value x, outside the span of against
+	Gap          float64 // between the two lowest Ritz values of the last space; +Inf where it has one dimension. About the gap above x once the space has resolved it, else larger
 	Applications int     // calls of apply
 	Converged    bool    // Stopped is WithinTolerance or Invariant
 	Stopped      Reason
@@ -84,7 +85,7 @@ func Lowest[T dense.Scalar](apply func(dst, src []T), x []T, against [][]T, opt 
 	}
 	r := run[T]{apply: apply, against: against, opt: opt, w: w}
 	if reason, ok := r.start(x); !ok {
-		return Result{Value: math.NaN(), Residual: math.NaN(), Stopped: reason}
+		return Result{Value: math.NaN(), Residual: math.NaN(), Gap: math.NaN(), Stopped: reason}
 	}
 	for {
 		done := r.expand(x)
@@ -152,8 +153,7 @@ func (r *run[T]) expand(x []T) bool {
 		alpha := dense.Real(w.orthogonalize(w.vectors[:r.size], next))
 		beta := dense.Norm(next)
 		if !finite(alpha) || !finite(beta) {
-			r.result.Value, r.result.Residual, r.result.Stopped = math.NaN(), math.NaN(), NotFinite
-			return true
+			return r.fail()
 		}
 		w.alpha[j], w.beta[j] = alpha, beta
 		if r.result.Applications == 1 {
@@ -179,11 +179,14 @@ func (r *run[T]) expand(x []T) bool {
 func (r *run[T]) judge(beta float64, exhausted bool) bool {
 	w, m := r.w, r.size
 	if err := dense.TridiagonalEigen(w.alpha[:m], w.beta[:m-1], w.values[:m], w.ritz[:m*m]); err != nil {
-		r.result.Value, r.result.Residual, r.result.Stopped = math.NaN(), math.NaN(), NotFinite
-		return true
+		return r.fail()
 	}
 	r.result.Value = w.values[0]
 	r.result.Residual = beta * math.Abs(w.ritz[(m-1)*m])
+	r.result.Gap = math.Inf(1)
+	if m > 1 {
+		r.result.Gap = w.values[1] - w.values[0]
+	}
 	tolerance := r.opt.Tolerance
 	if tolerance <= 0 {
 		tolerance = defaultTolerance * max(math.Abs(w.values[0]), math.Abs(w.values[m-1]))
@@ -197,6 +200,13 @@ func (r *run[T]) judge(beta float64, exhausted bool) bool {
 		r.result.Stopped = Exhausted
 		return false
 	}
+	return true
+}
+
+// fail ends the search for numbers that are not finite.
+func (r *run[T]) fail() bool {
+	nan := math.NaN()
+	r.result.Value, r.result.Residual, r.result.Gap, r.result.Stopped = nan, nan, nan, NotFinite
 	return true
 }
 

@@ -107,6 +107,12 @@ func testAgainstDense[T dense.Scalar](t *testing.T) {
 		assert.LessOrEqual(t, res.Residual, 1e-11, "n=%d", n)
 		assert.Equal(t, p.applied, res.Applications)
 		assert.LessOrEqual(t, res.Applications, n, "n=%d: the space cannot be larger than the whole", n)
+		if n == 1 {
+			assert.True(t, math.IsInf(res.Gap, 1))
+		} else { // resolved to the square of a small overlap, never from below
+			assert.InDelta(t, p.values[1]-p.values[0], res.Gap, 1e-3, "n=%d", n)
+			assert.GreaterOrEqual(t, res.Gap, p.values[1]-p.values[0]-1e-12, "n=%d", n)
+		}
 	}
 }
 
@@ -197,7 +203,7 @@ func testInvariantSpace[T dense.Scalar](t *testing.T) {
 		x := make([]T, 9)
 		dense.Random(rng, x)
 		res := Lowest(func(dst, src []T) { clear(dst) }, x, nil, Options{}, nil)
-		assert.Equal(t, Result{Applications: 1, Converged: true, Stopped: Invariant}, res)
+		assert.Equal(t, Result{Gap: math.Inf(1), Applications: 1, Converged: true, Stopped: Invariant}, res)
 	})
 }
 
