@@ -40,6 +40,9 @@ func Ground(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, op
 		}
 		return nil
 	}
+	if p.rewritten != nil {
+		return ground(p, p.rewritten.state)
+	}
 	if p.strings.Real && !opt.Complex {
 		return ground(p, mps.NewReal)
 	}
@@ -56,6 +59,8 @@ type problem struct {
 	opt     settled
 	scale   float64 // largest coupling, 1 if there is none
 	halt    func() error
+
+	rewritten *rewritten // where the search works in other modes than the user's; h is the user's
 }
 
 func newProblem(h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*problem, error) {
@@ -71,7 +76,11 @@ func newProblem(h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*prob
 	if err != nil {
 		return nil, err
 	}
-	p := &problem{h: h, frames: frames, strings: s, target: target, starter: newStarter(s)}
+	p := &problem{h: h, frames: frames, strings: s, target: target, opt: settled{Options: opt}}
+	if err := p.rewrite(sector); err != nil {
+		return nil, err
+	}
+	p.starter = newStarter(p.strings)
 	if p.scale = p.starter.scale; p.scale == 0 {
 		p.scale = 1
 	}
@@ -108,7 +117,8 @@ func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames,
 	if failed != nil {
 		return nil, failed
 	}
-	r.State = state
+	r.State, r.LargestBond = state, state.MaxBond()
+	r.Real = !dense.IsComplex[T]()
 	return r, err
 }
 

@@ -19,7 +19,7 @@ type Options struct {
 	Threads             int            // workers; 0: GOMAXPROCS
 	Seed                uint64         // of the small noise in the first sweeps; results are the same for the same seed
 	Charges             []string       // conserved charges to use; nil: the choice that cuts blocks most
-	Complex             bool           // complex arithmetic even where a real gauge exists
+	Complex             bool           // complex arithmetic even where a real gauge exists, or real modes (ladder.Modes)
 	Opening             Opening        // how new states enter the bond; 0: PerturbedDensity
 	Start               *mps.State     // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
 	OnSweep             func(Sweep)    // called after every sweep

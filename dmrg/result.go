@@ -55,6 +55,7 @@ type Result struct {
 	Sweeps           []Sweep            // whole ones
 	Stages           []Stage            // without states
 	Sector           map[string]float64 // the values of the conserved charges
+	Real             bool               // the search ran in real arithmetic; State may be complex all the same, see ladder.Modes
 	OperatorBonds    []int              // bond dimensions of the matrix-product operator
 	Flops            float64            // real operations of environments, projected Hamiltonians and the variance
 	Verdict          Verdict            // "" where the context ended the search

@@ -26,7 +26,7 @@ func (r *run) result(ctx context.Context, w *watch, found *dmrg.Result) (*runfol
 // describe says what was solved.
 func describe(m *modelfile.Model, found *dmrg.Result) runfolder.Model {
 	model := runfolder.Model{Title: m.Title, Sites: m.Ladder.Sites(), Charges: chargesOf(m.Frames), Arithmetic: runfolder.Complex, MPOBonds: found.OperatorBonds}
-	if _, ok := found.State.Real(); ok {
+	if found.Real {
 		model.Arithmetic = runfolder.Real
 	}
 	return model
