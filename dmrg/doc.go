@@ -15,6 +15,7 @@
 // particle do not leave the search in the product state. Then clean sweeps follow, cut by singular values. A stage (one bond
 // dimension) ends when sweeping on would gain less than the wish, or much less than the truncation costs; the next has a
 // larger bond, until the error estimate is below the wanted precision and two stages agree, or a cap is met.
+// Options.Schedule puts sweeps of one's own in the place of all that.
 //
 // Between updates an environment stands for each site only on the side away from the centre; slabs are used again. So a search holds
 // the state and its environments once, besides the workspace of the widest bond. A cap on memory is kept by forecasting the blocks of the

@@ -31,6 +31,7 @@ type engine[T dense.Scalar] struct {
 	halt     func() error // why the search has to stop now; nil: go on
 	onBond   func(Position)
 	sweeps   int
+	products int     // with projected Hamiltonians
 	flops    float64 // of environments and projected Hamiltonians, in real operations
 	residual float64 // of the last eigenvector
 	gain     float64 // of the last eigenvector against its start
@@ -277,6 +278,7 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 			return
 		}
 		h.Apply(dst, src, &e.work, e.pool)
+		e.products++
 		e.count(h.Flops())
 	}
 	r := krylov.Lowest(apply, theta.Data, nil, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance}, &e.kry)

@@ -21,6 +21,7 @@ type Options struct {
 	Charges             []string       // conserved charges to use; nil: the choice that cuts blocks most
 	Complex             bool           // complex arithmetic even where a real gauge exists, or real modes (ladder.Modes)
 	Opening             Opening        // how new states enter the bond; 0: PerturbedDensity
+	Schedule            []Pass         // sweeps to do instead of those that the search would choose, for measurements and experts; nil: the search chooses
 	Start               *mps.State     // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
 	OnSweep             func(Sweep)    // called after every sweep
 	OnStage             func(Stage)    // called with the state at each settled bond dimension
@@ -79,7 +80,7 @@ func (o Options) check() error {
 	case o.Opening != PerturbedDensity && o.Opening != Unperturbed:
 		return bad("Opening", int(o.Opening), "PerturbedDensity or Unperturbed")
 	}
-	return nil
+	return o.checkSchedule()
 }
 
 // settle fills in the defaults of checked options. scale is the largest coupling.

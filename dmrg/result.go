@@ -11,6 +11,8 @@ type Sweep struct {
 	Discarded    float64 // largest discarded weight of a bond in the left-going half
 	Residual     float64 // largest norm of H psi - E psi left by a bond's eigensolver in the left-going half
 	LargestBond  int
+	Products     int     // of a vector with the projected Hamiltonian
+	Flops        float64 // real operations of environments and projected Hamiltonians
 	Seconds      float64
 }
 

@@ -48,6 +48,13 @@ func (s *search[T]) run() (Verdict, string, error) {
 	if err := s.engine.prepare(); err != nil {
 		return s.ended(err)
 	}
+	if len(s.opt.Schedule) > 0 {
+		verdict, reason, err := s.follow()
+		if err != nil {
+			return s.ended(err)
+		}
+		return verdict, reason, nil
+	}
 	bond := s.affordable(1, min(s.opt.Bond, max(firstBond, s.engine.psi.MaxBond())))
 	for {
 		verdict, reason, err := s.stage(bond)
@@ -232,6 +239,7 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	if len(s.sweeps) >= s.opt.Sweeps {
 		return SweepCap, fmt.Sprintf("%d sweeps done; allow more sweeps", len(s.sweeps)), nil
 	}
+	products, flops := s.engine.products, s.engine.flops
 	out, err := s.engine.sweep(set)
 	if err != nil {
 		return unfinished, "", err
@@ -242,7 +250,8 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 		st.discarded, st.largest, st.residual, st.gain, st.change = out.total, out.largest, out.residual, out.gain, out.change
 	}
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Perturbation: set.perturbation, Energy: out.energy, Discarded: out.discarded,
-		Residual: out.residual, LargestBond: out.largest, Seconds: time.Since(begin).Seconds()}
+		Residual: out.residual, LargestBond: out.largest, Products: s.engine.products - products, Flops: s.engine.flops - flops,
+		Seconds: time.Since(begin).Seconds()}
 	s.sweeps = append(s.sweeps, w)
 	if s.opt.OnSweep != nil {
 		s.opt.OnSweep(w)
