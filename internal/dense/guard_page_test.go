@@ -101,7 +101,51 @@ func vectorsStayInside[T Scalar](t *testing.T) {
 				Scale(alpha, x)
 				Scale(2, x)
 				largest(1, n, x, n)
+				Conjugate(y, x)
 			}, "n=%d", n)
 		}
 	}
+}
+
+// TestTwoProductsStayInside and those below do so for the kernels of factorizations.
+func TestTwoProductsStayInside(t *testing.T) {
+	eachKernels(t, func(t *testing.T) { both(t, twoProductsStayInside[float64], twoProductsStayInside[complex128]) })
+}
+
+func twoProductsStayInside[T Scalar](t *testing.T) {
+	defer debug.SetPanicOnFault(debug.SetPanicOnFault(true))
+	place := fenced[T](t)
+	for n := 1; n < 34; n++ {
+		for _, before := range []bool{true, false} {
+			m := 1 + n%17
+			a, v, x := place(random[T](m*n), before), place(random[T](n), before), place(random[T](m), before)
+			dots, y := place(random[T](m), before), place(random[T](n), before)
+			require.NotPanics(t, func() {
+				twoProducts(m, n, a, n, v, x, dots, y)
+				adjoint(m, n, a, n, place(random[T](m*n), before), m)
+			}, "%d×%d", m, n)
+		}
+	}
+}
+
+func TestSecularStaysInside(t *testing.T) {
+	eachKernels(t, func(t *testing.T) {
+		defer debug.SetPanicOnFault(debug.SetPanicOnFault(true))
+		place := fenced[float64](t)
+		for n := 1; n < 34; n++ {
+			for _, before := range []bool{true, false} {
+				d, z, row := place(random[float64](n), before), place(random[float64](n), before), place(random[float64](n), before)
+				require.NotPanics(t, func() {
+					for _, squared := range []bool{false, true} {
+						s := secular{squared: squared}
+						s.sums(d, z, 3, 0.5)
+						s.quotients(row, d, 3, 0.5, 5)
+					}
+					for kind := plainRow; kind <= leftRow; kind++ {
+						coefficientRow(kind, d, z, row, 3, 0.5)
+					}
+				}, "n=%d", n)
+			}
+		}
+	})
 }

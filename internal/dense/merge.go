@@ -170,24 +170,13 @@ func (m *merge) finish(lo int, values []float64, index []int) {
 
 // coefficients writes, for each of the given roots x, the normalized row c_j = z_j/(D_j - x) over the placed poles.
 func (m *merge) coefficients(roots []int, c []float64) {
-	k := len(m.placed)
+	k, kind := len(m.placed), plainRow
+	if m.squared {
+		kind = squaredRow
+	}
 	for r, i := range roots {
-		row, weight := c[r*k:(r+1)*k], m.weight[:k]
-		pole, t := m.poles[m.origin[i]], m.offset[i]
-		sum := 0.0
-		if m.squared {
-			for j, x := range m.placed {
-				q := weight[j] / (((x - pole) - t) * ((x + pole) + t))
-				row[j] = q
-				sum += q * q
-			}
-		} else {
-			for j, x := range m.placed {
-				q := weight[j] / ((x - pole) - t)
-				row[j] = q
-				sum += q * q
-			}
-		}
+		row := c[r*k : (r+1)*k]
+		sum := coefficientRow(kind, m.placed, m.weight[:k], row, m.poles[m.origin[i]], m.offset[i])
 		Scale(1/math.Sqrt(sum), row)
 	}
 }
@@ -197,14 +186,8 @@ func (m *merge) coefficients(roots []int, c []float64) {
 func (m *merge) leftCoefficients(roots []int, zero int, c []float64) {
 	k := len(m.placed)
 	for r, i := range roots {
-		row, weight := c[r*k:(r+1)*k], m.weight[:k]
-		pole, t := m.poles[m.origin[i]], m.offset[i]
-		sum := 1.0
-		for j, x := range m.placed {
-			q := x * weight[j] / (((x - pole) - t) * ((x + pole) + t))
-			row[j] = q
-			sum += q * q
-		}
+		row := c[r*k : (r+1)*k]
+		sum := 1 + coefficientRow(leftRow, m.placed, m.weight[:k], row, m.poles[m.origin[i]], m.offset[i])
 		row[zero] = -1
 		Scale(1/math.Sqrt(sum), row)
 	}

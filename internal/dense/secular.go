@@ -22,25 +22,6 @@ const secularSteps = 100
 // value returns root i.
 func (s *secular) value(i int) float64 { return s.d[s.origin[i]] + s.offset[i] }
 
-// sums returns the sum of z^2/(D-x) over the given poles, and its derivative, at x = pole + t.
-func (s *secular) sums(d, z []float64, pole, t float64) (sum, slope float64) {
-	z = z[:len(d)]
-	if s.squared {
-		for j, x := range d {
-			q := z[j] / (((x - pole) - t) * ((x + pole) + t))
-			sum += z[j] * q
-			slope += q * q
-		}
-		return sum, slope
-	}
-	for j, x := range d {
-		q := z[j] / ((x - pole) - t)
-		sum += z[j] * q
-		slope += q * q
-	}
-	return sum, slope
-}
-
 // gap returns D_j - x at x = pole + t.
 func (s *secular) gap(j int, pole, t float64) float64 {
 	x := (s.d[j] - pole) - t
@@ -246,19 +227,5 @@ func (s *secular) recompute(product []float64) {
 	}
 	for i, p := range product {
 		s.z[i] = math.Copysign(math.Sqrt(math.Abs(p)), s.z[i])
-	}
-}
-
-// quotients multiplies product[i] by (D_i - x)/(D_i - D_other) with x = pole + t.
-func (s *secular) quotients(product, d []float64, pole, t, other float64) {
-	product = product[:len(d)]
-	if s.squared {
-		for i, x := range d {
-			product[i] *= ((x - pole) - t) * ((x + pole) + t) / ((x - other) * (x + other))
-		}
-		return
-	}
-	for i, x := range d {
-		product[i] *= ((x - pole) - t) / (x - other)
 	}
 }

@@ -1,10 +1,10 @@
 package dense
 
 // tridiagonalPanel is the number of columns that are reduced before the rest of the matrix is updated, stripRows the height of the
-// strips in which the upper half of the matrix is read and updated: low enough that a strip stays in the cache between its two uses.
-// BenchmarkEigen sets them anew.
+// strips in which the upper half of the matrix is read and updated: low enough that little is wasted on the squares on the diagonal,
+// which are read whole. BenchmarkEigen sets them anew.
 const (
-	tridiagonalPanel = 12
+	tridiagonalPanel = 8
 	stripRows        = 32
 )
 
@@ -88,17 +88,17 @@ func (x *tridiagonal[T]) column(k, done int) (diagonal, off float64) {
 	return diagonal, off
 }
 
-// multiply writes conj(A v) for the rows and columns from `from` on; vh = conj(v). Each strip serves twice, as it is and as the
-// columns below the diagonal.
+// multiply writes conj(A v) for the rows and columns from `from` on; vh = conj(v). Each strip right of
+// its square is read once and serves twice, as it is and as the columns below the diagonal.
 func (x *tridiagonal[T]) multiply(from int, v, vh, out []T) {
 	n := x.n
 	clear(out)
 	upper := x.y[:n-from]
 	for i := from; i < n; {
 		end := min(n, stripStart(i)+stripRows)
-		matVec(NoTrans, end-i, n-i, 1, x.a[i*n+i:], n, v[i-from:], 0, upper[i-from:end-from])
+		matVec(NoTrans, end-i, end-i, 1, x.a[i*n+i:], n, v[i-from:], 0, upper[i-from:end-from])
 		if end < n {
-			matVec(Trans, end-i, n-end, 1, x.a[i*n+end:], n, vh[i-from:end-from], 1, out[end-from:])
+			twoProducts(end-i, n-end, x.a[i*n+end:], n, v[end-from:], vh[i-from:end-from], upper[i-from:end-from], out[end-from:])
 		}
 		i = end
 	}

@@ -102,6 +102,10 @@ func Conjugate[T Scalar](dst, src []T) {
 	case []float64:
 		copy(dst, src)
 	case []complex128:
+		if useTiles() {
+			conjugateTiles(floats(dst), floats(src))
+			return
+		}
 		d := any(dst).([]complex128)
 		for i, z := range s {
 			d[i] = cmplx.Conj(z)
@@ -154,22 +158,6 @@ func larger(top float64, x []float64) float64 {
 func matrix(name string, rows, cols, ld, have int) {
 	if rows < 0 || cols < 0 || ld < cols || (rows > 0 && cols > 0 && have < (rows-1)*ld+cols) {
 		panic(fmt.Sprintf("dense: %s is %d×%d with stride %d but holds %d elements", name, rows, cols, ld, have))
-	}
-}
-
-// adjoint writes the conjugate transpose of the m×n matrix a into b (n×m).
-func adjoint[T Scalar](m, n int, a []T, lda int, b []T, ldb int) {
-	for i := range m {
-		for j, x := range a[i*lda : i*lda+n] {
-			b[j*ldb+i] = x
-		}
-	}
-	if !IsComplex[T]() {
-		return
-	}
-	for j := range n {
-		row := b[j*ldb : j*ldb+m]
-		Conjugate(row, row)
 	}
 }
 

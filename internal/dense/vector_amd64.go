@@ -55,3 +55,11 @@ func largest512(x *float64, n int) float64
 
 //go:noescape
 func largest256(x *float64, n int) float64
+
+// conjugate writes the conjugates of x to y.
+//
+//go:noescape
+func conjugate512(y, x *float64, n int)
+
+//go:noescape
+func conjugate256(y, x *float64, n int)

@@ -567,3 +567,76 @@ end:
 	VZEROUPPER
 	MOVSD        X0, ret+16(FP)
 	RET
+
+// func conjugate256(y *float64, x *float64, n int)
+// Requires: AVX
+TEXT ·conjugate256(SB), NOSPLIT, $0-24
+	MOVQ        x+8(FP), AX
+	MOVQ        n+16(FP), CX
+	MOVQ        y+0(FP), DX
+	MOVQ        $+1, BX
+	SHLQ        $0x3f, BX
+	VXORPD      X14, X14, X14
+	VMOVQ       BX, X13
+	VUNPCKLPD   X13, X14, X14
+	VINSERTF128 $0x01, X14, Y14, Y14
+	SUBQ        $0x10, CX
+	JLT         few
+
+many:
+	VMOVUPD (AX), Y0
+	VXORPD  Y14, Y0, Y0
+	VMOVUPD Y0, (DX)
+	VMOVUPD 32(AX), Y1
+	VXORPD  Y14, Y1, Y1
+	VMOVUPD Y1, 32(DX)
+	VMOVUPD 64(AX), Y2
+	VXORPD  Y14, Y2, Y2
+	VMOVUPD Y2, 64(DX)
+	VMOVUPD 96(AX), Y3
+	VXORPD  Y14, Y3, Y3
+	VMOVUPD Y3, 96(DX)
+	ADDQ    $0x00000080, AX
+	ADDQ    $0x00000080, DX
+	SUBQ    $0x10, CX
+	JGE     many
+
+few:
+	ADDQ $0x10, CX
+	SUBQ $0x04, CX
+	JLT  cut
+
+one:
+	VMOVUPD (AX), Y0
+	VXORPD  Y14, Y0, Y0
+	VMOVUPD Y0, (DX)
+	ADDQ    $0x00000020, AX
+	ADDQ    $0x00000020, DX
+	SUBQ    $0x04, CX
+	JGE     one
+
+cut:
+	ADDQ         $0x04, CX
+	JEQ          end
+	LEAQ         tails<>+0(SB), BX
+	MOVQ         $0x00000004, SI
+	SUBQ         CX, SI
+	LEAQ         (BX)(SI*8), SI
+	VMOVUPD      (SI), Y15
+	VMASKMOVPD   (AX), Y15, Y0
+	VXORPD       Y14, Y0, Y0
+	CMPQ         CX, $0x02
+	JLT          one9
+	VMOVUPD      X0, (DX)
+	JEQ          end10
+	VEXTRACTF128 $0x01, Y0, X0
+	VMOVSD       X0, 16(DX)
+	JMP          end10
+
+one9:
+	VMOVSD X0, (DX)
+
+end10:
+end:
+	VZEROUPPER
+	RET

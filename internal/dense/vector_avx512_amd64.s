@@ -500,3 +500,64 @@ end:
 	VZEROUPPER
 	MOVSD         X0, ret+16(FP)
 	RET
+
+// func conjugate512(y *float64, x *float64, n int)
+// Requires: AVX, AVX512DQ, AVX512F, BMI2
+TEXT ·conjugate512(SB), NOSPLIT, $0-24
+	MOVQ       x+8(FP), AX
+	MOVQ       n+16(FP), CX
+	MOVQ       y+0(FP), DX
+	MOVQ       $+1, BX
+	SHLQ       $0x3f, BX
+	VXORPD     X14, X14, X14
+	VMOVQ      BX, X13
+	VUNPCKLPD  X13, X14, X14
+	VSHUFF64X2 $0x00, Z14, Z14, Z14
+	SUBQ       $0x20, CX
+	JLT        few
+
+many:
+	VMOVUPD (AX), Z0
+	VXORPD  Z14, Z0, Z0
+	VMOVUPD Z0, (DX)
+	VMOVUPD 64(AX), Z1
+	VXORPD  Z14, Z1, Z1
+	VMOVUPD Z1, 64(DX)
+	VMOVUPD 128(AX), Z2
+	VXORPD  Z14, Z2, Z2
+	VMOVUPD Z2, 128(DX)
+	VMOVUPD 192(AX), Z3
+	VXORPD  Z14, Z3, Z3
+	VMOVUPD Z3, 192(DX)
+	ADDQ    $0x00000100, AX
+	ADDQ    $0x00000100, DX
+	SUBQ    $0x20, CX
+	JGE     many
+
+few:
+	ADDQ $0x20, CX
+	SUBQ $0x08, CX
+	JLT  cut
+
+one:
+	VMOVUPD (AX), Z0
+	VXORPD  Z14, Z0, Z0
+	VMOVUPD Z0, (DX)
+	ADDQ    $0x00000040, AX
+	ADDQ    $0x00000040, DX
+	SUBQ    $0x08, CX
+	JGE     one
+
+cut:
+	ADDQ      $0x08, CX
+	JEQ       end
+	MOVQ      $-1, BX
+	BZHIQ     CX, BX, BX
+	KMOVB     BX, K1
+	VMOVUPD.Z (AX), K1, Z0
+	VXORPD    Z14, Z0, Z0
+	VMOVUPD   Z0, K1, (DX)
+
+end:
+	VZEROUPPER
+	RET

@@ -59,6 +59,16 @@ func testVectorKernels[T Scalar](t *testing.T) {
 			sum.checkGuards(t, "axpy")
 			scaled.checkGuards(t, "scale")
 		}
+		mirrored := fresh()
+		Conjugate(mirrored.a, x.a)
+		for i := range n {
+			if mirrored.a[i] != Conj(x.a[i]) {
+				t.Fatalf("conjugate, n=%d: element %d is %v, not that of %v", n, i, mirrored.a[i], x.a[i])
+			}
+		}
+		mirrored.checkGuards(t, "conjugate")
+		Conjugate(mirrored.a, mirrored.a)
+		assert.Equal(t, x.a, mirrored.a, "conjugate in place, n=%d", n)
 		x.checkGuards(t, "first vector")
 		y.checkGuards(t, "second vector")
 	}

@@ -55,6 +55,22 @@ func main() {
 		g.tailTable()
 		g.vectors(avx2)
 	})
+	halves := declarations("../symmetric_amd64.go")
+	write("../symmetric_avx512_amd64.s", halves, func(g *generator) {
+		g.symmetric(avx512, false)
+		g.symmetric(avx512, true)
+	})
+	write("../symmetric_avx2_amd64.s", halves, func(g *generator) {
+		g.tailTable()
+		g.symmetric(avx2, false)
+		g.symmetric(avx2, true)
+	})
+	equations := declarations("../secular_amd64.go")
+	write("../secular_avx512_amd64.s", equations, func(g *generator) { g.secular(avx512) })
+	write("../secular_avx2_amd64.s", equations, func(g *generator) {
+		g.tailTable()
+		g.secular(avx2)
+	})
 	write("../tile_avx2_amd64.s", tiles, func(g *generator) {
 		g.tailTable()
 		for nv := 1; nv <= 3; nv++ {

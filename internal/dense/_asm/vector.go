@@ -10,6 +10,7 @@ type vector struct {
 	*generator
 	isa
 	x, y, n reg.GPVirtual // y is absent in some
+	also    reg.GPVirtual // a third vector, absent in most
 	mask    reg.VecPhysical
 }
 
@@ -22,6 +23,7 @@ func (g *generator) vectors(s isa) {
 	g.scale(s, false)
 	g.scale(s, true)
 	g.largest(s)
+	g.conjugate(s)
 }
 
 func (g *generator) vector(s isa, name string, two bool) *vector {
@@ -36,9 +38,10 @@ func (g *generator) vector(s isa, name string, two bool) *vector {
 // loop runs body for every vector: unrolled, with an index below unroll; once for each left over; once more, masked, for a cut one.
 func (v *vector) loop(unroll int, body func(i int, at int, masked bool)) {
 	step := func(vectors int) {
-		v.ADDQ(U32(vectors*v.bytes), v.x)
-		if v.y != nil {
-			v.ADDQ(U32(vectors*v.bytes), v.y)
+		for _, p := range []reg.GPVirtual{v.x, v.y, v.also} {
+			if p != nil {
+				v.ADDQ(U32(vectors*v.bytes), p)
+			}
 		}
 	}
 	if unroll > 1 {
@@ -295,4 +298,26 @@ func (g *generator) largest(s isa) {
 	fold(func() { v.VEXTRACTF128(Imm(1), top.AsY(), s.regs[5].AsX()) })
 	fold(func() { v.VUNPCKHPD(top.AsX(), top.AsX(), s.regs[5].AsX()) })
 	v.done(func() { g.Store(top.AsX(), g.ReturnIndex(0)) })
+}
+
+func (g *generator) conjugate(s isa) {
+	v := g.vector(s, "conjugate", true)
+	sign, bits := s.regs[14], g.GP64()
+	g.MOVQ(I32(1), bits)
+	g.SHLQ(Imm(63), bits)
+	v.clear(sign)
+	g.VMOVQ(bits, s.regs[13].AsX())
+	g.VUNPCKLPD(s.regs[13].AsX(), sign.AsX(), sign.AsX())
+	if s.bytes == 64 {
+		v.VSHUFF64X2(Imm(0), sign, sign, sign)
+	} else {
+		v.VINSERTF128(Imm(1), sign.AsX(), sign.AsY(), sign.AsY())
+	}
+	v.loop(4, func(i, at int, masked bool) {
+		x := s.regs[i]
+		v.load(v.x, at, masked, x)
+		v.VXORPD(sign, x, x)
+		v.store(x, v.y, at, masked)
+	})
+	v.done(nil)
 }
