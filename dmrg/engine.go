@@ -15,14 +15,12 @@ import (
 )
 
 // engine holds a state, the environments of its orthogonality centre and the workspaces of one search. Between two updates the centre
-// is at site psi.Center, and the environments left of it and right of it stand: left[0..Center] and right[Center..].
+// is at site psi.Center, and the environments left of the sites 0..Center and right of the sites Center.. stand.
 type engine[T dense.Scalar] struct {
 	op       *mpo.Operator[T]
 	plan     *mpo.Planner[T]
 	psi      *mps.Chain[T]
-	left     []*block.Tensor[T] // left[i]: everything left of site i; nil where it does not stand
-	right    []*block.Tensor[T] // right[i]: everything right of site i
-	spare    [][]T              // slabs of environments that are out of date
+	envs     *environments[T]
 	pool     *task.Pool
 	rng      *rand.Rand
 	work     mpo.Workspace[T]
@@ -62,10 +60,9 @@ type outcome struct {
 // newEngine begins a search from psi, which it keeps and normalizes; prepare must follow. Once halt says why to stop, the engine's methods return
 // that.
 func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settled, halt func() error) *engine[T] {
-	n := psi.Len()
 	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt, unit: opt.unit,
 		rng:  rand.New(rand.NewPCG(opt.Seed, noiseStream)),
-		left: make([]*block.Tensor[T], n), right: make([]*block.Tensor[T], n)}
+		envs: newEnvironments[T](psi.Len())}
 	psi.Canonicalize(0, e.pool)
 	psi.Normalize()
 	return e
@@ -76,32 +73,47 @@ const noiseStream = 0x72756e646c65
 
 // prepare makes the environments of the first site.
 func (e *engine[T]) prepare() error {
-	e.left[0] = mpo.LeftEdge(e.op)
-	e.right[len(e.right)-1] = mpo.RightEdge(e.op, e.psi.Charge(), e.psi.Charge())
-	for i := len(e.right) - 1; i > 0; i-- {
+	last := e.psi.Len() - 1
+	e.envs.setLeft(0, mpo.LeftEdge(e.op))
+	e.envs.setRight(last, mpo.RightEdge(e.op, e.psi.Charge(), e.psi.Charge()))
+	for i := last; i > 0; i-- {
 		if err := e.halt(); err != nil {
 			return err
 		}
-		e.growRight(i)
+		if err := e.growRight(i); err != nil {
+			return err
+		}
 	}
 	return nil
 }
 
-// growLeft makes left[i+1] from left[i]; growRight makes right[i-1] from right[i].
-func (e *engine[T]) growLeft(i int) {
+// growLeft makes the environment left of site i+1 from that left of site i; growRight that right of site i-1 from that right of site i.
+func (e *engine[T]) growLeft(i int) error {
+	from, err := e.envs.left(i)
+	if err != nil {
+		return err
+	}
 	a := e.psi.Sites[i]
-	g := e.plan.Left(i, e.left[i].Structure, a.Structure, a.Structure)
-	e.left[i+1] = e.environment(g.Out)
-	g.Run(e.left[i+1], e.left[i], a, a, &e.work, e.pool)
+	g := e.plan.Left(i, from.Structure, a.Structure, a.Structure)
+	to := e.envs.fresh(g.Out)
+	g.Run(to, from, a, a, &e.work, e.pool)
+	e.envs.setLeft(i+1, to)
 	e.count(g.Flops())
+	return nil
 }
 
-func (e *engine[T]) growRight(i int) {
+func (e *engine[T]) growRight(i int) error {
+	from, err := e.envs.right(i)
+	if err != nil {
+		return err
+	}
 	a := e.psi.Sites[i]
-	g := e.plan.Right(i, e.right[i].Structure, a.Structure, a.Structure)
-	e.right[i-1] = e.environment(g.Out)
-	g.Run(e.right[i-1], e.right[i], a, a, &e.work, e.pool)
+	g := e.plan.Right(i, from.Structure, a.Structure, a.Structure)
+	to := e.envs.fresh(g.Out)
+	g.Run(to, from, a, a, &e.work, e.pool)
+	e.envs.setRight(i-1, to)
 	e.growth += e.count(g.Flops())
+	return nil
 }
 
 // count adds multiplications and additions to flops, in real operations.
@@ -111,40 +123,6 @@ func (e *engine[T]) count(flops float64) float64 {
 	}
 	e.flops += flops
 	return flops
-}
-
-// environment returns a tensor for a new environment, in an old slab where one is large enough.
-func (e *engine[T]) environment(s *block.Structure) *block.Tensor[T] {
-	best := -1
-	for i, slab := range e.spare {
-		if cap(slab) >= s.Size && (best < 0 || cap(slab) < cap(e.spare[best])) {
-			best = i
-		}
-	}
-	if best < 0 {
-		return block.New[T](s)
-	}
-	slab := e.spare[best][:s.Size]
-	e.spare = append(e.spare[:best], e.spare[best+1:]...)
-	return &block.Tensor[T]{Structure: s, Data: slab}
-}
-
-// release gives up an environment that is out of date. Of the slabs that are free the two largest are kept.
-func (e *engine[T]) release(t **block.Tensor[T]) {
-	if *t == nil {
-		return
-	}
-	e.spare = append(e.spare, (*t).Data)
-	*t = nil
-	if len(e.spare) > 2 {
-		least := 0
-		for i, slab := range e.spare {
-			if cap(slab) < cap(e.spare[least]) {
-				least = i
-			}
-		}
-		e.spare = append(e.spare[:least], e.spare[least+1:]...)
-	}
 }
 
 // sweep goes right and left once over all bonds. Told to halt it stops between two updates, or gives up the one at hand, and returns
@@ -195,8 +173,12 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) (float64, e
 // update optimizes sites i and i+1 together (White 1992) and moves the orthogonality centre on. On an error the chain and its environments are
 // as they were.
 func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, change float64, err error) {
+	left, beyond, err := e.envs.around(i, i+1)
+	if err != nil {
+		return 0, 0, 0, e.at(i, err)
+	}
 	theta := block.Contract(e.psi.Sites[i], e.psi.Sites[i+1], []int{2}, []int{0})
-	h := e.plan.Project(i, 2, e.left[i], e.right[i+1], theta.Structure)
+	h := e.plan.Project(i, 2, left, beyond, theta.Structure)
 	if s.noise > 0 {
 		e.shake(theta, s.noise)
 	}
@@ -216,13 +198,16 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 	}
 	e.psi.Sites[i], e.psi.Sites[i+1] = a, b
 	if right {
-		e.release(&e.right[i])
+		e.envs.dropRight(i)
 		e.psi.Center = i + 1
-		e.growLeft(i)
+		err = e.growLeft(i)
 	} else {
-		e.release(&e.left[i+1])
+		e.envs.dropLeft(i + 1)
 		e.psi.Center = i
-		e.growRight(i + 1)
+		err = e.growRight(i + 1)
+	}
+	if err != nil {
+		return 0, 0, 0, e.at(i, err)
 	}
 	return energy, discarded, change, nil
 }
@@ -257,8 +242,12 @@ const (
 
 // single is the sweep of a ladder of one site.
 func (e *engine[T]) single(s setting) (outcome, error) {
+	left, right, err := e.envs.around(0, 0)
+	if err != nil {
+		return outcome{}, e.at(0, err)
+	}
 	theta := e.psi.Sites[0].Clone()
-	h := e.plan.Project(0, 1, e.left[0], e.right[0], theta.Structure)
+	h := e.plan.Project(0, 1, left, right, theta.Structure)
 	e.shake(theta, singleNoise)
 	s.vectors = singleVectors
 	energy, err := e.lowest(h, theta, s)
@@ -293,17 +282,21 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 }
 
 // energy returns <H> of the state, from the environments of its centre where they stand.
-func (e *engine[T]) energy() float64 {
+func (e *engine[T]) energy() (float64, error) {
 	c := e.psi.Center
-	if e.left[c] == nil || e.right[c] == nil {
-		return dense.Real(mpo.Expectation(e.psi, e.op, e.pool))
+	if !e.envs.stand(c, c) {
+		return dense.Real(mpo.Expectation(e.psi, e.op, e.pool)), nil
+	}
+	left, right, err := e.envs.around(c, c)
+	if err != nil {
+		return 0, err
 	}
 	theta := e.psi.Sites[c]
-	h := e.plan.Project(c, 1, e.left[c], e.right[c], theta.Structure)
+	h := e.plan.Project(c, 1, left, right, theta.Structure)
 	out := block.New[T](theta.Structure)
 	h.Apply(out.Data, theta.Data, &e.work, e.pool)
 	norm := theta.Norm()
-	return dense.Real(block.Dot(theta, out)) / (norm * norm)
+	return dense.Real(block.Dot(theta, out)) / (norm * norm), nil
 }
 
 // shake adds a random part of relative norm size to theta, inside its blocks.

@@ -21,11 +21,11 @@ func build(t testing.TB, p *problem) *mpo.Operator[float64] {
 	return op
 }
 
-func elements(env any) int {
-	if x, ok := env.(*block.Tensor[float64]); ok && x != nil {
-		return len(x.Data)
-	}
-	return 0
+func energyOf[T dense.Scalar](t testing.TB, e *engine[T]) float64 {
+	t.Helper()
+	energy, err := e.energy()
+	require.NoError(t, err)
+	return energy
 }
 
 // randomEngine stands on a random state of the middle of a chain.
@@ -55,14 +55,12 @@ func testEnvironmentsStand[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, 
 	e := randomEngine[T](t, h, sector, 10)
 	check := func() {
 		want := dense.Real(mpo.Expectation(e.psi, e.op, nil))
-		require.InDelta(t, want, e.energy(), 1e-12)
-		standing := 0
-		for i := range e.left {
-			require.Equal(t, i <= e.psi.Center, e.left[i] != nil, "left environment of site %d, centre %d", i, e.psi.Center)
-			require.Equal(t, i >= e.psi.Center, e.right[i] != nil, "right environment of site %d, centre %d", i, e.psi.Center)
-			standing++
+		require.InDelta(t, want, energyOf(t, e), 1e-12)
+		for i := range e.psi.Len() {
+			require.Equal(t, i <= e.psi.Center, e.envs.lefts[i] != nil, "left environment of site %d, centre %d", i, e.psi.Center)
+			require.Equal(t, i >= e.psi.Center, e.envs.rights[i] != nil, "right environment of site %d, centre %d", i, e.psi.Center)
 		}
-		require.LessOrEqual(t, len(e.spare), 2)
+		require.LessOrEqual(t, len(e.envs.spare), 2)
 		c := e.psi.Clone()
 		c.Center = -1
 		require.InDelta(t, 1, c.Norm(), 1e-12, "norm without the promise of a centre")
@@ -90,13 +88,12 @@ func TestSplitPerturbed(t *testing.T) {
 func testSplitPerturbed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector ladder.Sector) {
 	e := randomEngine[T](t, h, sector, 12)
 	e.psi.MoveCenter(3, nil)
-	e.left[1] = nil
 	for i := range 3 {
-		e.growLeft(i)
+		require.NoError(t, e.growLeft(i))
 	}
 	theta := block.Contract(e.psi.Sites[3], e.psi.Sites[4], []int{2}, []int{0})
 	theta.Scale(dense.FromFloat[T](1 / theta.Norm()))
-	proj := e.plan.Project(3, 2, e.left[3], e.right[4], theta.Structure)
+	proj := e.plan.Project(3, 2, e.envs.lefts[3], e.envs.rights[4], theta.Structure)
 	for _, right := range []bool{true, false} {
 		for _, perturbation := range []float64{1e-14, 1e-3, 0.3} {
 			for _, bond := range []int{1, 2, 5, 11, 1000} {
@@ -206,9 +203,9 @@ func TestDeterminism(t *testing.T) {
 	e := newEngine(build(t, p), c.Clone(), p.opt, func() error { return nil })
 	require.NoError(t, e.prepare())
 	for i := range 4 {
-		e.growLeft(i)
+		require.NoError(t, e.growLeft(i))
 	}
-	require.Greater(t, e.plan.Project(4, 2, e.left[4], e.right[5], theta.Structure).Flops(), 2*task.Threshold, "too small to be spread")
+	require.Greater(t, e.plan.Project(4, 2, e.envs.lefts[4], e.envs.rights[5], theta.Structure).Flops(), 2*task.Threshold, "too small to be spread")
 	require.Equal(t, bits(one), bits(run(Options{Threads: 2, Seed: 5})), "two threads")
 	require.Equal(t, bits(one), bits(run(Options{Threads: 3, Seed: 5})), "three threads")
 	require.NotEqual(t, bits(one), bits(run(Options{Threads: 1, Seed: 6})), "the seed has no effect")

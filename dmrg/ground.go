@@ -111,7 +111,10 @@ func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames,
 	if err != nil && !ended {
 		return nil, err
 	}
-	r := s.result(verdict, reason, ended)
+	r, failed := s.result(verdict, reason, ended)
+	if failed != nil {
+		return nil, failed
+	}
 	r.Sector = p.frames.Values(total)
 	state, failed := toState(e.psi)
 	if failed != nil {
@@ -123,7 +126,7 @@ func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames,
 }
 
 // result gathers what the search found; where it was ended from outside, without what takes time.
-func (s *search[T]) result(verdict Verdict, reason string, ended bool) *Result {
+func (s *search[T]) result(verdict Verdict, reason string, ended bool) (*Result, error) {
 	e, est := s.engine, s.estimate()
 	r := &Result{Verdict: verdict, Reason: reason, Sweeps: s.sweeps, Stages: s.reports, OperatorBonds: e.op.BondDims(),
 		LargestBond: e.psi.MaxBond(), Energy: math.NaN(), EnergyLimit: est.limit, EnergyError: est.err,
@@ -132,7 +135,10 @@ func (s *search[T]) result(verdict Verdict, reason string, ended bool) *Result {
 		r.DiscardedWeight = s.sweeps[n-1].Discarded
 	}
 	if !ended {
-		r.Energy = e.energy()
+		var err error
+		if r.Energy, err = e.energy(); err != nil {
+			return nil, err
+		}
 		if s.varianceIsCheap() {
 			r.Variance, r.VarianceRounding = mpo.Variance(e.psi, e.op, e.pool)
 		}
@@ -141,7 +147,7 @@ func (s *search[T]) result(verdict Verdict, reason string, ended bool) *Result {
 		r.EnergyLimit = r.Energy
 	}
 	r.Flops = e.flops
-	return r
+	return r, nil
 }
 
 // startChain is the given start state where there is one, else a product state of low diagonal energy.
