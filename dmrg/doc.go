@@ -7,8 +7,9 @@
 // # How it works
 //
 // The Hamiltonian is brought into its frames (package mpo/ladder): the charges it conserves, and a gauge in which it is real
-// where there is one, or modes in which it is, if that costs less. A product state of low diagonal energy in the sector is the start. Each update solves the lowest
-// eigenvector of two neighbouring sites between their environments with a few Lanczos vectors and cuts it at the middle bond.
+// where there is one, or modes in which it is, if that costs less. A product state of low diagonal energy in the sector is the
+// start. Each update solves the lowest eigenvector of two neighbouring sites between their environments with a few Lanczos
+// vectors and cuts it at the middle bond.
 //
 // While a bond dimension is new, the cut is made by the reduced density matrix with a small part of the states added that
 // the Hamiltonian reaches from it (White 2005), charge by charge, so that terms that hop far, move pairs or need a third

@@ -70,8 +70,8 @@ func bondSum[T float64 | complex128](s *ladder.Strings) (sum float64, err error)
 	return sum, nil
 }
 
-// wayBack is the weight that going back may discard: nothing that an energy shows.
-const wayBack = 1e-22
+// wayBack is the weight that going back may discard at a pair: nothing that an energy shows, and 1e-9 of an observable.
+const wayBack = 1e-18
 
 // state takes a chain of the modes to the user's, pair by pair.
 func (r *rewritten) state(c *mps.Chain[float64], frames *ladder.Frames, _ *ladder.Scope) (*mps.State, error) {
