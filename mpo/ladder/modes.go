@@ -1,10 +1,8 @@
 package ladder
 
 import (
-	"cmp"
 	"math"
 	"math/cmplx"
-	"slices"
 )
 
 // Modes is a Hamiltonian rewritten in modes that make it real where no choice of phases alone does. If the exchange of legs a and b
@@ -32,7 +30,7 @@ func (h *Hamiltonian) Modes() *Modes {
 		return nil
 	}
 	lb := newLabelling(h.Ladder())
-	for _, pairs := range exchanges(h.Ladder()) {
+	for _, pairs := range exchanges(h.Ladder(), fullFermion) {
 		x := exchange{lb: lb, partner: partners(h.Ladder().Sites(), pairs)}
 		angles, ok := x.symmetricGauge(h.Poly)
 		if !ok {
@@ -48,139 +46,8 @@ func (h *Hamiltonian) Modes() *Modes {
 // maxModeTerms bounds the Hamiltonians that are rewritten: beyond, the search would take longer than it saves.
 const maxModeTerms = 200_000
 
-// exchanges lists the exchanges of neighbouring legs, those of most pairs first, as the first sites of the pairs.
-func exchanges(l *Ladder) [][]int {
-	var out [][]int
-	for count := len(l.legs) / 2; count > 0; count-- {
-		for _, legs := range disjoint(l, 0, count) {
-			var sites []int
-			for r := range l.rungs {
-				for _, a := range legs {
-					if s := l.index[a*l.rungs+r]; s >= 0 {
-						sites = append(sites, int(s))
-					}
-				}
-			}
-			out = append(out, sites)
-		}
-	}
-	return out
-}
-
-// disjoint lists the choices of count pairs of neighbouring legs from a leg on, by their first legs.
-func disjoint(l *Ladder, from, count int) [][]int {
-	if count == 0 {
-		return [][]int{nil}
-	}
-	var out [][]int
-	for a := from; a+1 < len(l.legs); a++ {
-		if !l.exchangeable(a) {
-			continue
-		}
-		for _, rest := range disjoint(l, a+2, count-1) {
-			out = append(out, append([]int{a}, rest...))
-		}
-	}
-	return out
-}
-
-// exchangeable reports whether leg a and the next have the same fermion sites, of all states, on the same rungs.
-func (l *Ladder) exchangeable(a int) bool {
-	site := l.legs[a].site
-	if site != l.legs[a+1].site || site.Kind() != KindFermion && !site.Double() {
-		return false
-	}
-	for r := range l.rungs {
-		if (l.index[a*l.rungs+r] >= 0) != (l.index[(a+1)*l.rungs+r] >= 0) {
-			return false
-		}
-	}
-	return true
-}
-
-// partners tells for each site which takes its place in an exchange.
-func partners(n int, pairs []int) []int32 {
-	p := make([]int32, n)
-	for i := range p {
-		p[i] = int32(i)
-	}
-	for _, a := range pairs {
-		p[a], p[a+1] = int32(a+1), int32(a)
-	}
-	return p
-}
-
-// exchange is a permutation of sites that swaps neighbours.
-type exchange struct {
-	lb      *labelling
-	partner []int32
-}
-
-// image returns a term with its sites exchanged and the sign that fermions give.
-func (x *exchange) image(p *Polynomial, f []Factor, buf []Factor) ([]Factor, complex128) {
-	out, sign := buf[:0], complex128(1)
-	for i := 0; i < len(f); i++ {
-		g := Factor{x.partner[f[i].Site], f[i].Op}
-		if i+1 < len(f) && f[i+1].Site == g.Site && g.Site > f[i].Site {
-			l := p.ladder
-			if l.Site(int(f[i].Site)).Odd(f[i].Op) && l.Site(int(f[i+1].Site)).Odd(f[i+1].Op) {
-				sign = -sign
-			}
-			out = append(out, Factor{f[i].Site, f[i+1].Op}, g)
-			i++
-			continue
-		}
-		out = append(out, g)
-	}
-	return out, sign
-}
-
-// symmetricGauge finds phases with which every term is the complex conjugate of its image: with angles 2 y, sum (n + n') y =
-// -(phase + phase')/2 modulo pi, n and n' the steps of the term and of its image.
-func (x *exchange) symmetricGauge(p *Polynomial) ([]float64, bool) {
-	var relations []relation
-	var buf []Factor
-	steps := make(map[int32]int64)
-	for t := range p.NumTerms() {
-		c, f := p.Term(t)
-		image, sign := x.image(p, f, buf)
-		buf = image
-		d := sign * p.find(image)
-		if math.Abs(cmplx.Abs(d)-cmplx.Abs(c)) > hermitianTolerance*cmplx.Abs(c) {
-			return nil, false
-		}
-		clear(steps)
-		for _, list := range [2][]Factor{f, image} {
-			for _, g := range list {
-				for a, n := range x.lb.at(int(g.Site)).site.Raise(g.Op) {
-					steps[x.lb.first[g.Site]+int32(a)] += int64(n)
-				}
-			}
-		}
-		relations = append(relations, relation{terms: sortedEntries(steps), rhs: phaseOf(-cmplx.Phase(c*d) / 2)})
-	}
-	s := solveRelations(x.lb.variables(), relations)
-	if len(s.bad) > 0 {
-		return nil, false
-	}
-	angles := make([]float64, x.lb.variables())
-	for v := range angles {
-		angles[v] = 2 * s.shift[v].angle
-	}
-	return angles, true
-}
-
-// sortedEntries lists the steps that are not zero by variable.
-func sortedEntries(steps map[int32]int64) []entry {
-	var out []entry
-	for v, n := range steps {
-		if n != 0 {
-			out = append(out, entry{v, exactOf(n)})
-		}
-	}
-	slices.SortFunc(out, func(a, b entry) int { return cmp.Compare(a.at, b.at) })
-	return out
-}
+// fullFermion reports whether a site is one of fermions with all their states.
+func fullFermion(s Site) bool { return s.Kind() == KindFermion || s.Double() }
 
 // rewrite fills in the Hamiltonian, and reports whether it is real.
 func (m *Modes) rewrite(h *Hamiltonian, x exchange) bool {
@@ -285,6 +152,13 @@ func (s *substitution) mode(site int32, op, unit OpID) (*Polynomial, error) {
 		return lower.Adjoint(), nil
 	}
 	return lower.Adjoint().Mul(lower)
+}
+
+// Between returns Pair between the stored states of frames of the rewritten Hamiltonian and those of the user's.
+func (m *Modes) Between(first int, user, modes *Frames) []complex128 {
+	l := m.Hamiltonian.Ladder()
+	return product(kronecker(user.Unitary(l, first), user.Unitary(l, first+1)),
+		product(m.Pair(first), adjoint(kronecker(modes.Unitary(l, first), modes.Unitary(l, first+1)))))
 }
 
 // Pair returns the matrix that takes a pair of sites from the modes' basis states to the user's, with the phases: element

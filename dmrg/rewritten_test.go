@@ -15,7 +15,7 @@ import (
 
 // The same search in complex arithmetic is the check: energies agree within both error bars, and the states, each in the user's own
 // sites, overlap and give the same currents.
-func TestRealModes(t *testing.T) {
+func TestRewritten(t *testing.T) {
 	for _, c := range []struct {
 		name   string
 		site   ladder.Site
@@ -34,6 +34,10 @@ func TestRealModes(t *testing.T) {
 			"-exp(0.4*i) c_up^+[a,j+1] c_up[a,j] - exp(-0.4*i) c_up^+[b,j+1] c_up[b,j] + h.c.",
 			"-exp(0.4*i) c_down^+[a,j+1] c_down[a,j] - exp(-0.4*i) c_down^+[b,j+1] c_down[b,j] + h.c.",
 			"-0.7 c_up^+[a,j] c_up[b,j] - 0.7 c_down^+[a,j] c_down[b,j] + h.c.", "2 n_up[a,j] n_down[a,j] + 2 n_up[b,j] n_down[b,j]"}},
+		{"hard-core bosons", ladder.Boson(1), 8, ladder.Sector{"N": 5}, []string{
+			"-exp(0.4*i) b^+[a,j+1] b[a,j] - exp(-0.4*i) b^+[b,j+1] b[b,j] + h.c.", "-0.7 b^+[a,j] b[b,j] + h.c.", "n[a,j] n[a,j+1] + n[b,j] n[b,j+1]"}},
+		{"spins, free charge", ladder.Spin(1), 5, nil, []string{
+			"exp(0.7*i) S^+[a,j+1] S^-[a,j]/2 + exp(-0.7*i) S^+[b,j+1] S^-[b,j]/2 + h.c.", "S[a,j].S[b,j]"}},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			h := hamiltonian(t, c.rungs, ladder.Open, []ladder.Site{c.site, c.site}, c.terms...)
@@ -60,7 +64,7 @@ func TestRealModes(t *testing.T) {
 	}
 }
 
-func TestRealModesAreDeclined(t *testing.T) {
+func TestRewritingIsDeclined(t *testing.T) {
 	h := hamiltonian(t, 4, ladder.Open, []ladder.Site{ladder.Fermion(), ladder.Fermion()},
 		"-exp(0.4*i) c^+[a,j+1] c[a,j] - exp(-0.4*i) c^+[b,j+1] c[b,j] - 0.7 c^+[a,j] c[b,j] + h.c.")
 	first := ground1(t, h, ladder.Sector{"N": 3}, Options{})
