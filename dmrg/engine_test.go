@@ -31,7 +31,7 @@ func energyOf[T dense.Scalar](t testing.TB, e *engine[T]) float64 {
 // randomEngine stands on a random state of the middle of a chain.
 func randomEngine[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sector ladder.Sector, bond int) *engine[T] {
 	t.Helper()
-	p, err := newProblem(h, sector, Options{})
+	p, err := newProblem(h, sector, Options{Complex: dense.IsComplex[T]()})
 	require.NoError(t, err)
 	op, err := mpo.Build[T](p.strings, mpo.Options{})
 	require.NoError(t, err)

@@ -1,6 +1,8 @@
 package dmrg
 
 import (
+	"fmt"
+
 	"rundle/internal/dense"
 	"rundle/internal/task"
 	"rundle/mpo"
@@ -14,6 +16,7 @@ import (
 type rewriting interface {
 	// state takes a chain of the search, which it leaves alone, to the user's sites; the centre is at the last site.
 	state(c *mps.Chain[float64], pool *task.Pool) (*mps.Chain[complex128], error)
+	fmt.Stringer
 }
 
 // rewritten is what a problem in real form keeps of the user's.
@@ -21,6 +24,25 @@ type rewritten struct {
 	way    rewriting
 	frames *ladder.Frames // the user's, complex
 	scope  *ladder.Scope
+}
+
+// Approach is the form in which a search works on a Hamiltonian.
+type Approach struct {
+	Strings   *ladder.Strings // that its operator is built from
+	Rewritten string          // in what other modes or sites, for people; "": on the user's
+}
+
+// Approached tells how Ground would work on a problem, without a search.
+func Approached(h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (Approach, error) {
+	p, err := newProblem(h, sector, opt)
+	if err != nil {
+		return Approach{}, err
+	}
+	a := Approach{Strings: p.strings}
+	if p.rewritten != nil {
+		a.Rewritten = p.rewritten.way.String()
+	}
+	return a, nil
 }
 
 // complexCost is the operations of a complex product in those of a real one.
@@ -78,15 +100,22 @@ func (p *problem) cheaper(s *ladder.Strings) (bool, error) {
 	return after < before, err
 }
 
-// sweepCost counts the operations of a sweep, for equal bonds of the state everywhere: at each bond both bonds of the operator around the
-// two sites, times the states of both.
+// Operations of an update: so many products with the effective Hamiltonian, and a decomposition of so many times rows · columns · the
+// smaller of both.
+const (
+	updateProducts = 5
+	svdWork        = 10
+)
+
+// sweepCost counts the operations of a sweep, for equal bonds of the state everywhere and in units of their cube.
 func sweepCost[T dense.Scalar](s *ladder.Strings) (cost float64, err error) {
 	op, err := mpo.Build[T](s, mpo.Options{})
 	if err != nil {
 		return 0, err
 	}
 	for i := range len(s.Axes) - 1 {
-		cost += float64((op.Bonds[i].Dim() + op.Bonds[i+2].Dim()) * s.Axes[i].Dim() * s.Axes[i+1].Dim())
+		a, b := s.Axes[i].Dim(), s.Axes[i+1].Dim()
+		cost += float64(a * b * (2*updateProducts*(op.Bonds[i].Dim()+op.Bonds[i+2].Dim()) + svdWork*min(a, b)))
 	}
 	if dense.IsComplex[T]() {
 		cost *= complexCost
@@ -131,10 +160,18 @@ func (w *modesWay) state(c *mps.Chain[float64], pool *task.Pool) (*mps.Chain[com
 	return out, nil
 }
 
+func (w *modesWay) String() string {
+	return "in the modes (a + b)/sqrt2 and i (a - b)/sqrt2 of neighbouring legs a and b"
+}
+
 // mergedWay splits merged sites.
 type mergedWay struct {
 	merged *ladder.Merged
 	user   *ladder.Frames
+}
+
+func (w *mergedWay) String() string {
+	return "with the sites of neighbouring legs merged, in the even and odd states of each rung"
 }
 
 func (w *mergedWay) state(c *mps.Chain[float64], pool *task.Pool) (*mps.Chain[complex128], error) {

@@ -102,6 +102,9 @@ func chargeLines(e *solve.Explanation) string {
 }
 
 func arithmeticLine(e *solve.Explanation) string {
+	if e.Rewritten != "" {
+		return fmt.Sprintf("arithmetic: real, %s\n", e.Rewritten)
+	}
 	if e.Arithmetic == "real" {
 		return "arithmetic: real\n"
 	}

@@ -8,6 +8,7 @@ import (
 	"strconv"
 	"strings"
 
+	"rundle/dmrg"
 	"rundle/internal/dense"
 	"rundle/internal/modelfile"
 	"rundle/mpo"
@@ -35,7 +36,8 @@ type Explanation struct {
 	Charges      []ChargeFacts     `json:"charges"`
 	Undivided    bool              `json:"undivided,omitempty"` // more is conserved than the charges tell
 	Arithmetic   string            `json:"arithmetic"`
-	Loop         string            `json:"loop,omitempty"` // what forbids real arithmetic
+	Loop         string            `json:"loop,omitempty"`      // what forbids phases that make all terms real
+	Rewritten    string            `json:"rewritten,omitempty"` // in what form the search works all the same
 	Rotations    map[string]string `json:"rotations,omitempty"`
 	MPOBonds     []int             `json:"mpo_bonds"`
 	Forecast     []Forecast        `json:"forecast"`
@@ -244,7 +246,7 @@ func (e *Explanation) warnVanishing(m *modelfile.Model, o modelfile.Observation,
 
 // explainOperator builds the matrix-product operator and forecasts the cost.
 func (e *Explanation) explainOperator(m *modelfile.Model, t ladder.Target) error {
-	s, err := m.Frames.Strings(m.Hamiltonian.Poly)
+	a, err := dmrg.Approached(m.Hamiltonian, m.Sector, dmrg.Options{Charges: m.Solve.Charges})
 	if err != nil {
 		return err
 	}
@@ -252,12 +254,12 @@ func (e *Explanation) explainOperator(m *modelfile.Model, t ladder.Target) error
 	if len(totals) == 0 {
 		return refuse("%s: no state of the ladder lies in the sector", m.File)
 	}
-	e.Arithmetic = "complex"
-	if s.Real {
+	e.Arithmetic, e.Rewritten = "complex", a.Rewritten
+	if a.Strings.Real {
 		e.Arithmetic = "real"
-		return explainBonds[float64](e, m, s, totals[0])
+		return explainBonds[float64](e, m, a.Strings, totals[0])
 	}
-	return explainBonds[complex128](e, m, s, totals[0])
+	return explainBonds[complex128](e, m, a.Strings, totals[0])
 }
 
 func explainBonds[T dense.Scalar](e *Explanation, m *modelfile.Model, s *ladder.Strings, total block.Charge) error {

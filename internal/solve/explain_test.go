@@ -76,6 +76,35 @@ formula = "b[a,j]"
 	assert.Equal(t, "real", explained(t, fmt.Sprintf(flux, `"pi"`)).Arithmetic)
 }
 
+func TestExplainRewritten(t *testing.T) {
+	const flux = `
+[ladder]
+rungs = 6
+[[leg]]
+name = "a"
+site = "boson"
+max = %d
+[[leg]]
+name = "b"
+site = "boson"
+max = %[1]d
+[[term]]
+formula = "-exp(0.3*i) b^+[a,j+1] b[a,j] - exp(-0.3*i) b^+[b,j+1] b[b,j] - b^+[a,j] b[b,j] + h.c."
+[sector]
+N = 3
+`
+	e := explained(t, fmt.Sprintf(flux, 1))
+	assert.Equal(t, "real", e.Arithmetic)
+	assert.Contains(t, e.Rewritten, "merged")
+	assert.NotEmpty(t, e.Loop)
+	assert.Len(t, e.MPOBonds, 7)
+	// Sixteen states a rung cost more than complex numbers.
+	e = explained(t, fmt.Sprintf(flux, 3))
+	assert.Equal(t, "complex", e.Arithmetic)
+	assert.Empty(t, e.Rewritten)
+	assert.Len(t, e.MPOBonds, 13)
+}
+
 func TestExplainRotation(t *testing.T) {
 	e := explained(t, `
 [ladder]
