@@ -270,7 +270,7 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 		e.products++
 		e.count(h.Flops())
 	}
-	r := krylov.Lowest(apply, theta.Data, nil, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance}, &e.kry)
+	r := krylov.Lowest(apply, theta.Data, nil, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance, Pool: e.pool}, &e.kry)
 	if halted != nil {
 		return 0, halted
 	}

@@ -5,13 +5,16 @@ import (
 	"math"
 
 	"rundle/internal/dense"
+	"rundle/internal/task"
 )
 
 // Options bound the work of Lowest. The zero value means the defaults.
 type Options struct {
-	MaxVectors      int     // vectors of the Krylov space held at once; 0 means 32
-	MaxApplications int     // calls of apply in all; more than MaxVectors allows restarts from the best vector. 0 means MaxVectors
-	Tolerance       float64 // wanted norm of H x - value x, in units of H; 0 means 1e-12 of the largest value seen. Never below rounding
+	MaxVectors      int        // vectors of the Krylov space held at once; 0 means 32
+	MaxApplications int        // calls of apply in all; more than MaxVectors allows restarts from the best vector. 0 means MaxVectors
+	Tolerance       float64    // wanted norm of H x - value x, in units of H; 0 means 1e-12 of the largest value seen. Never below rounding
+	Gain            float64    // stop once the last application lowered the value by less than this, in units of H; 0: never
+	Pool            *task.Pool // shares the algebra of long vectors among its threads, to the same bits; nil: one thread
 }
 
 // Reason tells why Lowest stopped.
@@ -23,6 +26,7 @@ const (
 	Invariant                     // the Krylov space of the start is exhausted: the pair is the lowest in it
 	Exhausted                     // MaxApplications reached
 	ZeroStart                     // the start vector is zero, or is spanned by the vectors to stay orthogonal to; nothing was computed
+	SmallGain                     // the last application lowered the value by less than Options.Gain
 	NotFinite                     // the start or the operator gave NaN or Inf; x is not to be used
 )
 
@@ -36,6 +40,8 @@ func (r Reason) String() string {
 		return "exhausted"
 	case ZeroStart:
 		return "zero start"
+	case SmallGain:
+		return "small gain"
 	case NotFinite:
 		return "not finite"
 	}
@@ -83,6 +89,7 @@ func Lowest[T dense.Scalar](apply func(dst, src []T), x []T, against [][]T, opt 
 	if w == nil {
 		w = new(Workspace[T])
 	}
+	w.pool = opt.Pool
 	r := run[T]{apply: apply, against: against, opt: opt, w: w}
 	if reason, ok := r.start(x); !ok {
 		return Result{Value: math.NaN(), Residual: math.NaN(), Gap: math.NaN(), Stopped: reason}
@@ -107,6 +114,7 @@ type run[T dense.Scalar] struct {
 	w       *Workspace[T]
 
 	size   int     // vectors in the space
+	judged int     // size of the space that result.Value belongs to
 	scale  float64 // bound on the size of the projected H so far
 	result Result
 }
@@ -150,8 +158,7 @@ func (r *run[T]) expand(x []T) bool {
 		r.result.Applications++
 		r.size++
 		w.remove(r.against, next)
-		alpha := dense.Real(w.orthogonalize(w.vectors[:r.size], next))
-		beta := dense.Norm(next)
+		alpha, beta := w.orthogonalize(w.vectors[:r.size], next)
 		if !finite(alpha) || !finite(beta) {
 			return r.fail()
 		}
@@ -166,7 +173,7 @@ func (r *run[T]) expand(x []T) bool {
 		r.scale = max(r.scale, math.Abs(alpha)+left+beta)
 		exhausted := beta <= breakdown*r.scale || r.size >= rank
 		full := r.size == room
-		if exhausted || full || r.size <= 32 || r.size%8 == 0 {
+		if exhausted || full || r.size <= 32 || r.size%8 == 0 || r.opt.Gain > 0 {
 			if done := r.judge(beta, exhausted); done || full {
 				return done || r.result.Applications >= r.opt.MaxApplications
 			}
@@ -181,7 +188,8 @@ func (r *run[T]) judge(beta float64, exhausted bool) bool {
 	if err := dense.TridiagonalEigen(w.alpha[:m], w.beta[:m-1], w.values[:m], w.ritz[:m*m]); err != nil {
 		return r.fail()
 	}
-	r.result.Value = w.values[0]
+	gain, known := r.result.Value-w.values[0], m > 1 && r.judged == m-1
+	r.result.Value, r.judged = w.values[0], m
 	r.result.Residual = beta * math.Abs(w.ritz[(m-1)*m])
 	r.result.Gap = math.Inf(1)
 	if m > 1 {
@@ -196,6 +204,8 @@ func (r *run[T]) judge(beta float64, exhausted bool) bool {
 		r.result.Stopped = Invariant
 	case r.result.Residual <= max(tolerance, floor*r.scale):
 		r.result.Stopped = WithinTolerance
+	case known && gain < r.opt.Gain:
+		r.result.Stopped = SmallGain
 	default:
 		r.result.Stopped = Exhausted
 		return false
@@ -213,12 +223,12 @@ func (r *run[T]) fail() bool {
 // best writes the lowest vector of the space to x.
 func (r *run[T]) best(x []T) {
 	m := r.size
+	coef, _ := r.w.room(m)
 	for i := range m {
-		r.w.coef[i] = dense.FromFloat[T](r.w.ritz[i*m])
+		coef[i] = dense.FromFloat[T](r.w.ritz[i*m])
 	}
 	clear(x)
-	combine(r.w.coef[:m], r.w.vectors[:m], x)
-	divide(dense.Norm(x), x)
+	divide(norm(r.w.read(pass[T]{x: x, factors: coef, subtract: r.w.vectors[:m], norm: true}, nil), x), x)
 }
 
 func finite(x float64) bool { return !math.IsNaN(x) && !math.IsInf(x, 0) }

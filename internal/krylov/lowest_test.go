@@ -4,12 +4,14 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 
 	"rundle/internal/dense"
+	"rundle/internal/task"
 )
 
 // problem is a Hermitian matrix with its exact eigenpairs.
@@ -350,9 +352,55 @@ func (r *run[T]) expandFully(x []T, steps int) {
 		next := r.w.vector(r.size+1, len(x))
 		r.apply(next, r.w.vectors[r.size])
 		r.size++
-		r.w.orthogonalize(r.w.vectors[:r.size], next)
-		divide(dense.Norm(next), next)
+		_, beta := r.w.orthogonalize(r.w.vectors[:r.size], next)
+		divide(beta, next)
 	}
+}
+
+// TestLowestStopsAtSmallGain compares the value of each number of vectors with the next.
+func TestLowestStopsAtSmallGain(t *testing.T) {
+	rng := rand.New(rand.NewPCG(19, 20))
+	p := newProblem[complex128](t, rng, uniform(rng, 150))
+	start := make([]complex128, p.n)
+	dense.Random(rng, start)
+	value := func(opt Options) Result { return Lowest(p.apply, append([]complex128(nil), start...), nil, opt, nil) }
+	for _, gain := range []float64{1e-1, 1e-2, 1e-4, 1e-6} {
+		res := value(Options{Gain: gain, MaxVectors: 100})
+		assert.Equal(t, SmallGain, res.Stopped)
+		assert.False(t, res.Converged)
+		n := res.Applications
+		last, before, long := value(Options{MaxVectors: n}), value(Options{MaxVectors: n - 1}), value(Options{MaxVectors: n - 2})
+		assert.Equal(t, last.Value, res.Value)
+		assert.Less(t, before.Value-res.Value, gain)
+		assert.GreaterOrEqual(t, long.Value-before.Value, gain, "not one vector more than needed")
+	}
+}
+
+// TestLowestOnThreads wants the same bits from any number of threads, of vectors of several pieces.
+func TestLowestOnThreads(t *testing.T) {
+	const n = 400_000
+	rng := rand.New(rand.NewPCG(21, 22))
+	diagonal, start := make([]float64, n), make([]float64, n)
+	dense.Random(rng, diagonal)
+	dense.Random(rng, start)
+	apply := func(dst, src []float64) {
+		for i, d := range diagonal {
+			dst[i] = d * src[i]
+		}
+	}
+	want := append([]float64(nil), start...)
+	first := Lowest(apply, want, [][]float64{unit(n, 7)}, Options{MaxVectors: 6}, nil)
+	for _, threads := range []int{1, 2, 3} {
+		x := append([]float64(nil), start...)
+		assert.Equal(t, first, Lowest(apply, x, [][]float64{unit(n, 7)}, Options{MaxVectors: 6, Pool: task.New(threads)}, nil))
+		assert.True(t, slices.Equal(want, x), "%d threads", threads)
+	}
+}
+
+func unit(n, i int) []float64 {
+	x := make([]float64, n)
+	x[i] = 1
+	return x
 }
 
 func BenchmarkLowest(b *testing.B) {
