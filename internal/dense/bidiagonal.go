@@ -10,11 +10,11 @@ func bidiagonalPanel(n int) int {
 }
 
 // bidiagonalize reduces the m×n matrix a, m >= n, no padding, to a real upper bidiagonal B = Q^H A P with diagonal d (n) and
-// off-diagonal e (n-1 used). a is destroyed.
+// off-diagonal e (n-1 used). a is destroyed. It reports false if it was stopped.
 //
 // In a panel the matrix is A - V Y^H - X U^H with V and U the reflections of the columns and rows done so far. The rows of vx are
 // v_0^H, x_0^H, v_1^H, ..., those of yu y_0^H, u_0^H, ..., so that one product of a vector serves both terms.
-func bidiagonalize[T Scalar](m, n int, a []T, d, e []float64, q, p *reflectors[T], w *Workspace[T]) {
+func bidiagonalize[T Scalar](m, n int, a []T, d, e []float64, q, p *reflectors[T], w *Workspace[T]) bool {
 	defer w.release(w.mark())
 	q.reset(n, m, 0)
 	p.reset(max(0, n-1), n, 1)
@@ -25,6 +25,9 @@ func bidiagonalize[T Scalar](m, n int, a []T, d, e []float64, q, p *reflectors[T
 	x := bidiagonalPanelState[T]{m: m, n: n, a: a, vx: vx, yu: yu, q: q, p: p,
 		s: w.elems.take(2 * width), v: w.elems.take(m), u: w.elems.take(n), x: w.elems.take(m)}
 	for k := 0; k < n; k += width {
+		if w.stopped() {
+			return false
+		}
 		size := min(width, n-k)
 		clear(vx)
 		clear(yu)
@@ -41,6 +44,7 @@ func bidiagonalize[T Scalar](m, n int, a []T, d, e []float64, q, p *reflectors[T
 	}
 	q.close()
 	p.close()
+	return true
 }
 
 // bidiagonalPanelState is what bidiagonalize carries from column to column.

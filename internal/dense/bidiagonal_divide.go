@@ -25,9 +25,11 @@ type bidiagonalSVD struct {
 	chosen  []int        // roots that vectors was asked for
 }
 
-// factor decomposes the bidiagonal with diagonal d and off-diagonal e (len(d)-1 used). It reports false if a root is not found.
-func (b *bidiagonalSVD) factor(d, e []float64) bool {
+// factor decomposes the bidiagonal with diagonal d and off-diagonal e (len(d)-1 used). It reports false if a root is not found or, which
+// m.halted tells, stop said so.
+func (b *bidiagonalSVD) factor(d, e []float64, stop func() bool) bool {
 	n := len(d)
+	b.m.stop, b.m.halted = stop, false
 	b.n = n
 	b.d, b.e, b.z, b.values = resize(b.d, n), resize(b.e, n), resize(b.z, n), resize(b.values, n)
 	b.scale = normalize(d, e, b.d, b.e)
@@ -95,7 +97,9 @@ func (b *bidiagonalSVD) merge(lo, upper, below, wide int) bool {
 	}
 	b.collect(lo, upper, below, wide)
 	if size := upper + 1 + below; size < b.n {
-		b.multiply(lo, size, upper, wide)
+		if !b.multiply(lo, size, upper, wide) {
+			return false
+		}
 		b.m.finish(lo, b.values, b.index[lo:lo+size])
 	} else {
 		b.m.finish(0, b.values, b.index)
@@ -172,24 +176,31 @@ func (b *bidiagonalSVD) collect(lo, upper, below, wide int) {
 // zeroPlace is where pole 0 of the last merge is placed.
 func (b *bidiagonalSVD) zeroPlace(wide int) int { return wide * b.m.count[upperPart] }
 
-// multiply replaces the rows lo..lo+size-1 of left and right by the vectors of the merged problem.
-func (b *bidiagonalSVD) multiply(lo, size, upper, wide int) {
+// multiply replaces the rows lo..lo+size-1 of left and right by the vectors of the merged problem. It
+// reports false if it was stopped.
+func (b *bidiagonalSVD) multiply(lo, size, upper, wide int) bool {
 	m, n, k, zero := &b.m, b.n, len(b.m.poles), b.zeroPlace(wide)
 	b.c = resize(b.c, k*k)
 	m.coefficients(b.all[:k], b.c)
 	b.spare = m.settle(b.right, n, lo, size+wide, b.spare)
-	m.product(k, b.c, b.coupled[0], upper+1, size-upper-1+wide, b.right[lo*n+lo:], n, upper+1)
+	if !m.product(k, b.c, b.coupled[0], upper+1, size-upper-1+wide, b.right[lo*n+lo:], n, upper+1) {
+		return false
+	}
 
 	m.leftCoefficients(b.all[:k], zero, b.c)
 	b.spare = m.settle(b.left, n, lo, size, b.spare)
-	m.product(k, b.c, b.coupled[1], upper, size-upper-1, b.left[lo*n+lo:], n, upper+1)
+	if !m.product(k, b.c, b.coupled[1], upper, size-upper-1, b.left[lo*n+lo:], n, upper+1) {
+		return false
+	}
 	for i := range k {
 		b.left[(lo+i)*n+lo+upper] = b.c[i*k+zero]
 	}
+	return true
 }
 
-// vectors writes the singular vectors of the keep largest values to the rows of x (keep×n), the left ones or the right ones.
-func (b *bidiagonalSVD) vectors(keep int, left bool, x []float64) {
+// vectors writes the singular vectors of the keep largest values to the rows of x (keep×n), the left ones or the right ones. It
+// reports false if it was stopped.
+func (b *bidiagonalSVD) vectors(keep int, left bool, x []float64) bool {
 	m, n := &b.m, b.n
 	if n == 1 {
 		if left {
@@ -197,7 +208,7 @@ func (b *bidiagonalSVD) vectors(keep int, left bool, x []float64) {
 		} else {
 			x[0] = b.right[0]
 		}
-		return
+		return true
 	}
 	k, upper := len(m.poles), n/2
 	b.chosen = b.chosen[:0]
@@ -213,13 +224,17 @@ func (b *bidiagonalSVD) vectors(keep int, left bool, x []float64) {
 		old = b.left
 		zero := b.zeroPlace(0)
 		m.leftCoefficients(b.chosen, zero, b.c)
-		m.product(roots, b.c, b.coupled[1], upper, n-1-upper, b.spare, n, upper+1)
+		if !m.product(roots, b.c, b.coupled[1], upper, n-1-upper, b.spare, n, upper+1) {
+			return false
+		}
 		for i := range roots {
 			b.spare[i*n+upper] = b.c[i*k+zero]
 		}
 	} else {
 		m.coefficients(b.chosen, b.c)
-		m.product(roots, b.c, b.coupled[0], upper+1, n-1-upper, b.spare, n, upper+1)
+		if !m.product(roots, b.c, b.coupled[0], upper+1, n-1-upper, b.spare, n, upper+1) {
+			return false
+		}
 	}
 	next := b.spare
 	for at := range keep {
@@ -231,4 +246,5 @@ func (b *bidiagonalSVD) vectors(keep int, left bool, x []float64) {
 			copy(row, old[m.gone[i-k]*n:])
 		}
 	}
+	return true
 }

@@ -72,7 +72,7 @@ func TestBidiagonalSVD(t *testing.T) {
 		for _, n := range []int{1, 2, 3, 4, 5, 7, 8, 15, 16, 17, 33, 64, 90} {
 			name := fmt.Sprintf("%s n=%d", row.name, n)
 			d, e := band(row.name, n, row.f)
-			require.True(t, b.factor(d, e), name)
+			require.True(t, b.factor(d, e, nil), name)
 			values, left, right := make([]float64, n), make([]float64, n*n), make([]float64, n*n)
 			b.sorted(values)
 			b.vectors(n, true, left)
@@ -108,7 +108,7 @@ func TestTridiagonalDivide(t *testing.T) {
 		for _, n := range []int{1, 2, 3, 4, 5, 7, 8, 15, 16, 17, 33, 64, 90} {
 			name := fmt.Sprintf("%s n=%d", row.name, n)
 			d, e := band(row.name, n, row.f)
-			require.True(t, b.factor(d, e), name)
+			require.True(t, b.factor(d, e, nil), name)
 			values, rows := make([]float64, n), make([]float64, n*n)
 			b.sorted(values)
 			b.vectors(0, 1, n, rows)

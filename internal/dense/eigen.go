@@ -13,6 +13,8 @@ const eigenRoutine = "Hermitian eigenvalues"
 // The way: blocked Householder reduction to a real tridiagonal, also for complex A (Dongarra, Sorensen, Hammarling 1989); divide and
 // conquer on that; the reflections are applied only to the vectors that are asked for.
 type Hermitian[T Scalar] struct {
+	Stop func() bool // as that of a Workspace
+
 	hermitian[T]
 	w Workspace[T]
 }
@@ -26,24 +28,29 @@ type hermitian[T Scalar] struct {
 }
 
 // Factor decomposes the n×n matrix whose upper triangle a holds (of the diagonal the real part counts). a is not modified. The error
-// is a *NumericalError: A holds NaN or Inf, or the iteration does not converge (never seen).
-func (f *Hermitian[T]) Factor(n int, a []T, lda int) error { return f.factor(n, a, lda, &f.w) }
+// is a *NumericalError, A holds NaN or Inf, or the iteration does not converge (never seen), or ErrStopped.
+func (f *Hermitian[T]) Factor(n int, a []T, lda int) error {
+	f.w.Stop = f.Stop
+	return f.factor(n, a, lda, &f.w)
+}
 
 // Values returns the eigenvalues, ascending. The slice belongs to f and is valid until the next Factor.
 func (f *Hermitian[T]) Values() []float64 { return f.values }
 
-// Largest writes the eigenvectors of the keep largest eigenvalues, the largest first, to the columns of v (n×keep).
-func (f *Hermitian[T]) Largest(keep int, v []T, ldv int) {
+// Largest writes the eigenvectors of the keep largest eigenvalues, the largest first, to the columns of v (n×keep). The
+// error is ErrStopped; without a Stop there is none.
+func (f *Hermitian[T]) Largest(keep int, v []T, ldv int) error {
 	if keep < 0 || keep > f.n {
 		panic(fmt.Sprintf("dense: %d eigenvectors asked of a %d×%d matrix", keep, f.n, f.n))
 	}
 	matrix("V", f.n, keep, ldv, len(v))
-	f.vectors(f.n-1, -1, keep, v, ldv, &f.w)
+	f.w.Stop = f.Stop
+	return f.vectors(f.n-1, -1, keep, v, ldv, &f.w)
 }
 
 // Eigen computes the eigenvalues, ascending, of the n×n Hermitian matrix A and writes the eigenvectors to the columns of v. It reads
 // the upper triangle of A (of the diagonal the real part) and does not modify A; v must not overlap it. The error is a
-// *NumericalError. A Hermitian object serves who needs only some of the vectors.
+// *NumericalError or ErrStopped. A Hermitian object serves who needs only some of the vectors.
 func Eigen[T Scalar](n int, a []T, lda int, values []float64, v []T, ldv int, w *Workspace[T]) error {
 	matrix("V", n, n, ldv, len(v))
 	if len(values) != n {
@@ -54,8 +61,7 @@ func Eigen[T Scalar](n int, a []T, lda int, values []float64, v []T, ldv int, w 
 		return err
 	}
 	copy(values, w.eigen.values)
-	w.eigen.vectors(0, 1, n, v, ldv, w)
-	return nil
+	return w.eigen.vectors(0, 1, n, v, ldv, w)
 }
 
 func (f *hermitian[T]) factor(n int, a []T, lda int, w *Workspace[T]) error {
@@ -77,8 +83,13 @@ func (f *hermitian[T]) factor(n int, a []T, lda int, w *Workspace[T]) error {
 		}
 	}
 	d, e := w.reals.take(n), w.reals.take(n)
-	tridiagonalize(n, s, d, e, &f.q, w)
-	if !f.t.factor(d, e) {
+	if !tridiagonalize(n, s, d, e, &f.q, w) {
+		return ErrStopped
+	}
+	if !f.t.factor(d, e, w.Stop) {
+		if f.t.m.halted {
+			return ErrStopped
+		}
 		return &NumericalError{eigenRoutine, n, n, "the iteration did not converge"}
 	}
 	f.n, f.values = n, resize(f.values, n)
@@ -92,17 +103,23 @@ func (f *hermitian[T]) factor(n int, a []T, lda int, w *Workspace[T]) error {
 }
 
 // vectors writes eigenvectors first, first+step, ... to the keep columns of v.
-func (f *hermitian[T]) vectors(first, step, keep int, v []T, ldv int, w *Workspace[T]) {
+func (f *hermitian[T]) vectors(first, step, keep int, v []T, ldv int, w *Workspace[T]) error {
 	if keep == 0 {
-		return
+		return nil
 	}
 	defer w.release(w.mark())
 	n := f.n
 	x, vh := w.reals.take(keep*n), w.elems.take(keep*n)
-	f.t.vectors(first, step, keep, x)
+	f.t.m.stop, f.t.m.halted = w.Stop, false
+	if !f.t.vectors(first, step, keep, x) {
+		return ErrStopped
+	}
 	widenColumn(vh, x, 1)
-	f.q.applyAdjoint(keep, vh, n, w)
+	if !f.q.applyAdjoint(keep, vh, n, w) {
+		return ErrStopped
+	}
 	adjoint(keep, n, vh, n, v, ldv)
+	return nil
 }
 
 // fillStrips copies what tridiagonalize reads of the Hermitian matrix whose upper triangle a holds, and returns the largest entry.
@@ -137,7 +154,7 @@ func TridiagonalEigen(d, e []float64, values, v []float64) error {
 	}
 	b := tridiagonalPool.Get().(*tridiagonalEigen)
 	defer tridiagonalPool.Put(b)
-	if !b.factor(d, e) {
+	if !b.factor(d, e, nil) {
 		return &NumericalError{eigenRoutine, n, n, "the iteration did not converge"}
 	}
 	b.sorted(values)

@@ -1,9 +1,13 @@
 package dense
 
 import (
+	"errors"
 	"fmt"
 	"math"
 )
+
+// ErrStopped tells that a factorization ended early because Stop of its workspace said so.
+var ErrStopped = errors.New("the factorization was stopped")
 
 // NumericalError tells that a factorization has no result. Callers wrap it with the place (which bond, which block).
 type NumericalError struct {

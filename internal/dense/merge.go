@@ -210,16 +210,24 @@ func (m *merge) collect(x []float64, n, from, head, tail, at int, out []float64)
 	return out
 }
 
-// product multiplies the rows of coefficients c by what collect copied: head columns to out, tail columns to out from column at on.
-func (m *merge) product(rows int, c, collected []float64, head, tail int, out []float64, ldo, at int) {
+// productRows is the number of rows that are multiplied between two questions whether to stop.
+const productRows = 512
+
+// product multiplies the rows of coefficients c by what collect copied: head columns to out, tail columns to out from column at on. It
+// reports false if stopped by stop.
+func (m *merge) product(rows int, c, collected []float64, head, tail int, out []float64, ldo, at int) bool {
 	k, first, split := len(m.place), m.count[upperPart]+m.count[bothParts], m.count[upperPart]
-	if rows == 0 {
-		return
+	for from := 0; from < rows; from += productRows {
+		if from > 0 && m.stopped() {
+			return false
+		}
+		some, c, out := min(productRows, rows-from), c[from*k:], out[from*ldo:]
+		Gemm(NoTrans, NoTrans, some, head, first, 1, c, k, collected, head, 0, out, ldo)
+		if tail > 0 {
+			Gemm(NoTrans, NoTrans, some, tail, k-split, 1, c[split:], k, collected[first*head:], tail, 0, out[at:], ldo)
+		}
 	}
-	Gemm(NoTrans, NoTrans, rows, head, first, 1, c, k, collected, head, 0, out, ldo)
-	if tail > 0 {
-		Gemm(NoTrans, NoTrans, rows, tail, k-split, 1, c[split:], k, collected[first*head:], tail, 0, out[at:], ldo)
-	}
+	return true
 }
 
 // settle moves the deflated rows of x to the places after those of the roots; width columns from lo on matter.

@@ -9,7 +9,8 @@ import (
 // real, not negative and falls: its first numbers show the rank of A, but for artificial examples (Businger, Golub 1965). It stops when
 // no column left is longer than tolerance times the longest column of A and returns the number of steps, the rank; zero goes on to the
 // end. Columns of Q (m×min(m,n)) and rows of R (min(m,n)×n) beyond the rank are zero; Q R is then off by at most tolerance times
-// that length in each column. A is not modified and must not overlap Q or R. The error is a *NumericalError: A holds NaN or Inf.
+// that length in each column. A is not modified and must not overlap Q or R. The error is a *NumericalError, A holds NaN or Inf,
+// or ErrStopped.
 func PivotedQR[T Scalar](m, n int, a []T, lda int, q []T, ldq int, r []T, ldr int, pivot []int, tolerance float64, w *Workspace[T]) (rank int, err error) {
 	k := min(m, n)
 	matrix("A", m, n, lda, len(a))
@@ -34,13 +35,18 @@ func PivotedQR[T Scalar](m, n int, a []T, lda int, q []T, ldq int, r []T, ldr in
 	scale := safeScale(top)
 	copyMatrix(n, m, scale, p.x, m, p.x, m)
 	clear(p.l)
-	rank = p.factor(tolerance)
+	rank, ok := p.factor(tolerance, w)
+	if !ok {
+		return 0, ErrStopped
+	}
 
 	qh := w.elems.take(k * m)
 	clear(qh)
 	if rank > 0 {
 		p.h.close()
-		p.h.formAdjoint(qh, m, w)
+		if !p.h.formAdjoint(qh, m, w) {
+			return 0, ErrStopped
+		}
 	}
 	for j := range rank {
 		s := 1.0
@@ -76,8 +82,8 @@ type pivoting[T Scalar] struct {
 	sure    []float64 // the same when last computed in full
 }
 
-// factor returns the number of reflections.
-func (p *pivoting[T]) factor(tolerance float64) int {
+// factor returns the number of reflections, and false if it was stopped.
+func (p *pivoting[T]) factor(tolerance float64, w *Workspace[T]) (rank int, ok bool) {
 	p.h.reset(p.k, p.m, 0)
 	clear(p.h.rows)
 	longest := 0.0
@@ -87,6 +93,9 @@ func (p *pivoting[T]) factor(tolerance float64) int {
 		longest = max(longest, p.norms[i])
 	}
 	for k := 0; k < p.k; {
+		if w.stopped() {
+			return 0, false
+		}
 		done, stop := p.panel(k, tolerance*longest)
 		next := k + done
 		if rest := p.n - next; rest > 0 && done > 0 && next < p.m {
@@ -94,7 +103,7 @@ func (p *pivoting[T]) factor(tolerance float64) int {
 		}
 		if stop {
 			p.h.count = next
-			return next
+			return next, true
 		}
 		for i := next; i < p.n; i++ {
 			if p.norms[i] < 0 { // too much has cancelled
@@ -104,7 +113,7 @@ func (p *pivoting[T]) factor(tolerance float64) int {
 		}
 		k = next
 	}
-	return p.k
+	return p.k, true
 }
 
 // panel makes reflections from k on until the panel is full or the length of a row has to be computed anew, which is marked by -1. It

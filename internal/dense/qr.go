@@ -2,50 +2,54 @@ package dense
 
 // QR writes A = Q R for the m×n matrix A, k = min(m, n): Q (m×k) has orthonormal columns, R (k×n) is zero below a diagonal that is
 // real and not negative, which makes the pair unique when A has full rank. A is not modified and must not overlap Q or R. An A that
-// holds NaN or Inf gives factors that do.
-func QR[T Scalar](m, n int, a []T, lda int, q []T, ldq int, r []T, ldr int, w *Workspace[T]) {
+// holds NaN or Inf gives factors that do. The error is ErrStopped; without a Stop there is none.
+func QR[T Scalar](m, n int, a []T, lda int, q []T, ldq int, r []T, ldr int, w *Workspace[T]) error {
 	k := min(m, n)
 	matrix("A", m, n, lda, len(a))
 	matrix("Q", m, k, ldq, len(q))
 	matrix("R", k, n, ldr, len(r))
 	if k == 0 {
-		return
+		return nil
 	}
 	w = orNew(w)
 	defer w.release(w.mark())
 	ah, lh, qh := w.elems.take(m*n), w.elems.take(n*k), w.elems.take(k*m)
 	adjoint(m, n, a, lda, ah, m)
-	w.lq(n, m, ah, lh, k, qh, m)
+	if err := w.lq(n, m, ah, lh, k, qh, m); err != nil {
+		return err
+	}
 	adjoint(k, m, qh, m, q, ldq)
 	adjoint(n, k, lh, k, r, ldr)
+	return nil
 }
 
 // LQ writes A = L Q for the m×n matrix A, k = min(m, n): L (m×k) is zero above a real, not negative diagonal and Q (k×n) has
 // orthonormal rows. Otherwise as QR.
-func LQ[T Scalar](m, n int, a []T, lda int, l []T, ldl int, q []T, ldq int, w *Workspace[T]) {
+func LQ[T Scalar](m, n int, a []T, lda int, l []T, ldl int, q []T, ldq int, w *Workspace[T]) error {
 	k := min(m, n)
 	matrix("A", m, n, lda, len(a))
 	matrix("L", m, k, ldl, len(l))
 	matrix("Q", k, n, ldq, len(q))
 	if k == 0 {
-		return
+		return nil
 	}
 	w = orNew(w)
 	defer w.release(w.mark())
 	f := w.elems.take(m * n)
 	copyMatrix(m, n, 1, a, lda, f, n)
-	w.lq(m, n, f, l, ldl, q, ldq)
+	return w.lq(m, n, f, l, ldl, q, ldq)
 }
 
 // lq factors the m×n matrix f, no padding, which it destroys.
-func (w *Workspace[T]) lq(m, n int, f []T, l []T, ldl int, q []T, ldq int) {
+func (w *Workspace[T]) lq(m, n int, f []T, l []T, ldl int, q []T, ldq int) error {
 	k, h := min(m, n), &w.rows
 	s := safeScale(largest(m, n, f, n))
 	if s != 1 {
 		copyMatrix(m, n, s, f, n, f, n)
 	}
-	h.factor(m, n, f, l, ldl, w)
-	h.formAdjoint(q, ldq, w)
+	if !h.factor(m, n, f, l, ldl, w) || !h.formAdjoint(q, ldq, w) {
+		return ErrStopped
+	}
 	one := FromFloat[T](1)
 	for j := range k {
 		scale := one
@@ -59,16 +63,21 @@ func (w *Workspace[T]) lq(m, n int, f []T, l []T, ldl int, q []T, ldq int) {
 			}
 		}
 	}
+	return nil
 }
 
-// factor reduces the m×n matrix A, no padding, to A P = L with L (m×k) lower trapezoidal, k = min(m, n); h becomes P. A is destroyed.
-func (h *reflectors[T]) factor(m, n int, a []T, l []T, ldl int, w *Workspace[T]) {
+// factor reduces the m×n matrix A, no padding, to A P = L with L (m×k) lower trapezoidal, k = min(m, n); h becomes P. A is destroyed. It
+// reports false if it was stopped.
+func (h *reflectors[T]) factor(m, n int, a []T, l []T, ldl int, w *Workspace[T]) bool {
 	k := min(m, n)
 	h.reset(k, n, 0)
 	defer w.release(w.mark())
 	work := w.elems.take(2 * m * max(h.width, 1))
 	copy(h.rows, a[:k*n])
 	for i := 0; i < k; i += h.width {
+		if w.stopped() {
+			return false
+		}
 		size := min(h.width, k-i)
 		h.panel(i, i, size, l, ldl, work)
 		end := i + size
@@ -84,6 +93,7 @@ func (h *reflectors[T]) factor(m, n int, a []T, l []T, ldl int, w *Workspace[T])
 			}
 		}
 	}
+	return true
 }
 
 // harvest moves the finished columns i..i+size-1 of the rows from..to-1 to L and clears them.

@@ -70,21 +70,25 @@ func applyRight[T Scalar](op Op, m, n, length int, rows []T, ld int, t []T, ldt 
 	Gemm(NoTrans, NoTrans, m, length, n, FromFloat[T](-1), y, n, rows, ld, 1, c, ldc)
 }
 
-// applyAdjoint replaces C (m×length) by C Q^H.
-func (h *reflectors[T]) applyAdjoint(m int, c []T, ldc int, w *Workspace[T]) {
+// applyAdjoint replaces C (m×length) by C Q^H. It reports false if it was stopped.
+func (h *reflectors[T]) applyAdjoint(m int, c []T, ldc int, w *Workspace[T]) bool {
 	if h.count == 0 {
-		return
+		return true
 	}
 	defer w.release(w.mark())
 	work := w.elems.take(2 * m * h.width)
 	for i := (h.count - 1) / h.width * h.width; i >= 0; i -= h.width {
+		if w.stopped() {
+			return false
+		}
 		n, from := min(h.width, h.count-i), i+h.shift
 		applyRight(ConjTrans, m, n, h.length-from, h.rows[i*h.length+from:], h.length, h.block(i), h.width, c[from:], ldc, work)
 	}
+	return true
 }
 
-// formAdjoint writes the first k rows of Q^H to q, k = count.
-func (h *reflectors[T]) formAdjoint(q []T, ldq int, w *Workspace[T]) {
+// formAdjoint writes the first k rows of Q^H to q, k = count. It reports false if it was stopped.
+func (h *reflectors[T]) formAdjoint(q []T, ldq int, w *Workspace[T]) bool {
 	defer w.release(w.mark())
 	work := w.elems.take(2 * h.count * h.width)
 	for i := range h.count {
@@ -92,7 +96,11 @@ func (h *reflectors[T]) formAdjoint(q []T, ldq int, w *Workspace[T]) {
 		q[i*ldq+i] = FromFloat[T](1)
 	}
 	for i := (h.count - 1) / h.width * h.width; i >= 0; i -= h.width {
+		if w.stopped() {
+			return false
+		}
 		n, from := min(h.width, h.count-i), i+h.shift
 		applyRight(ConjTrans, h.count-i, n, h.length-from, h.rows[i*h.length+from:], h.length, h.block(i), h.width, q[i*ldq+from:], ldq, work)
 	}
+	return true
 }

@@ -14,6 +14,18 @@ type secular struct {
 	origin  []int
 	offset  []float64
 	squared bool
+
+	stop   func() bool // nil: never
+	halted bool        // stop said so
+}
+
+// rootsBetween is the number of roots found between two questions whether to stop.
+const rootsBetween = 64
+
+// stopped asks stop and keeps a yes.
+func (s *secular) stopped() bool {
+	s.halted = s.halted || (s.stop != nil && s.stop())
+	return s.halted
 }
 
 // secularSteps bounds the iterations for one root; five are usual.
@@ -44,13 +56,16 @@ func (s *secular) step(pole, t, h float64) float64 {
 	return t + h/(w+math.Sqrt(square))
 }
 
-// solve finds all roots. It reports false if one does not converge.
+// solve finds all roots. It reports false if one does not converge, or stopped by stop.
 func (s *secular) solve() bool {
 	norm := 0.0
 	for _, z := range s.z {
 		norm += z * z
 	}
 	for i := range s.d {
+		if i%rootsBetween == rootsBetween-1 && s.stopped() {
+			return false
+		}
 		var ok bool
 		if i+1 < len(s.d) {
 			ok = s.inner(i)

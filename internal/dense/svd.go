@@ -15,6 +15,8 @@ const tallRatio = 1.6
 // also for complex A (Dongarra, Sorensen, Hammarling 1989); divide and conquer on B; Q and P are applied only to the vectors that are
 // asked for.
 type SVD[T Scalar] struct {
+	Stop func() bool // as that of a Workspace
+
 	m, n   int  // A
 	wide   bool // m < n: the fields below are those of A^H
 	tall   bool // QR came first
@@ -31,8 +33,8 @@ type SVD[T Scalar] struct {
 	w           Workspace[T]
 }
 
-// Factor decomposes the m×n matrix A, which is not modified. The error is a *NumericalError: A holds NaN or Inf, or the iteration
-// does not converge (never seen).
+// Factor decomposes the m×n matrix A, which is not modified. The error is a *NumericalError, A holds NaN or Inf, or the iteration
+// does not converge (never seen), or ErrStopped.
 func (f *SVD[T]) Factor(m, n int, a []T, lda int) error {
 	matrix("A", m, n, lda, len(a))
 	f.m, f.n = m, n
@@ -48,10 +50,13 @@ func (f *SVD[T]) Factor(m, n int, a []T, lda int) error {
 		return err
 	}
 	s := safeScale(top)
-	f.direct = useNetlib() && f.factorNetlib(s, a, lda)
-	if !f.direct && !f.factorGo(s, a, lda) {
-		f.m, f.n, f.cols, f.values = 0, 0, 0, f.values[:0]
-		return &NumericalError{svdRoutine, m, n, "the iteration did not converge"}
+	f.w.Stop = f.Stop
+	f.direct = useNetlib() && !f.w.stopped() && f.factorNetlib(s, a, lda)
+	if !f.direct {
+		if err := f.factorGo(s, a, lda); err != nil {
+			f.m, f.n, f.cols, f.values = 0, 0, 0, f.values[:0]
+			return err
+		}
 	}
 	if s != 1 {
 		for i := range f.values {
@@ -68,7 +73,7 @@ func (f *SVD[T]) factorNetlib(s float64, a []T, lda int) bool {
 	return netlibSVD(f.m, f.n, f.f, f.values, f.u, f.vh)
 }
 
-func (f *SVD[T]) factorGo(s float64, a []T, lda int) bool {
+func (f *SVD[T]) factorGo(s float64, a []T, lda int) error {
 	rows, cols := max(f.m, f.n), f.cols
 	defer f.w.release(f.w.mark())
 	f.tall = float64(rows) > tallRatio*float64(cols)
@@ -85,83 +90,102 @@ func (f *SVD[T]) factorGo(s float64, a []T, lda int) bool {
 	if f.tall {
 		// x is the adjoint, cols×rows: its L is the adjoint of R.
 		l := f.w.elems.take(cols * cols)
-		f.outer.factor(cols, rows, x, l, cols, &f.w)
+		if !f.outer.factor(cols, rows, x, l, cols, &f.w) {
+			return ErrStopped
+		}
 		f.rows, x = cols, x[:cols*cols]
 		adjoint(cols, cols, l, cols, x, cols)
 	}
 	d, e := f.w.reals.take(cols), f.w.reals.take(cols)
-	bidiagonalize(f.rows, cols, x, d, e, &f.left, &f.right, &f.w)
-	if !f.b.factor(d, e) {
-		return false
+	if !bidiagonalize(f.rows, cols, x, d, e, &f.left, &f.right, &f.w) {
+		return ErrStopped
+	}
+	if !f.b.factor(d, e, f.w.Stop) {
+		if f.b.m.halted {
+			return ErrStopped
+		}
+		return &NumericalError{svdRoutine, f.m, f.n, "the iteration did not converge"}
 	}
 	f.b.sorted(f.values)
-	return true
+	return nil
 }
 
 // Values returns the min(m, n) singular values, decreasing. The slice belongs to f and is valid until the next Factor.
 func (f *SVD[T]) Values() []float64 { return f.values }
 
-// Vectors writes the first keep columns of U to u (m×keep) and the first keep rows of V^H to vh (keep×n).
-func (f *SVD[T]) Vectors(keep int, u []T, ldu int, vh []T, ldvh int) {
+// Vectors writes the first keep columns of U to u (m×keep) and the first keep rows of V^H to vh (keep×n). The error is ErrStopped;
+// without a Stop there is none.
+func (f *SVD[T]) Vectors(keep int, u []T, ldu int, vh []T, ldvh int) error {
 	if keep < 0 || keep > f.cols {
 		panic(fmt.Sprintf("dense: %d singular vectors asked of a %d×%d matrix", keep, f.m, f.n))
 	}
 	matrix("U", f.m, keep, ldu, len(u))
 	matrix("V^H", keep, f.n, ldvh, len(vh))
 	if keep == 0 {
-		return
+		return nil
 	}
+	f.w.Stop, f.b.m.stop, f.b.m.halted = f.Stop, f.Stop, false
+	done := true
 	switch {
 	case f.direct:
 		copyMatrix(f.m, keep, 1, f.u, f.cols, u, ldu)
 		copyMatrix(keep, f.n, 1, f.vh, f.n, vh, ldvh)
 	case f.wide:
-		f.leftVectors(keep, vh, ldvh)
-		f.rightVectors(keep, u, ldu, true)
+		done = f.leftVectors(keep, vh, ldvh) && f.rightVectors(keep, u, ldu, true)
 	default:
 		defer f.w.release(f.w.mark())
 		uh := f.w.elems.take(keep * f.m)
-		f.leftVectors(keep, uh, f.m)
-		adjoint(keep, f.m, uh, f.m, u, ldu)
-		f.rightVectors(keep, vh, ldvh, false)
+		if done = f.leftVectors(keep, uh, f.m); done {
+			adjoint(keep, f.m, uh, f.m, u, ldu)
+			done = f.rightVectors(keep, vh, ldvh, false)
+		}
 	}
+	if !done {
+		return ErrStopped
+	}
+	return nil
 }
 
-// leftVectors writes the conjugate transposes of the first keep left singular vectors of the tall form of A.
-func (f *SVD[T]) leftVectors(keep int, uh []T, ldu int) {
-	f.widen(keep, true, uh, ldu)
+// leftVectors writes the conjugate transposes of the first keep left singular vectors of the tall form of A. It reports false if it was
+// stopped, as rightVectors does.
+func (f *SVD[T]) leftVectors(keep int, uh []T, ldu int) bool {
+	if !f.widen(keep, true, uh, ldu) {
+		return false
+	}
 	rows := max(f.m, f.n)
 	for i := range keep {
 		clear(uh[i*ldu+f.cols : i*ldu+rows])
 	}
-	f.left.applyAdjoint(keep, uh, ldu, &f.w)
-	if f.tall {
-		f.outer.applyAdjoint(keep, uh, ldu, &f.w)
-	}
+	return f.left.applyAdjoint(keep, uh, ldu, &f.w) && (!f.tall || f.outer.applyAdjoint(keep, uh, ldu, &f.w))
 }
 
 // rightVectors writes the conjugate transposes of the first keep right singular vectors of the tall form of A, or the vectors.
-func (f *SVD[T]) rightVectors(keep int, v []T, ldv int, columns bool) {
+func (f *SVD[T]) rightVectors(keep int, v []T, ldv int, columns bool) bool {
 	vh, ldvh := v, ldv
 	if columns {
 		defer f.w.release(f.w.mark())
 		vh, ldvh = f.w.elems.take(keep*f.cols), f.cols
 	}
-	f.widen(keep, false, vh, ldvh)
-	f.right.applyAdjoint(keep, vh, ldvh, &f.w)
+	if !f.widen(keep, false, vh, ldvh) || !f.right.applyAdjoint(keep, vh, ldvh, &f.w) {
+		return false
+	}
 	if columns {
 		adjoint(keep, f.cols, vh, ldvh, v, ldv)
 	}
+	return true
 }
 
-// widen writes the first keep singular vectors of B to the rows of x.
-func (f *SVD[T]) widen(keep int, left bool, x []T, ldx int) {
+// widen writes the first keep singular vectors of B to the rows of x. It reports false if it was stopped.
+func (f *SVD[T]) widen(keep int, left bool, x []T, ldx int) bool {
 	defer f.w.release(f.w.mark())
 	y := f.w.reals.take(keep * f.cols)
-	f.b.vectors(keep, left, y)
+	if !f.b.vectors(keep, left, y) {
+		return false
+	}
 	for i := range keep {
 		widenColumn(x[i*ldx:i*ldx+f.cols], y[i*f.cols:], 1)
 	}
+	return true
 }
 
 // widenColumn sets dst[i] = src[i*step].

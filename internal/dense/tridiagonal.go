@@ -23,8 +23,9 @@ type tridiagonal[T Scalar] struct {
 }
 
 // tridiagonalize reduces the n×n Hermitian matrix a, no padding, to a real tridiagonal Q^H A Q with diagonal d (n) and off-diagonal e
-// (n-1 used). a is destroyed; of entries below the diagonal only those from the start of the strip on are read.
-func tridiagonalize[T Scalar](n int, a []T, d, e []float64, q *reflectors[T], w *Workspace[T]) {
+// (n-1 used). a is destroyed; of entries below the diagonal only those from the start of the strip on are read. It reports false if
+// it was stopped.
+func tridiagonalize[T Scalar](n int, a []T, d, e []float64, q *reflectors[T], w *Workspace[T]) bool {
 	defer w.release(w.mark())
 	q.reset(max(0, n-1), n, 1)
 	clear(q.rows)
@@ -32,6 +33,9 @@ func tridiagonalize[T Scalar](n int, a []T, d, e []float64, q *reflectors[T], w 
 	x := tridiagonal[T]{n: n, a: a, vw: w.elems.take(2 * width * n), wv: w.elems.take(2 * width * n), q: q,
 		s: w.elems.take(2 * width), v: w.elems.take(n), y: w.elems.take(n)}
 	for k := 0; k < n; k += width {
+		if w.stopped() {
+			return false
+		}
 		size := min(width, n-k)
 		clear(x.vw)
 		clear(x.wv)
@@ -41,6 +45,7 @@ func tridiagonalize[T Scalar](n int, a []T, d, e []float64, q *reflectors[T], w 
 		x.update(k+size, 2*size)
 	}
 	q.close()
+	return true
 }
 
 // update subtracts the panel from the strips of the rows from `from` on.

@@ -22,9 +22,11 @@ type tridiagonalEigen struct {
 	y       []float64 // of TridiagonalEigen
 }
 
-// factor decomposes the matrix with diagonal d and off-diagonal e (len(d)-1 used). It reports false if a root is not found.
-func (b *tridiagonalEigen) factor(d, e []float64) bool {
+// factor decomposes the matrix with diagonal d and off-diagonal e (len(d)-1 used). It reports false if a root is not found or, which
+// m.halted tells, stop said so.
+func (b *tridiagonalEigen) factor(d, e []float64, stop func() bool) bool {
 	n := len(d)
+	b.m.stop, b.m.halted = stop, false
 	b.n = n
 	b.d, b.e, b.z, b.values = resize(b.d, n), resize(b.e, n), resize(b.z, n), resize(b.values, n)
 	b.scale = normalize(d, e, b.d, b.e)
@@ -67,7 +69,9 @@ func (b *tridiagonalEigen) merge(lo, size int) bool {
 		b.c = resize(b.c, k*k)
 		m.coefficients(b.all[:k], b.c)
 		b.spare = m.settle(b.rows, b.n, lo, size, b.spare)
-		m.product(k, b.c, b.coupled, mid-lo, lo+size-mid, b.rows[lo*b.n+lo:], b.n, mid-lo)
+		if !m.product(k, b.c, b.coupled, mid-lo, lo+size-mid, b.rows[lo*b.n+lo:], b.n, mid-lo) {
+			return false
+		}
 	}
 	m.finish(lo, b.values, b.index[lo:lo+size])
 	return true
@@ -125,12 +129,12 @@ func (b *tridiagonalEigen) deflate(lo, mid, end int) {
 }
 
 // vectors writes the eigenvectors number first, first+1, ... or, backwards, first, first-1, ... in increasing order of their values,
-// to the keep rows of x (keep×n).
-func (b *tridiagonalEigen) vectors(first, step, keep int, x []float64) {
+// to the keep rows of x (keep×n). It reports false if it was stopped.
+func (b *tridiagonalEigen) vectors(first, step, keep int, x []float64) bool {
 	m, n := &b.m, b.n
 	if n == 1 {
 		x[0] = b.rows[0]
-		return
+		return true
 	}
 	k, mid := len(m.poles), n/2
 	b.chosen = b.chosen[:0]
@@ -142,7 +146,9 @@ func (b *tridiagonalEigen) vectors(first, step, keep int, x []float64) {
 	roots := len(b.chosen)
 	b.c, b.spare = resize(b.c, roots*k), resize(b.spare, roots*n)
 	m.coefficients(b.chosen, b.c)
-	m.product(roots, b.c, b.coupled, mid, n-mid, b.spare, n, mid)
+	if !m.product(roots, b.c, b.coupled, mid, n-mid, b.spare, n, mid) {
+		return false
+	}
 	next := b.spare
 	for at := range keep {
 		row := x[at*n : (at+1)*n]
@@ -153,4 +159,5 @@ func (b *tridiagonalEigen) vectors(first, step, keep int, x []float64) {
 			copy(row, b.rows[m.gone[i-k]*n:])
 		}
 	}
+	return true
 }

@@ -8,5 +8,7 @@
 // writes to memory of its own and uses scratch memory by worker only for what does not outlast the piece. Sums over pieces
 // belong to the caller, after Do, in the order of the pieces.
 //
+// A pool also carries a question whether to stop to those who run long pieces (Until): they get a pool anyway.
+//
 // A panic in a piece stops the handing out and is raised again in the caller, with the stack of the worker.
 package task

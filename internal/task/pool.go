@@ -14,14 +14,29 @@ import (
 const Threshold = 15e6
 
 // Pool is a number of threads. It holds no goroutines and may be shared and used from several places at once.
-type Pool struct{ threads int }
+type Pool struct {
+	threads int
+	stop    func() bool
+}
 
 // New returns a pool of the given number of threads; zero or less means GOMAXPROCS.
 func New(threads int) *Pool {
 	if threads <= 0 {
 		threads = runtime.GOMAXPROCS(0)
 	}
-	return &Pool{threads}
+	return &Pool{threads: threads}
+}
+
+// Until returns a pool of as many threads that carries stop to long pieces: those that know how ask it now and then, from any of the
+// threads, and give up once it says true. Do itself runs every piece.
+func (p *Pool) Until(stop func() bool) *Pool { return &Pool{p.Threads(), stop} }
+
+// Stop returns what Until was given, else nil.
+func (p *Pool) Stop() func() bool {
+	if p == nil {
+		return nil
+	}
+	return p.stop
 }
 
 // Threads returns the number of threads: worker numbers given by Do are below it. A nil pool has one.

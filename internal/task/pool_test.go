@@ -229,3 +229,18 @@ func BenchmarkDo(b *testing.B) {
 		}
 	}
 }
+
+func TestUntil(t *testing.T) {
+	assert.Nil(t, (*Pool)(nil).Stop())
+	assert.Nil(t, New(3).Stop())
+	stopped := false
+	p := New(3).Until(func() bool { return stopped })
+	assert.Equal(t, 3, p.Threads())
+	assert.False(t, p.Stop()())
+	stopped = true
+	assert.True(t, p.Stop()())
+	count := 0
+	p.Do(5, 0, func(_, _ int) { count++ })
+	assert.Equal(t, 5, count, "every piece runs all the same")
+	assert.Equal(t, 1, (*Pool)(nil).Until(nil).Threads())
+}

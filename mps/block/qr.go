@@ -17,7 +17,7 @@ func LQ[T dense.Scalar](t *Tensor[T], left int) (l, q *Tensor[T]) {
 
 // factor applies a dense m×n -> m×k, k×n factorization to the matrix of each charge.
 func factor[T dense.Scalar](t *Tensor[T], left int,
-	kernel func(m, n int, a []T, lda int, x []T, ldx int, y []T, ldy int, w *dense.Workspace[T])) (x, y *Tensor[T]) {
+	kernel func(m, n int, a []T, lda int, x []T, ldx int, y []T, ldy int, w *dense.Workspace[T]) error) (x, y *Tensor[T]) {
 	p := PlanMatrix(t.Structure, left)
 	bond := make([]int, len(p.Sectors))
 	for i := range p.Sectors {
@@ -31,7 +31,9 @@ func factor[T dense.Scalar](t *Tensor[T], left int,
 		m := &p.Sectors[i]
 		a, b, c := ws.Take(m.Rows*m.Cols), ws.Take(m.Rows*k), ws.Take(k*m.Cols)
 		Gather(p, i, a, m.Cols, t.Data)
-		kernel(m.Rows, m.Cols, a, m.Cols, b, k, c, m.Cols, &w)
+		if err := kernel(m.Rows, m.Cols, a, m.Cols, b, k, c, m.Cols, &w); err != nil {
+			panic(err) // only what was told to stop fails
+		}
 		Scatter(h.left, i, x.Data, b, k)
 		Scatter(h.right, i, y.Data, c, m.Cols)
 		ws.Give(a)

@@ -3,6 +3,7 @@ package block
 import (
 	"errors"
 	"fmt"
+	"slices"
 
 	"rundle/internal/dense"
 	"rundle/internal/task"
@@ -36,6 +37,8 @@ type Spectrum struct {
 // SVD factors t across the bond after its first left axes, t = u diag(s) v up to what cut drops. u has the left axes and the bond (Out)
 // and total zero; v has the bond (In) and the other axes and the total of t; both are isometries on the bond. The values are not
 // normalized anew. Charges of which nothing is kept leave the bond. A zero tensor gives ErrZero, a failed block an *SVDError.
+// Where the pool carries a stop (task.Pool.Until) large blocks ask it every few milliseconds; once it says true the error is
+// dense.ErrStopped.
 func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, pool *task.Pool) (u *Tensor[T], s Spectrum, v *Tensor[T], err error) {
 	d := decompose(t, left, pool)
 	if err := d.failure(); err != nil {
@@ -54,6 +57,9 @@ func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, pool *task.Pool) (u *T
 	}
 	u, v = New[T](h.left.Of), New[T](h.right.Of)
 	d.vectors(h, keep, u, v, pool)
+	if err := d.failure(); err != nil {
+		return nil, Spectrum{}, nil, err
+	}
 	return u, s, v, nil
 }
 
@@ -87,6 +93,7 @@ func decompose[T dense.Scalar](t *Tensor[T], left int, pool *task.Pool) *decompo
 		m := &p.Sectors[i]
 		a := ws[worker].Take(m.Rows * m.Cols)
 		Gather(p, i, a, m.Cols, t.Data)
+		d.svd[i].Stop = pool.Stop()
 		if d.errs[i] = d.svd[i].Factor(m.Rows, m.Cols, a, m.Cols); d.errs[i] == nil {
 			d.values[i] = d.svd[i].Values()
 		}
@@ -95,8 +102,12 @@ func decompose[T dense.Scalar](t *Tensor[T], left int, pool *task.Pool) *decompo
 	return d
 }
 
-// failure returns the error of the first charge that has one.
+// failure returns the error of the first charge that has one, but ErrStopped before all: which charges got to fail is then a matter of
+// chance.
 func (d *decomposition[T]) failure() error {
+	if slices.Contains(d.errs, dense.ErrStopped) {
+		return dense.ErrStopped
+	}
 	for i, err := range d.errs {
 		if m := &d.plan.Sectors[i]; err != nil {
 			return &SVDError{Charge: m.Charge, Rows: m.Rows, Cols: m.Cols, Err: err}
@@ -123,7 +134,7 @@ func (d *decomposition[T]) vectors(h halves, keep []int, u, v *Tensor[T], pool *
 			return
 		}
 		x, y := ws[worker].Take(m.Rows*k), ws[worker].Take(k*m.Cols)
-		d.svd[i].Vectors(k, x, k, y, m.Cols)
+		d.errs[i] = d.svd[i].Vectors(k, x, k, y, m.Cols)
 		Scatter(h.left, at[i], u.Data, x, k)
 		Scatter(h.right, at[i], v.Data, y, m.Cols)
 		ws[worker].Give(x)

@@ -361,3 +361,27 @@ func typicalTheta[T dense.Scalar](t testing.TB, bond int) *Tensor[T] {
 	s := NewAxis(In, Sector{Charge{-1}, 1}, Sector{Charge{1}, 1})
 	return Random[T](NewStructure(mustGroup(t, 0), []Axis{l, s, s, l.Reversed()}, Charge{}), rand.New(rand.NewPCG(1, 2)))
 }
+
+// TestSVDStops stops at every question in turn; what the pool carries changes nothing otherwise.
+func TestSVDStops(t *testing.T) {
+	g := mustGroup(t, 0)
+	a := NewAxis(In, Sector{Charge{0}, 50}, Sector{Charge{1}, 40})
+	x := Random[float64](NewStructure(g, []Axis{a, a.Reversed()}, Charge{}), fixed(1))
+	want, _, _, err := SVD(x, 1, Cut{}, nil)
+	require.NoError(t, err)
+	few := 8
+	if kernels, _ := dense.Kernels(); kernels == "netlib" {
+		few = 0 // LAPACK does not ask
+	}
+	for at := 0; ; at++ {
+		asked := 0
+		pool := task.New(1).Until(func() bool { asked++; return asked > at })
+		u, _, _, err := SVD(x, 1, Cut{}, pool)
+		if err == nil {
+			assert.Greater(t, at, few, "it asks too seldom")
+			assert.Equal(t, want.Data, u.Data)
+			break
+		}
+		require.Equal(t, dense.ErrStopped, err, "question %d", at)
+	}
+}
