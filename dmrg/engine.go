@@ -26,7 +26,8 @@ type engine[T dense.Scalar] struct {
 	work     mpo.Workspace[T]
 	kry      krylov.Workspace[T]
 	unit     float64      // of energy, near the largest coupling where that is far from one
-	halt     func() error // why the search has to stop now; nil: go on
+	halt     func() error // why the search has to stop now; nil: go on; asked from any thread
+	brief    *task.Pool   // pool, for decompositions that give up midway once halt says why
 	onBond   func(Position)
 	sweeps   int
 	products int     // with projected Hamiltonians
@@ -63,6 +64,7 @@ func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settl
 	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt, unit: opt.unit,
 		rng:  rand.New(rand.NewPCG(opt.Seed, noiseStream)),
 		envs: newEnvironments[T](psi.Len())}
+	e.brief = e.pool.Until(func() bool { return halt() != nil })
 	psi.Canonicalize(0, e.pool)
 	psi.Normalize()
 	return e
@@ -214,8 +216,8 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 
 // at names the bond of a failure.
 func (e *engine[T]) at(bond int, err error) error {
-	if errors.Is(err, e.halt()) {
-		return err
+	if why := e.halt(); why != nil && (errors.Is(err, why) || errors.Is(err, dense.ErrStopped)) {
+		return why
 	}
 	return fmt.Errorf("dmrg: bond %d: %w", bond, err)
 }
@@ -314,7 +316,7 @@ func (e *engine[T]) shake(theta *block.Tensor[T], size float64) {
 
 // split cuts theta by singular values; the centre goes to the right or the left tensor, normalized.
 func (e *engine[T]) split(theta *block.Tensor[T], right bool, s setting) (a, b *block.Tensor[T], discarded float64, err error) {
-	u, spec, v, err := block.SVD(theta, 2, block.Cut{Bond: s.bond, Weight: s.weight}, e.pool)
+	u, spec, v, err := block.SVD(theta, 2, block.Cut{Bond: s.bond, Weight: s.weight}, e.brief)
 	if err != nil {
 		return nil, nil, 0, err
 	}

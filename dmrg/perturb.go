@@ -19,9 +19,10 @@ type side[T dense.Scalar] struct {
 	matrix  []T // of theta, left states × right states; nil where theta lacks the charge
 	other   int // states of the other side in matrix
 	rho     []T // dim × dim
+	eigen   dense.Hermitian[T]
 	values  []float64
-	vectors []T // dim × dim, columns by increasing value
 	keep    int
+	vectors []T // dim × keep, columns by decreasing value
 }
 
 // splitPerturbed cuts theta by the reduced density matrix of the side that is left behind, perturbed by what the Hamiltonian
@@ -34,6 +35,9 @@ func (e *engine[T]) splitPerturbed(h *mpo.Projected[T], theta *block.Tensor[T], 
 		return nil, nil, 0, err
 	}
 	choose(sides, s.bond, s.perturbation)
+	if err := e.chosenVectors(sides); err != nil {
+		return nil, nil, 0, err
+	}
 	iso, center := assemble(theta, sides, right)
 	kept, total := center.Norm(), theta.Norm()
 	if !(kept > 0) {
@@ -113,23 +117,48 @@ func (e *engine[T]) perturb(sides []side[T], h *mpo.Projected[T], theta *block.T
 	return sides
 }
 
-// diagonalizing a Hermitian matrix takes about this many times dim³ operations.
-const diagonalizing = 10
+// Finding the eigenvalues of a Hermitian matrix takes about factoring times dim³ operations, each vector about choosing times dim².
+const (
+	factoring = 5
+	choosing  = 4
+)
 
+// diagonalize finds the eigenvalues of all density matrices.
 func (e *engine[T]) diagonalize(sides []side[T]) error {
-	work, total := make([]float64, len(sides)), 0.0
+	work := make([]float64, len(sides))
 	for i := range sides {
 		d := float64(sides[i].dim)
-		work[i] = diagonalizing * d * d * d
-		total += work[i]
+		work[i] = factoring * d * d * d
 	}
-	order := task.ByWork(work)
-	spaces, errs := make([]dense.Workspace[T], e.pool.Threads()), make([]error, len(sides))
-	e.pool.Do(len(sides), total, func(worker, j int) {
-		q := &sides[order[j]]
-		q.values, q.vectors = make([]float64, q.dim), make([]T, q.dim*q.dim)
-		errs[order[j]] = dense.Eigen(q.dim, q.rho, q.dim, q.values, q.vectors, q.dim, &spaces[worker])
+	return e.each(sides, work, func(q *side[T]) error {
+		q.eigen.Stop = e.brief.Stop()
+		err := q.eigen.Factor(q.dim, q.rho, q.dim)
+		q.values = q.eigen.Values()
+		return err
 	})
+}
+
+// chosenVectors finds the eigenvectors that are kept: most of a perturbed density matrix is not.
+func (e *engine[T]) chosenVectors(sides []side[T]) error {
+	work := make([]float64, len(sides))
+	for i := range sides {
+		d := float64(sides[i].dim)
+		work[i] = choosing * d * d * float64(sides[i].keep)
+	}
+	return e.each(sides, work, func(q *side[T]) error {
+		q.vectors = make([]T, q.dim*q.keep)
+		return q.eigen.Largest(q.keep, q.vectors, q.keep)
+	})
+}
+
+// each runs do on every side, most work first. The error is that of the first side that has one.
+func (e *engine[T]) each(sides []side[T], work []float64, do func(q *side[T]) error) error {
+	total := 0.0
+	for _, w := range work {
+		total += w
+	}
+	order, errs := task.ByWork(work), make([]error, len(sides))
+	e.pool.Do(len(sides), total, func(_, j int) { errs[order[j]] = do(&sides[order[j]]) })
 	for i, err := range errs {
 		if err != nil {
 			return fmt.Errorf("density matrix of bond charge %v: %w", sides[i].charge, err)
@@ -206,7 +235,7 @@ func assemble[T dense.Scalar](theta *block.Tensor[T], sides []side[T], left bool
 	one, zero := dense.FromFloat[T](1), dense.FromFloat[T](0)
 	for i := range lp.Sectors {
 		q := at[lp.Sectors[i].Charge]
-		v := q.selected()
+		v := q.vectors
 		if left {
 			block.Scatter(lp, i, l.Data, v, q.keep)
 		} else if q.matrix != nil {
@@ -217,7 +246,7 @@ func assemble[T dense.Scalar](theta *block.Tensor[T], sides []side[T], left bool
 	}
 	for i := range rp.Sectors {
 		q := at[rp.Sectors[i].Charge]
-		v := q.selected()
+		v := q.vectors
 		if !left {
 			block.Scatter(rp, i, r.Data, transposed(v, q.dim, q.keep), q.dim)
 		} else if q.matrix != nil {
@@ -230,17 +259,6 @@ func assemble[T dense.Scalar](theta *block.Tensor[T], sides []side[T], left bool
 		return l, r
 	}
 	return r, l
-}
-
-// selected copies the kept eigenvectors, largest first, as a dim × keep matrix.
-func (q *side[T]) selected() []T {
-	v := make([]T, q.dim*q.keep)
-	for i := range q.dim {
-		for k := range q.keep {
-			v[i*q.keep+k] = q.vectors[i*q.dim+q.dim-1-k]
-		}
-	}
-	return v
 }
 
 func transposed[T dense.Scalar](a []T, m, n int) []T {
