@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"time"
 
 	"rundle/internal/dense"
 	"rundle/internal/krylov"
@@ -15,13 +16,16 @@ import (
 )
 
 // engine holds a state, the environments of its orthogonality centre and the workspaces of one search. Between two updates the centre
-// is at site psi.Center, and the environments left of the sites 0..Center and right of the sites Center.. stand.
+// is at site psi.Center, and the environments left of the sites 0..Center and right of the sites Center.. stand. What an update leaves to later
+// ones beside chain and environments, which are a function of it, must be in the record of a waypoint.
 type engine[T dense.Scalar] struct {
 	op       *mpo.Operator[T]
 	plan     *mpo.Planner[T]
 	psi      *mps.Chain[T]
 	envs     *environments[T]
 	pool     *task.Pool
+	seed     uint64
+	pcg      *rand.PCG // seeded anew for each update
 	rng      *rand.Rand
 	work     mpo.Workspace[T]
 	kry      krylov.Workspace[T]
@@ -29,6 +33,8 @@ type engine[T dense.Scalar] struct {
 	halt     func() error // why the search has to stop now; nil: go on; asked from any thread
 	brief    *task.Pool   // pool, for decompositions that give up midway once halt says why
 	onBond   func(Position)
+	onPause  func() error // called between two updates; nil: nothing
+	way      *passage     // the sweep under way; nil between sweeps
 	sweeps   int
 	products int     // with projected Hamiltonians
 	flops    float64 // of environments and projected Hamiltonians, in real operations
@@ -56,33 +62,67 @@ type outcome struct {
 	residual  float64 // largest of the left-going half
 	gain      float64 // of energy by all updates of the left-going half
 	change    float64 // largest norm by which an update changed its normalized two-site tensor, in the whole sweep
+	products  int     // with projected Hamiltonians, in the whole sweep
+	flops     float64 // of both, in the whole sweep
+	seconds   float64 // in the whole sweep
+}
+
+// halfway keeps what counts for the whole sweep.
+func (o outcome) halfway() outcome {
+	return outcome{change: o.change, products: o.products, flops: o.flops, seconds: o.seconds}
 }
 
 // newEngine begins a search from psi, which it keeps and normalizes; prepare must follow. Once halt says why to stop, the engine's methods return
 // that.
 func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settled, halt func() error) *engine[T] {
-	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt, unit: opt.unit,
-		rng:  rand.New(rand.NewPCG(opt.Seed, noiseStream)),
-		envs: newEnvironments[T](psi.Len())}
-	e.brief = e.pool.Until(func() bool { return halt() != nil })
+	e := standingEngine(op, psi, opt, halt)
 	psi.Canonicalize(0, e.pool)
 	psi.Normalize()
+	return e
+}
+
+// standingEngine goes on with psi as it is, which must have a centre.
+func standingEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settled, halt func() error) *engine[T] {
+	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt, unit: opt.unit,
+		seed: opt.Seed, pcg: rand.NewPCG(opt.Seed, noiseStream), envs: newEnvironments[T](psi.Len())}
+	e.rng = rand.New(e.pcg)
+	e.brief = e.pool.Until(func() bool { return halt() != nil })
 	return e
 }
 
 // noiseStream sets the random numbers of the engine apart from others of the same seed.
 const noiseStream = 0x72756e646c65
 
-// prepare makes the environments of the first site.
+// reseed makes the random numbers of an update a function of its place, so that they need no memory.
+func (e *engine[T]) reseed(bond int, right bool) {
+	place := 2 * (uint64(e.sweeps)*uint64(e.psi.Len()) + uint64(bond))
+	if right {
+		place++
+	}
+	e.pcg.Seed(e.seed, noiseStream^place<<32)
+}
+
+// prepare makes the environments of the centre from nothing. A search that goes on has counted that work before.
 func (e *engine[T]) prepare() error {
+	if flops, growth := e.flops, e.growth; flops > 0 {
+		defer func() { e.flops, e.growth = flops, growth }()
+	}
 	last := e.psi.Len() - 1
 	e.envs.setLeft(0, mpo.LeftEdge(e.op))
 	e.envs.setRight(last, mpo.RightEdge(e.op, e.psi.Charge(), e.psi.Charge()))
-	for i := last; i > 0; i-- {
+	for i := last; i > e.psi.Center; i-- {
 		if err := e.halt(); err != nil {
 			return err
 		}
 		if err := e.growRight(i); err != nil {
+			return err
+		}
+	}
+	for i := range e.psi.Center {
+		if err := e.halt(); err != nil {
+			return err
+		}
+		if err := e.growLeft(i); err != nil {
 			return err
 		}
 	}
@@ -127,39 +167,51 @@ func (e *engine[T]) count(flops float64) float64 {
 	return flops
 }
 
-// sweep goes right and left once over all bonds. Told to halt it stops between two updates, or gives up the one at hand, and returns
-// why; the chain is then a valid state.
+// sweep goes right and left once over all bonds, or ends the sweep under way. Told to halt it stops between two updates, or gives up the one at
+// hand, and returns why; the chain is then a valid state, and the sweep still under way.
 func (e *engine[T]) sweep(s setting) (outcome, error) {
-	e.sweeps++
-	n := e.psi.Len()
-	if n == 1 {
+	if e.psi.Len() == 1 {
+		e.sweeps++
 		return e.single(s)
 	}
-	var out outcome
-	for i := e.psi.Center; i < n-1; i++ {
-		if _, err := e.step(i, true, s, &out); err != nil {
-			return out, err
-		}
+	if e.way == nil {
+		e.sweeps++
+		e.way = &passage{next: e.psi.Center}
 	}
-	out, e.growth = outcome{change: out.change}, 0
-	for i := n - 2; i >= 0; i-- {
-		energy, err := e.step(i, false, s, &out)
+	for w := e.way; !w.over(); {
+		begin, products, flops := time.Now(), e.products, e.flops
+		err := e.step(w.next, !w.left, s, &w.out)
+		w.out.seconds += time.Since(begin).Seconds()
 		if err != nil {
-			return out, err
+			e.products, e.flops = products, flops // it is done again
+			return w.out, err
 		}
-		out.energy = energy
+		w.out.products += e.products - products
+		w.out.flops += e.flops - flops
+		if w.advance(e.psi.Len() - 1); w.left && w.next == e.psi.Len()-2 {
+			e.growth = 0
+		}
+		if e.onPause != nil {
+			if err := e.onPause(); err != nil {
+				return w.out, err
+			}
+		}
 	}
+	out := e.way.out
+	e.way = nil
 	return out, nil
 }
 
-func (e *engine[T]) step(i int, right bool, s setting, out *outcome) (float64, error) {
+func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 	if err := e.halt(); err != nil {
-		return 0, err
+		return err
 	}
+	e.reseed(i, right)
 	energy, discarded, change, err := e.update(i, right, s)
 	if err != nil {
-		return 0, err
+		return err
 	}
+	out.energy = energy
 	out.change = max(out.change, change)
 	out.discarded = max(out.discarded, discarded)
 	out.total += discarded
@@ -169,7 +221,7 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) (float64, e
 	if e.onBond != nil {
 		e.onBond(Position{Sweep: e.sweeps, Bond: i, Bonds: e.psi.Len() - 1, Energy: energy})
 	}
-	return energy, nil
+	return nil
 }
 
 // update optimizes sites i and i+1 together (White 1992) and moves the orthogonality centre on. On an error the chain and its environments are
@@ -250,6 +302,8 @@ func (e *engine[T]) single(s setting) (outcome, error) {
 	}
 	theta := e.psi.Sites[0].Clone()
 	h := e.plan.Project(0, 1, left, right, theta.Structure)
+	products, flops := e.products, e.flops
+	e.reseed(0, true)
 	e.shake(theta, singleNoise)
 	s.vectors = singleVectors
 	energy, err := e.lowest(h, theta, s)
@@ -257,7 +311,7 @@ func (e *engine[T]) single(s setting) (outcome, error) {
 		return outcome{}, e.at(0, err)
 	}
 	e.psi.Sites[0] = theta
-	return outcome{energy: energy, largest: 1, residual: e.residual}, nil
+	return outcome{energy: energy, largest: 1, residual: e.residual, products: e.products - products, flops: e.flops - flops}, nil
 }
 
 // lowest replaces theta by the lowest eigenvector that a few Krylov vectors give, and returns its energy.

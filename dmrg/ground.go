@@ -98,14 +98,13 @@ func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames,
 	if err != nil {
 		return nil, err
 	}
-	psi, err := startChain[T](p, total)
-	if err != nil {
+	toState := func(c *mps.Chain[T]) (*mps.State, error) { return wrap(c, p.frames, p.h.Scope) }
+	s := &search[T]{opt: p.opt, scale: p.scale, wrap: toState}
+	if err := s.begin(p, op, total); err != nil {
 		return nil, err
 	}
-	e := newEngine(op, psi, p.opt, p.halt)
+	e := s.engine
 	e.onBond = p.opt.OnBond
-	toState := func(c *mps.Chain[T]) (*mps.State, error) { return wrap(c, p.frames, p.h.Scope) }
-	s := &search[T]{engine: e, opt: p.opt, scale: p.scale, wrap: toState}
 	verdict, reason, err := s.run()
 	ended := errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded)
 	if err != nil && !ended {
@@ -121,8 +120,29 @@ func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames,
 		return nil, failed
 	}
 	r.State, r.LargestBond = state, state.MaxBond()
+	if r.Waypoint, failed = s.waypoint(); failed != nil {
+		return nil, failed
+	}
 	r.Real = !dense.IsComplex[T]()
 	return r, err
+}
+
+// begin puts an engine at the start, or at the waypoint to go on from.
+func (s *search[T]) begin(p *problem, op *mpo.Operator[T], total block.Charge) error {
+	if w := p.opt.From; w != nil {
+		psi, err := chainOf[T](p, w)
+		if err != nil {
+			return err
+		}
+		s.engine = standingEngine(op, psi, p.opt, p.halt)
+		return s.goOn(w)
+	}
+	psi, err := startChain[T](p, total)
+	if err != nil {
+		return err
+	}
+	s.engine = newEngine(op, psi, p.opt, p.halt)
+	return nil
 }
 
 // result gathers what the search found; where it was ended from outside, without what takes time.

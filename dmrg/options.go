@@ -10,22 +10,25 @@ import (
 
 // Options steer a search. The zero value is the good default; every field's zero is stated beside it.
 type Options struct {
-	Precision           float64        // wanted error of the energy, in the Hamiltonian's units; 0: 1e-8
-	ObservablePrecision float64        // wanted error of local observables, relative to one; 0: sqrt(Precision/1000/largest coupling), at most 1e-3
-	Bond                int            // cap on the bond dimension; 0: 4096
-	Sweeps              int            // cap on the number of sweeps; 0: 200
-	Time                time.Duration  // cap on the wall time; 0: none
-	Memory              int64          // cap on the bytes of state, environments and workspace; 0: none
-	Threads             int            // workers; 0: GOMAXPROCS
-	Seed                uint64         // of the small noise in the first sweeps; results are the same for the same seed
-	Charges             []string       // conserved charges to use; nil: the choice that cuts blocks most
-	Complex             bool           // complex arithmetic even where a real gauge exists, or real modes (ladder.Modes)
-	Opening             Opening        // how new states enter the bond; 0: PerturbedDensity
-	Schedule            []Pass         // sweeps to do instead of those that the search would choose, for measurements and experts; nil: the search chooses
-	Start               *mps.State     // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
-	OnSweep             func(Sweep)    // called after every sweep
-	OnStage             func(Stage)    // called with the state at each settled bond dimension
-	OnBond              func(Position) // called after every bond update
+	Precision           float64         // wanted error of the energy, in the Hamiltonian's units; 0: 1e-8
+	ObservablePrecision float64         // wanted error of local observables, relative to one; 0: sqrt(Precision/1000/largest coupling), at most 1e-3
+	Bond                int             // cap on the bond dimension; 0: 4096
+	Sweeps              int             // cap on the number of sweeps; 0: 200
+	Time                time.Duration   // cap on the wall time; 0: none
+	Memory              int64           // cap on the bytes of state, environments and workspace; 0: none
+	Threads             int             // workers; 0: GOMAXPROCS
+	Seed                uint64          // of the small noise in the first sweeps; results are the same for the same seed
+	Charges             []string        // conserved charges to use; nil: the choice that cuts blocks most
+	Complex             bool            // complex arithmetic even where a real gauge exists, or real modes (ladder.Modes)
+	Opening             Opening         // how new states enter the bond; 0: PerturbedDensity
+	Schedule            []Pass          // sweeps to do instead of those that the search would choose, for measurements and experts; nil: the search chooses
+	Start               *mps.State      // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
+	From                *Waypoint       // where an earlier search was saved, to go on from; nil: from the start
+	WaypointEvery       time.Duration   // least time between two calls of OnWaypoint; 0: 30 s, more where saving takes long
+	OnWaypoint          func(*Waypoint) // called between two updates, now and then, with what to save; nil: never
+	OnSweep             func(Sweep)     // called after every sweep
+	OnStage             func(Stage)     // called with the state at each settled bond dimension
+	OnBond              func(Position)  // called after every bond update
 }
 
 // Opening is the way in which states absent from the bond are let in while it grows.
@@ -77,6 +80,10 @@ func (o Options) check() error {
 		return bad("Memory", o.Memory, "a positive number of bytes, or 0 for none")
 	case o.Threads < 0:
 		return bad("Threads", o.Threads, "a positive number, or 0 for all")
+	case o.WaypointEvery < 0:
+		return bad("WaypointEvery", o.WaypointEvery, "a positive duration, or 0 for the default")
+	case o.From != nil && o.From.real == nil && o.From.complex == nil:
+		return bad("From", "an empty waypoint", "one that OnWaypoint got or that was loaded")
 	case o.Opening != PerturbedDensity && o.Opening != Unperturbed:
 		return bad("Opening", int(o.Opening), "PerturbedDensity or Unperturbed")
 	}

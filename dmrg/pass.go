@@ -52,7 +52,7 @@ func (p Pass) setting() setting {
 func (s *search[T]) follow() (Verdict, string, error) {
 	passes := s.opt.Schedule
 	for i, p := range passes {
-		if s.affordable(1, p.Bond) < p.Bond {
+		if s.journal.look("bond", func() int { return s.affordable(1, p.Bond) }) < p.Bond {
 			return MemoryCap, fmt.Sprintf("pass %d of the schedule, bond dimension %d, would need about %.3g MiB", i, p.Bond, s.expected(p.Bond)/(1<<20)), nil
 		}
 		clean := p.Perturbation == 0

@@ -62,4 +62,5 @@ type Result struct {
 	Flops            float64            // real operations of environments, projected Hamiltonians and the variance
 	Verdict          Verdict            // "" where the context ended the search
 	Reason           string
+	Waypoint         *Waypoint // where the search ended, to go on from with other caps, or if the context ended it
 }

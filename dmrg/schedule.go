@@ -34,9 +34,12 @@ type search[T dense.Scalar] struct {
 	scale  float64
 	wrap   func(*mps.Chain[T]) (*mps.State, error)
 
-	stages  []settledStage
-	sweeps  []Sweep
-	reports []Stage
+	journal      journal // what follows, and what the schedule does next, is a function of it
+	nextPause    time.Time
+	stagesBefore int // settled when the waypoint to go on from was saved
+	stages       []settledStage
+	sweeps       []Sweep
+	reports      []Stage
 }
 
 // errTime stops a search at its cap on time.
@@ -48,6 +51,8 @@ func (s *search[T]) run() (Verdict, string, error) {
 	if err := s.engine.prepare(); err != nil {
 		return s.ended(err)
 	}
+	s.schedulePause(0)
+	s.engine.onPause = s.pause
 	if len(s.opt.Schedule) > 0 {
 		verdict, reason, err := s.follow()
 		if err != nil {
@@ -55,7 +60,9 @@ func (s *search[T]) run() (Verdict, string, error) {
 		}
 		return verdict, reason, nil
 	}
-	bond := s.affordable(1, min(s.opt.Bond, max(firstBond, s.engine.psi.MaxBond())))
+	bond := s.journal.look("first bond", func() int {
+		return s.affordable(1, min(s.opt.Bond, max(firstBond, s.engine.psi.MaxBond())))
+	})
 	for {
 		verdict, reason, err := s.stage(bond)
 		if err != nil {
@@ -100,7 +107,7 @@ func (s *search[T]) ended(err error) (Verdict, string, error) {
 func (s *search[T]) grow(bond *int, est estimate) (Verdict, string) {
 	wish := max(*bond+leastGrowth, int(stageGrowth*float64(*bond)))
 	next := min(s.opt.Bond, wish)
-	able := s.affordable(*bond, next)
+	able := s.journal.look("bond", func() int { return s.affordable(*bond, next) })
 	// A little more is not worth a stage, unless the cap allows no more.
 	if able < next && able < *bond+min(leastGrowth, next-*bond) {
 		able = *bond
@@ -192,7 +199,7 @@ func (s *search[T]) report(bond int) error {
 	last := &s.stages[len(s.stages)-1]
 	report := Stage{Bond: bond, Energy: last.energy(), Discarded: s.sweeps[len(s.sweeps)-1].Discarded}
 	s.reports = append(s.reports, report)
-	if s.opt.OnStage == nil {
+	if s.opt.OnStage == nil || !s.journal.live() {
 		return nil
 	}
 	var err error
@@ -235,12 +242,11 @@ func (s *search[T]) precise(est estimate) bool {
 
 // sweep runs one sweep, records it, and checks the caps.
 func (s *search[T]) sweep(set setting) (Verdict, string, error) {
-	begin := time.Now()
 	if len(s.sweeps) >= s.opt.Sweeps {
 		return SweepCap, fmt.Sprintf("%d sweeps done; allow more sweeps", len(s.sweeps)), nil
 	}
-	products, flops := s.engine.products, s.engine.flops
-	out, err := s.engine.sweep(set)
+	live := s.journal.live()
+	out, err := learn(&s.journal, kindSweep, set, func() (outcome, error) { return s.engine.sweep(set) })
 	if err != nil {
 		return unfinished, "", err
 	}
@@ -250,10 +256,9 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 		st.discarded, st.largest, st.residual, st.gain, st.change = out.total, out.largest, out.residual, out.gain, out.change
 	}
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Perturbation: set.perturbation, Energy: out.energy, Discarded: out.discarded,
-		Residual: out.residual, LargestBond: out.largest, Products: s.engine.products - products, Flops: s.engine.flops - flops,
-		Seconds: time.Since(begin).Seconds()}
+		Residual: out.residual, LargestBond: out.largest, Products: out.products, Flops: out.flops, Seconds: out.seconds}
 	s.sweeps = append(s.sweeps, w)
-	if s.opt.OnSweep != nil {
+	if live && s.opt.OnSweep != nil {
 		s.opt.OnSweep(w)
 	}
 	return unfinished, "", nil

@@ -31,6 +31,9 @@ const (
 //
 // At the cap on time it returns the best so far.
 func pickTotal[T dense.Scalar](p *problem, op *mpo.Operator[T]) (block.Charge, error) {
+	if p.opt.From != nil {
+		return p.opt.From.charge(), nil
+	}
 	if p.opt.Start != nil {
 		return p.totalOfStart()
 	}

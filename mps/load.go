@@ -95,40 +95,52 @@ func readMeta(text string) (*meta, error) {
 }
 
 func decodeState[T dense.Scalar](r *npz.Reader, m *meta) (*State, error) {
-	left, err := readAxis(r, bondName(0), m.Group, block.In)
+	c, err := ReadChain[T](r, "", m.Group, m.Sites, m.Center)
+	if err != nil {
+		return nil, err
+	}
+	return newState(c, m.Frames, m.Scope)
+}
+
+// ReadChain reads what WriteChain wrote, to the bit. The centre is verified.
+func ReadChain[T dense.Scalar](r *npz.Reader, prefix string, g block.Group, n, center int) (*Chain[T], error) {
+	left, err := readAxis(r, prefix+bondName(0), g, block.In)
 	if err != nil {
 		return nil, err
 	}
 	var sites []*block.Tensor[T]
-	for i := range m.Sites {
-		site, err := readAxis(r, axisName(i), m.Group, block.In)
+	for i := range n {
+		site, err := readAxis(r, prefix+axisName(i), g, block.In)
 		if err != nil {
 			return nil, err
 		}
-		right, err := readAxis(r, bondName(i+1), m.Group, block.Out)
+		right, err := readAxis(r, prefix+bondName(i+1), g, block.Out)
 		if err != nil {
 			return nil, err
 		}
 		if len(left.Sectors)*len(site.Sectors) > maxPairs {
 			return nil, fmt.Errorf("site %d has more combinations of charges than a state can have", i)
 		}
-		t, err := readSite[T](r, i, block.NewStructure(m.Group, []block.Axis{left, site, right}, block.Charge{}))
+		t, err := readSite[T](r, prefix, i, block.NewStructure(g, []block.Axis{left, site, right}, block.Charge{}))
 		if err != nil {
 			return nil, err
 		}
 		sites = append(sites, t)
 		left = right.Reversed()
 	}
-	c, err := NewChain(m.Group, sites)
+	c, err := NewChain(g, sites)
 	if err != nil {
 		return nil, err
 	}
-	if c.Center = m.Center; c.Center >= 0 {
+	if center < -1 || center >= n {
+		return nil, fmt.Errorf("orthogonality centre %d; expected -1 (unknown) to %d", center, n-1)
+	}
+	if c.Center = center; center >= 0 {
 		if err := c.checkCenter(); err != nil {
 			return nil, err
 		}
 	}
-	return newState(c, m.Frames, m.Scope)
+	return c, nil
 }
 
 // readAxis reads the table of an axis.
@@ -163,8 +175,8 @@ func readAxis(r *npz.Reader, name string, g block.Group, flow block.Flow) (block
 }
 
 // readSite reads the blocks of a site. The slab is allocated when all blocks are there: sizes that were merely claimed cost nothing.
-func readSite[T dense.Scalar](r *npz.Reader, i int, s *block.Structure) (*block.Tensor[T], error) {
-	shape, rows, err := npz.Read[int64](r, blocksName(i))
+func readSite[T dense.Scalar](r *npz.Reader, prefix string, i int, s *block.Structure) (*block.Tensor[T], error) {
+	shape, rows, err := npz.Read[int64](r, prefix+blocksName(i))
 	if err != nil {
 		return nil, err
 	}
@@ -178,7 +190,7 @@ func readSite[T dense.Scalar](r *npz.Reader, i int, s *block.Structure) (*block.
 				return nil, fmt.Errorf("array %q: row %d is %v; expected %v", blocksName(i), k, rows[3*k:3*k+3], b.Sectors)
 			}
 		}
-		shape, data, err := npz.Read[T](r, blockName(i, k))
+		shape, data, err := npz.Read[T](r, prefix+blockName(i, k))
 		if err != nil {
 			return nil, err
 		}

@@ -52,10 +52,10 @@ func (s *State) encode(to io.Writer) error {
 	var err error
 	if s.real != nil {
 		m.Group, m.Center = s.real.Group, s.real.Center
-		err = encodeChain(w, s.real)
+		err = WriteChain(w, "", s.real)
 	} else {
 		m.Group, m.Center = s.complex.Group, s.complex.Center
-		err = encodeChain(w, s.complex)
+		err = WriteChain(w, "", s.complex)
 	}
 	if err != nil {
 		return err
@@ -71,15 +71,17 @@ func (s *State) encode(to io.Writer) error {
 	return w.Close()
 }
 
-func encodeChain[T dense.Scalar](w *npz.Writer, c *Chain[T]) error {
-	if err := writeAxis(w, bondName(0), c.Group, c.Sites[0].Axes[0]); err != nil {
+// WriteChain writes the tensors of a chain as the arrays that the package comment describes, their names preceded by prefix. Group, number of
+// sites and centre are left to the caller's metadata.
+func WriteChain[T dense.Scalar](w *npz.Writer, prefix string, c *Chain[T]) error {
+	if err := writeAxis(w, prefix+bondName(0), c.Group, c.Sites[0].Axes[0]); err != nil {
 		return err
 	}
 	for i, t := range c.Sites {
-		if err := writeAxis(w, axisName(i), c.Group, t.Axes[1]); err != nil {
+		if err := writeAxis(w, prefix+axisName(i), c.Group, t.Axes[1]); err != nil {
 			return err
 		}
-		if err := writeAxis(w, bondName(i+1), c.Group, t.Axes[2]); err != nil {
+		if err := writeAxis(w, prefix+bondName(i+1), c.Group, t.Axes[2]); err != nil {
 			return err
 		}
 		var rows []int64
@@ -88,11 +90,11 @@ func encodeChain[T dense.Scalar](w *npz.Writer, c *Chain[T]) error {
 				rows = append(rows, int64(pos))
 			}
 		}
-		if err := npz.Write(w, blocksName(i), []int{len(t.Blocks), 3}, rows); err != nil {
+		if err := npz.Write(w, prefix+blocksName(i), []int{len(t.Blocks), 3}, rows); err != nil {
 			return err
 		}
 		for k, b := range t.Blocks {
-			if err := npz.Write(w, blockName(i, k), b.Shape, t.Block(k)); err != nil {
+			if err := npz.Write(w, prefix+blockName(i, k), b.Shape, t.Block(k)); err != nil {
 				return err
 			}
 		}
