@@ -8,8 +8,8 @@
 // memory comes from a Workspace or from the factorization object; both are ready as zero values, grow to the largest size met and
 // serve one goroutine at a time. No function keeps a slice it was given.
 //
-// Threads. Nothing here starts a goroutine. Under the tag netlib the library is told to use one thread. Results depend on the input and
-// the kernels alone.
+// Threads. Nothing here starts a goroutine, but for the pool that a BatchRunner is given. Under the tag netlib the library is told to use
+// one thread. Results depend on the input and the kernels alone.
 //
 // Failure. A shape that does not fit panics with the shapes: it is the programmer's error. Input that is not finite, or an iteration
 // that does not converge, is a *NumericalError where a result could not be trusted (SVD, Eigen); products and QR hand such numbers

@@ -234,17 +234,6 @@ func starters(work func()) []string {
 	return <-found
 }
 
-func TestGemmAllocatesNothing(t *testing.T) {
-	use(t, goKernels) // calls into C allocate
-	a, c := random[float64](64*64), make([]float64, 64*64)
-	z, d := random[complex128](64*64), make([]complex128, 64*64)
-	assert.Zero(t, testing.AllocsPerRun(100, func() {
-		Gemm(NoTrans, Trans, 64, 64, 64, 1, a, 64, a, 64, 0, c, 64)
-		Gemm(NoTrans, ConjTrans, 64, 64, 64, 1, z, 64, z, 64, 0, d, 64)
-		Gemm(NoTrans, ConjTrans, 2, 2, 2, 1, z, 64, z, 64, 0, d, 64)
-	}))
-}
-
 // TestGemmFromManyGoroutines: the copies of tiles are shared by turns, never at once. The race detector looks on.
 func TestGemmFromManyGoroutines(t *testing.T) {
 	const n, callers = 40, 8

@@ -58,25 +58,52 @@ func (p *Pool) Do(n int, flops float64, run func(worker, i int)) {
 		}
 		return
 	}
-	l := list{n: int64(n), run: run}
-	var wait sync.WaitGroup
-	defer wait.Wait() // also when the caller's own piece ends the goroutine
-	for worker := 1; worker < threads; worker++ {
-		wait.Go(func() { l.work(worker) })
+	l := lists.Get().(*list)
+	l.begin(threads, n, run)
+	defer l.wait.Wait() // also when the caller's own piece ends the goroutine
+	for _, start := range l.starts[:threads-1] {
+		go start()
 	}
 	l.work(0)
-	wait.Wait()
-	if f := l.failed.Load(); f != nil {
+	l.wait.Wait()
+	f := l.failed.Load()
+	l.end()
+	if f != nil {
 		panic(f)
 	}
 }
 
-// list is the state of one Do.
+// list is the state of one Do. Lists are recycled, with the functions that start workers, so that spreading allocates nothing.
 type list struct {
 	next   atomic.Int64
 	n      int64
 	run    func(worker, i int)
 	failed atomic.Pointer[Panic]
+	wait   sync.WaitGroup
+	starts []func() // of workers 1, 2, ...
+}
+
+var lists = sync.Pool{New: func() any { return new(list) }}
+
+// begin makes the list ready for its workers.
+func (l *list) begin(threads, n int, run func(worker, i int)) {
+	for worker := len(l.starts) + 1; worker < threads; worker++ {
+		l.starts = append(l.starts, func() {
+			defer l.wait.Done()
+			l.work(worker)
+		})
+	}
+	l.n, l.run = int64(n), run
+	l.next.Store(0)
+	l.failed.Store(nil)
+	l.wait.Add(threads - 1)
+}
+
+// end gives the list back; no worker may be left.
+func (l *list) end() {
+	l.run = nil
+	l.failed.Store(nil)
+	lists.Put(l)
 }
 
 func (l *list) work(worker int) {

@@ -183,6 +183,18 @@ func TestPanicWithoutError(t *testing.T) {
 	assert.NoError(t, p.Unwrap())
 }
 
+// TestDoRecycles: nested lists, failed ones and others use the same memory in turns.
+func TestDoRecycles(t *testing.T) {
+	for round := range 50 {
+		var sum atomic.Int64
+		assert.Panics(t, func() { New(3).Do(9, large, func(_, i int) { panic(i) }) })
+		New(1+round%5).Do(20, large, func(_, i int) {
+			New(2).Do(3, large, func(_, j int) { sum.Add(int64(i + j)) })
+		})
+		require.EqualValues(t, 3*190+20*3, sum.Load())
+	}
+}
+
 // TestDoGoexit ends workers the way a failing test does; the list must not count as done.
 func TestDoGoexit(t *testing.T) {
 	defer goleak.VerifyNone(t)
