@@ -37,6 +37,23 @@
 // further sweeps would gain, what the eigensolver left, and rounding. It is calibrated on models with known energies (TestErrorBars).
 // It knows nothing of states that the search never came near, and little at bond dimensions below the square of the local one.
 //
+// # Other starts
+//
+// A search may sit in an excited eigenstate, where no error estimate can know better. So before the verdict is Converged a probe looks, from random
+// states and another product state, for three states orthogonal to the one found, at a low bond dimension. A lower one is what the search goes on from. The
+// lowest mixture of the state with what the probe found goes into the energy and its error, or where that matters is gone on from as well. Probes take a
+// quarter of the operations of the search, or a blink.
+//
+// # Several levels
+//
+// [Lowest] finds levels one by one, each search orthogonal to the states below: their projections on the two sites at hand, contracted from overlap
+// environments, are left out of the Krylov space. Nothing is added to the Hamiltonian, so there is no constant to choose. The probe above a level is where
+// the search for the next begins. Levels within each other's error bars form a multiplet, and the last multiplet is completed.
+// At last the energies become those of the lowest combinations in the span of all (Rayleigh, Ritz), which bound the exact levels from above one by one.
+//
+// Where states lie close together they are found as a bundle: several centre tensors on common isometries, cut by the mean of their density matrices
+// (White 1993). Probes are bundles too, for it is the distance to the levels beyond the bundle that sets its pace.
+//
 // Precision is absolute, in the units of the Hamiltonian; a precision below the rounding error of the energy ends in the verdict Suspect.
 //
 // # Ownership and hooks

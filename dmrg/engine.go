@@ -23,6 +23,8 @@ type engine[T dense.Scalar] struct {
 	plan     *mpo.Planner[T]
 	psi      *mps.Chain[T]
 	envs     *environments[T]
+	lower    []*lowerState[T] // states to stay orthogonal to
+	scratch  block.Scratch[T] // of their overlaps
 	pool     *task.Pool
 	seed     uint64
 	pcg      *rand.PCG // seeded anew for each update
@@ -141,6 +143,7 @@ func (e *engine[T]) growLeft(i int) error {
 	g.Run(to, from, a, a, &e.work, e.pool)
 	e.envs.setLeft(i+1, to)
 	e.count(g.Flops())
+	e.overlapsLeft(i)
 	return nil
 }
 
@@ -155,6 +158,7 @@ func (e *engine[T]) growRight(i int) error {
 	g.Run(to, from, a, a, &e.work, e.pool)
 	e.envs.setRight(i-1, to)
 	e.growth += e.count(g.Flops())
+	e.overlapsRight(i)
 	return nil
 }
 
@@ -326,7 +330,12 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 		e.products++
 		e.count(h.Flops())
 	}
-	r := krylov.Lowest(apply, theta.Data, nil, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance, Pool: e.pool}, &e.kry)
+	against := e.constraints(h)
+	if !e.freed(theta, against) {
+		energy := e.blocked(theta, apply)
+		return energy, halted
+	}
+	r := krylov.Lowest(apply, theta.Data, against, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance, Pool: e.pool}, &e.kry)
 	if halted != nil {
 		return 0, halted
 	}
@@ -358,14 +367,19 @@ func (e *engine[T]) energy() (float64, error) {
 // shake adds a random part of relative norm size to theta, inside its blocks.
 func (e *engine[T]) shake(theta *block.Tensor[T], size float64) {
 	noise := block.New[T](theta.Structure)
-	for i := range noise.Blocks {
-		dense.Random(e.rng, noise.Block(i))
-	}
+	e.randomize(noise)
 	norm := noise.Norm()
 	if norm == 0 {
 		return
 	}
 	theta.Axpy(dense.FromFloat[T](size*theta.Norm()/norm), noise)
+}
+
+// randomize fills the blocks of a tensor.
+func (e *engine[T]) randomize(t *block.Tensor[T]) {
+	for i := range t.Blocks {
+		dense.Random(e.rng, t.Block(i))
+	}
 }
 
 // split cuts theta by singular values; the centre goes to the right or the left tensor, normalized.

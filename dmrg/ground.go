@@ -20,7 +20,21 @@ import (
 // An error says what the caller must mend: a sector that the ladder cannot hold, a bad option. If ctx ends, the error is ctx's, and the
 // result holds the last state; it is nil if ctx ended while free charges were still being chosen.
 func Ground(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*Result, error) {
-	begin := time.Now()
+	p, err := begun(ctx, h, sector, opt, time.Now())
+	if err != nil {
+		return nil, err
+	}
+	if p.rewritten != nil {
+		return ground(p, p.rewritten.state)
+	}
+	if p.strings.Real && !opt.Complex {
+		return ground(p, mps.NewReal)
+	}
+	return ground(p, mps.NewComplex)
+}
+
+// begun checks the options and poses the problem; the time is counted from begin.
+func begun(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, opt Options, begin time.Time) (*problem, error) {
 	if err := opt.check(); err != nil {
 		return nil, err
 	}
@@ -40,13 +54,7 @@ func Ground(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, op
 		}
 		return nil
 	}
-	if p.rewritten != nil {
-		return ground(p, p.rewritten.state)
-	}
-	if p.strings.Real && !opt.Complex {
-		return ground(p, mps.NewReal)
-	}
-	return ground(p, mps.NewComplex)
+	return p, nil
 }
 
 // problem is a Hamiltonian in its frames with a target sector and settled options.
@@ -88,8 +96,11 @@ func newProblem(h *ladder.Hamiltonian, sector ladder.Sector, opt Options) (*prob
 	return p, nil
 }
 
-// ground runs the search in arithmetic T; wrap makes the untyped state.
-func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames, *ladder.Scope) (*mps.State, error)) (*Result, error) {
+// wrapper makes the untyped state of a chain.
+type wrapper[T dense.Scalar] func(*mps.Chain[T], *ladder.Frames, *ladder.Scope) (*mps.State, error)
+
+// ground runs the search in arithmetic T.
+func ground[T dense.Scalar](p *problem, wrap wrapper[T]) (*Result, error) {
 	op, err := mpo.Build[T](p.strings, mpo.Options{})
 	if err != nil {
 		return nil, err
@@ -98,33 +109,11 @@ func ground[T dense.Scalar](p *problem, wrap func(*mps.Chain[T], *ladder.Frames,
 	if err != nil {
 		return nil, err
 	}
-	toState := func(c *mps.Chain[T]) (*mps.State, error) { return wrap(c, p.frames, p.h.Scope) }
-	s := &search[T]{opt: p.opt, scale: p.scale, wrap: toState}
+	s := newSearch[T](p)
 	if err := s.begin(p, op, total); err != nil {
 		return nil, err
 	}
-	e := s.engine
-	e.onBond = p.opt.OnBond
-	verdict, reason, err := s.run()
-	ended := errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded)
-	if err != nil && !ended {
-		return nil, err
-	}
-	r, failed := s.result(verdict, reason, ended)
-	if failed != nil {
-		return nil, failed
-	}
-	r.Sector = p.frames.Values(total)
-	state, failed := toState(e.psi)
-	if failed != nil {
-		return nil, failed
-	}
-	r.State, r.LargestBond = state, state.MaxBond()
-	if r.Waypoint, failed = s.waypoint(); failed != nil {
-		return nil, failed
-	}
-	r.Real = !dense.IsComplex[T]()
-	return r, err
+	return newLevels(p, op, total, wrap).run(s)
 }
 
 // begin puts an engine at the start, or at the waypoint to go on from.
@@ -149,7 +138,7 @@ func (s *search[T]) begin(p *problem, op *mpo.Operator[T], total block.Charge) e
 func (s *search[T]) result(verdict Verdict, reason string, ended bool) (*Result, error) {
 	e, est := s.engine, s.estimate()
 	r := &Result{Verdict: verdict, Reason: reason, Sweeps: s.sweeps, Stages: s.reports, OperatorBonds: e.op.BondDims(),
-		LargestBond: e.psi.MaxBond(), Energy: math.NaN(), EnergyLimit: est.limit, EnergyError: est.err,
+		LargestBond: e.psi.MaxBond(), Energy: math.NaN(), EnergyLimit: est.limit - s.mixing, EnergyError: est.err + s.mixing,
 		Variance: math.NaN(), VarianceRounding: math.NaN()}
 	if n := len(s.sweeps); n > 0 {
 		r.DiscardedWeight = s.sweeps[n-1].Discarded
@@ -166,18 +155,19 @@ func (s *search[T]) result(verdict Verdict, reason string, ended bool) (*Result,
 	if math.IsNaN(r.EnergyLimit) {
 		r.EnergyLimit = r.Energy
 	}
-	r.Flops = e.flops
+	r.Flops, r.Escapes = e.flops, s.escapes
 	return r, nil
 }
 
 // startChain is the given start state where there is one, else a product state of low diagonal energy.
 func startChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
 	if p.opt.Start != nil {
-		return givenChain[T](p, total)
+		return givenChain[T](p, p.opt.Start, total)
 	}
 	return productChain[T](p, total)
 }
 
+// productChain is a product state of low diagonal energy.
 func productChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
 	states, _, err := p.starter.states(total)
 	if err != nil {
@@ -186,13 +176,13 @@ func productChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T]
 	return mps.Product[T](p.strings.Group, p.strings.Axes, states)
 }
 
-// givenChain copies the start state, if it fits.
-func givenChain[T dense.Scalar](p *problem, total block.Charge) (*mps.Chain[T], error) {
-	theirs := p.opt.Start.Frames()
+// givenChain copies a start state, if it fits.
+func givenChain[T dense.Scalar](p *problem, start *mps.State, total block.Charge) (*mps.Chain[T], error) {
+	theirs := start.Frames()
 	if theirs.Group != p.strings.Group || len(theirs.Sites) != len(p.strings.Axes) {
 		return nil, fmt.Errorf("dmrg: the start state has %d sites and charges %v, the Hamiltonian %d and %v", len(theirs.Sites), theirs.Group, len(p.strings.Axes), p.strings.Group)
 	}
-	c, err := mps.ChainOf[T](p.opt.Start)
+	c, err := mps.ChainOf[T](start)
 	if err != nil {
 		return nil, errors.New("dmrg: the start state is complex, this Hamiltonian real; start from a state of a real one, or ask for complex arithmetic (Options.Complex)")
 	}

@@ -27,8 +27,17 @@ type entry struct {
 	Learnt json.RawMessage `json:"learnt"`
 }
 
-// kindSweep is the kind of entry that holds the outcome of a sweep.
-const kindSweep = "sweep"
+// The kinds of entries after which the state may be another.
+const (
+	kindSweep  = "sweep"  // the outcome of a sweep
+	kindProbe  = "probe"  // what another start led to
+	kindAssist = "assist" // what helped a slow search
+)
+
+// moves reports whether the state may be another after an entry.
+func (e entry) moves() bool {
+	return e.Kind == kindSweep || e.Kind == kindProbe || e.Kind == kindAssist
+}
 
 // live reports whether all that was learnt before has been read again.
 func (j *journal) live() bool { return j.next == len(j.past) }
@@ -43,10 +52,10 @@ func (j *journal) sweeps() (n int) {
 	return n
 }
 
-// settled returns the entries up to the last sweep: what came after is asked again at no cost, perhaps with another answer.
+// settled returns the entries up to the last after which the state may be another: what came after is asked again at no cost, perhaps with another answer.
 func (j *journal) settled() []entry {
 	n := len(j.past)
-	for n > 0 && j.past[n-1].Kind != kindSweep {
+	for n > 0 && !j.past[n-1].moves() {
 		n--
 	}
 	return j.past[:n]

@@ -26,3 +26,5 @@ func TestTooManyTotals(t *testing.T) {
 	require.ErrorContains(t, err, "name some of")
 	require.ErrorContains(t, err, "N_a")
 }
+
+func TestLevelsOfMoreRandomLadders(t *testing.T) { testLevelsOfRandomLadders(t, 24) }

@@ -22,7 +22,9 @@ type Options struct {
 	Complex             bool            // complex arithmetic even where a real gauge exists, or real modes (ladder.Modes)
 	Opening             Opening         // how new states enter the bond; 0: PerturbedDensity
 	Schedule            []Pass          // sweeps to do instead of those that the search would choose, for measurements and experts; nil: the search chooses
+	Unprobed            bool            // call converged without a probe from another start; for measurements
 	Start               *mps.State      // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
+	Higher              []*mps.State    // states from which Lowest begins the levels above the first, in order, with Start; nil: none known
 	From                *Waypoint       // where an earlier search was saved, to go on from; nil: from the start
 	WaypointEvery       time.Duration   // least time between two calls of OnWaypoint; 0: 30 s, more where saving takes long
 	OnWaypoint          func(*Waypoint) // called between two updates, now and then, with what to save; nil: never

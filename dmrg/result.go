@@ -60,6 +60,7 @@ type Result struct {
 	Real             bool               // the search ran in real arithmetic; State may be complex all the same, see ladder.Modes
 	OperatorBonds    []int              // bond dimensions of the matrix-product operator
 	Flops            float64            // real operations of environments, projected Hamiltonians and the variance
+	Escapes          int                // times that another start led to a lower state, which the search then went on from
 	Verdict          Verdict            // "" where the context ended the search
 	Reason           string
 	Waypoint         *Waypoint // where the search ended, to go on from with other caps, or if the context ended it

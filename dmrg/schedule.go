@@ -30,6 +30,7 @@ const (
 // search is one run of the engine to a verdict.
 type search[T dense.Scalar] struct {
 	engine *engine[T]
+	from   *problem
 	opt    settled
 	scale  float64
 	wrap   func(*mps.Chain[T]) (*mps.State, error)
@@ -40,6 +41,18 @@ type search[T dense.Scalar] struct {
 	stages       []settledStage
 	sweeps       []Sweep
 	reports      []Stage
+
+	beyond  []*mps.Chain[T] // states of other starts, or left for lower ones
+	limit   float64         // a search that can end only above it ends at once; +Inf: none
+	assists int             // helps that a slow search got
+	escapes int             // lower states found from other starts
+	mixing  float64         // energy that a mixture with them would gain
+	cleared float64         // below this no other start led, where a probe ended above; else -Inf
+}
+
+// newSearch is a search that lacks its engine.
+func newSearch[T dense.Scalar](p *problem) *search[T] {
+	return &search[T]{from: p, opt: p.opt, scale: p.scale, limit: math.Inf(1), cleared: math.Inf(-1)}
 }
 
 // errTime stops a search at its cap on time.
@@ -48,8 +61,10 @@ var errTime = errors.New("the time is up")
 // run sweeps until the error estimate is below the wanted precision or a cap is met. An error of the context or the numerics ends it; the
 // chain then holds the last state.
 func (s *search[T]) run() (Verdict, string, error) {
-	if err := s.engine.prepare(); err != nil {
-		return s.ended(err)
+	if c := s.engine.psi.Center; !s.engine.envs.stand(c, c) {
+		if err := s.engine.prepare(); err != nil {
+			return s.ended(err)
+		}
 	}
 	s.schedulePause(0)
 	s.engine.onPause = s.pause
@@ -77,8 +92,16 @@ func (s *search[T]) run() (Verdict, string, error) {
 		if verdict != unfinished {
 			return verdict, reason, nil
 		}
+		if s.settledTwice() && est.limit-est.err > s.limit {
+			return Suspect, "the level lies above those asked for: it was not searched for to the end", nil
+		}
 		if est.rounding > s.opt.Precision && est.above < 4*est.rounding && s.settledTwice() {
 			return Suspect, fmt.Sprintf("the wanted precision %.1e is below the rounding error %.1e of an energy of this size; ask for less", s.opt.Precision, est.rounding), nil
+		}
+		if helped, err := s.assist(); err != nil {
+			return s.ended(err)
+		} else if helped {
+			return s.run()
 		}
 		last := &s.stages[len(s.stages)-1]
 		if last.largest < bond && len(s.stages) >= 2 {

@@ -126,7 +126,8 @@ func (c *choice[T]) look(q block.Charge) (*scout[T], error) {
 	if err != nil {
 		return nil, err
 	}
-	s := &scout[T]{total: q, search: &search[T]{engine: newEngine(c.op, psi, c.p.opt, c.p.halt), opt: c.p.opt, scale: c.p.scale}}
+	s := &scout[T]{total: q, search: newSearch[T](c.p)}
+	s.search.engine = newEngine(c.op, psi, c.p.opt, c.p.halt)
 	s.search.opt.OnSweep, s.search.opt.OnStage, s.search.opt.Sweeps = nil, nil, math.MaxInt
 	if err := s.search.engine.prepare(); err != nil {
 		return nil, err

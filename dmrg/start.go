@@ -281,3 +281,21 @@ func (r lookahead) possible(i int, c block.Charge) bool {
 	}
 	return true
 }
+
+// holds reports whether n basis states or more have charge target.
+func (b *starter) holds(target block.Charge, n int) bool {
+	var count func(i int, left block.Charge, n int) int
+	count = func(i int, left block.Charge, n int) int {
+		if i == len(b.charges) {
+			return 1
+		}
+		found := 0
+		for _, q := range b.charges[i] {
+			if rest := b.group.Sub(left, q); found < n && b.reach.possible(i+1, rest) {
+				found += count(i+1, rest, n-found)
+			}
+		}
+		return found
+	}
+	return count(0, target, n) >= n
+}

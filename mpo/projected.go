@@ -58,6 +58,9 @@ func (p *Planner[T]) Project(first, count int, left, right *block.Tensor[T], the
 	return h
 }
 
+// Sites returns the first site that h acts on, and their number.
+func (h *Projected[T]) Sites() (first, count int) { return h.first, len(h.Theta.Axes) - 2 }
+
 // Flops returns the operations of one application.
 func (h *Projected[T]) Flops() float64 { return h.net.flops() }
 
