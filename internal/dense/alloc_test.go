@@ -12,29 +12,38 @@ import (
 
 // The race detector allocates on its own account.
 func TestFactorsAllocateNothing(t *testing.T) {
-	use(t, goKernels) // LAPACK's scratch memory is allocated by call
-	const n = 24
-	a, x, y := random[complex128](n*n), make([]complex128, n*n), make([]complex128, n*n)
-	values := make([]float64, n)
-	var f SVD[complex128]
-	var h Hermitian[complex128]
-	var w Workspace[complex128]
-	pivot := make([]int, n)
-	assert.Zero(t, testing.AllocsPerRun(20, func() {
-		QR(n, n, a, n, x, n, y, n, &w)
-		LQ(n, n, a, n, x, n, y, n, &w)
-		_ = f.Factor(n, n, a, n)
-		f.Vectors(n, x, n, y, n)
-		_ = f.Factor(n, 4, a, n)
-		f.Vectors(4, x, 4, y, 4)
-		_ = f.Factor(4, n, a, n)
-		f.Vectors(4, x, 4, y, n)
-		_ = Eigen(n, a, n, values, x, n, &w)
-		_ = h.Factor(n, a, n)
-		h.Largest(3, x, n)
-		_, _ = PivotedQR(n, n, a, n, x, n, y, n, pivot, 0, &w)
-	}))
+	eachKernels(t, func(t *testing.T) {
+		if kernels == netlibKernels {
+			t.Skip("LAPACK's scratch memory is allocated by call")
+		}
+		both(t, factorsAllocateNothing[float64], factorsAllocateNothing[complex128])
+	})
 }
+
+func factorsAllocateNothing[T Scalar](t *testing.T) {
+	for _, n := range []int{1, 24, 150} {
+		a, x, y := random[T](n*n), make([]T, n*n), make([]T, n*n)
+		values, k := make([]float64, n), (n+3)/4
+		f, h, w := SVD[T]{Stop: never}, Hermitian[T]{Stop: never}, Workspace[T]{Stop: never}
+		pivot := make([]int, n)
+		assert.Zero(t, testing.AllocsPerRun(5, func() {
+			_ = QR(n, n, a, n, x, n, y, n, &w)
+			_ = LQ(n, n, a, n, x, n, y, n, &w)
+			_ = f.Factor(n, n, a, n)
+			_ = f.Vectors(n, x, n, y, n)
+			_ = f.Factor(n, k, a, n)
+			_ = f.Vectors(k, x, k, y, k)
+			_ = f.Factor(k, n, a, n)
+			_ = f.Vectors(k, x, k, y, n)
+			_ = Eigen(n, a, n, values, x, n, &w)
+			_ = h.Factor(n, a, n)
+			_ = h.Largest(k, x, n)
+			_, _ = PivotedQR(n, n, a, n, x, n, y, n, pivot, 0, &w)
+		}), "n=%d", n)
+	}
+}
+
+func never() bool { return false }
 
 // TestProductsAllocateNothing goes every way that a product can take, in every kernel that is ours, and runs batches. The library of the
 // tag netlib is left out: calls into C allocate.

@@ -25,9 +25,11 @@ func TestZooIsLarge(t *testing.T) {
 }
 
 func TestZoo(t *testing.T) {
-	for _, n := range zooSizes {
-		t.Run(fmt.Sprintf("n=%d", n), func(t *testing.T) { both(t, zooAt[float64](n), zooAt[complex128](n)) })
-	}
+	eachKernels(t, func(t *testing.T) {
+		for _, n := range zooSizes {
+			t.Run(fmt.Sprintf("n=%d", n), func(t *testing.T) { both(t, zooAt[float64](n), zooAt[complex128](n)) })
+		}
+	})
 }
 
 func TestZooLarge(t *testing.T) {
