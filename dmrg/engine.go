@@ -223,7 +223,11 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 	out.residual = max(out.residual, e.residual)
 	out.gain += e.gain
 	if e.onBond != nil {
-		e.onBond(Position{Sweep: e.sweeps, Bond: i, Bonds: e.psi.Len() - 1, Energy: energy})
+		bonds, done := e.psi.Len()-1, i+1
+		if !right {
+			done = 2*bonds - i
+		}
+		e.onBond(Position{Sweep: e.sweeps, Bond: i, Bonds: bonds, Done: done, Energy: energy})
 	}
 	return nil
 }

@@ -68,6 +68,8 @@ type problem struct {
 	scale   float64 // largest coupling, 1 if there is none
 	halt    func() error
 
+	undecided bool // the time was up while free charges were still being chosen
+
 	rewritten *rewritten // where the search works in other modes than the user's; h is the user's
 }
 

@@ -62,8 +62,10 @@ func (l *levels[T]) run(s *search[T]) (*Result, error) {
 		return nil, failed
 	}
 	r.State, r.LargestBond = state, state.MaxBond()
-	if r.Waypoint, failed = s.waypoint(); failed != nil {
-		return nil, failed
+	if !l.from.undecided {
+		if r.Waypoint, failed = s.waypoint(); failed != nil {
+			return nil, failed
+		}
 	}
 	r.Real = !dense.IsComplex[T]()
 	l.found = append(l.found, &found[T]{s.engine.psi, r, s.estimate()})

@@ -19,6 +19,7 @@ type Sweep struct {
 // Position tells where in a sweep the engine stands.
 type Position struct {
 	Sweep, Bond, Bonds int
+	Done               int // updates of this sweep, this one included
 	Energy             float64
 }
 
@@ -63,5 +64,5 @@ type Result struct {
 	Escapes          int                // times that another start led to a lower state, which the search then went on from
 	Verdict          Verdict            // "" where the context ended the search
 	Reason           string
-	Waypoint         *Waypoint // where the search ended, to go on from with other caps, or if the context ended it
+	Waypoint         *Waypoint // where the search ended, to go on from with other caps, or if the context ended it; nil where the time was up while free charges were still being chosen
 }

@@ -49,7 +49,7 @@ func pickTotal[T dense.Scalar](p *problem, op *mpo.Operator[T]) (block.Charge, e
 	c := &choice[T]{p: p, op: op, scouts: make(map[block.Charge]*scout[T]), totals: totals, spacing: spacings(totals)}
 	best, err := c.lowest()
 	if errors.Is(err, errTime) {
-		err = nil
+		p.undecided, err = true, nil
 	}
 	return best, err
 }

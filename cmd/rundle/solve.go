@@ -14,6 +14,7 @@ type solveCommand struct {
 	Out    string `name:"out" placeholder:"DIR" help:"Run folder; default: the model file's name beside it, with .run."`
 	Fresh  bool   `name:"fresh" help:"Move the run that is there aside and begin anew."`
 	Start  string `name:"start" placeholder:"DIR" help:"Begin from the state of another run."`
+	Every  string `name:"checkpoint-every" placeholder:"TIME" help:"Least time between two checkpoints, such as \"10m\"; default: 30 s, more where they take long."`
 	Memory string `name:"memory" placeholder:"SIZE" help:"Cap on the memory of state and environments, such as \"8 GiB\"."`
 }
 
@@ -23,6 +24,11 @@ func (k solveCommand) run(c *console) (int, error) {
 	if k.Memory != "" {
 		if opt.Memory, err = modelfile.Size(k.Memory); err != nil {
 			return 0, &usageError{"--memory: " + err.Error(), ""}
+		}
+	}
+	if k.Every != "" {
+		if opt.CheckpointEvery, err = modelfile.Duration(k.Every); err != nil {
+			return 0, &usageError{"--checkpoint-every: " + err.Error(), ""}
 		}
 	}
 	m, err := load(k.File)

@@ -13,7 +13,8 @@
 //
 // Every file but the log is written to a new file, synced and renamed, so that
 // a reader never sees half of one. Log lines are appended whole; a line cut
-// off by a kill is dropped when the folder is opened again. A folder is locked
+// off by a kill is dropped when the folder is opened again, and [Folder.KeepLog]
+// drops those of sweeps that are to be done again. A folder is locked
 // while a run writes to it; reading takes no lock.
 //
 // [Open] decides by the hash of the model, which covers all that determines

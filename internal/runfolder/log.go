@@ -45,6 +45,33 @@ func (f *Folder) Log(s Sweep) error {
 	return nil
 }
 
+// KeepLog drops the lines of sweeps after the given number, which are to be done again, and lines that cannot be read.
+func (f *Folder) KeepLog(sweeps int) error {
+	path := f.path(LogFile)
+	text, err := os.ReadFile(path)
+	if os.IsNotExist(err) {
+		return nil
+	}
+	if err != nil {
+		return unusable(f.dir, err)
+	}
+	if f.log != nil {
+		_ = f.log.Close()
+		f.log = nil
+	}
+	var kept []byte
+	for line := range bytes.Lines(text) {
+		var s Sweep
+		if bytes.HasSuffix(line, []byte("\n")) && json.Unmarshal(line, &s) == nil && s.Sweep <= sweeps {
+			kept = append(kept, line...)
+		}
+	}
+	if len(kept) == len(text) {
+		return nil
+	}
+	return write(path, kept)
+}
+
 // openLog opens the log for appending and cuts off half a line at its end.
 func openLog(path string) (*os.File, error) {
 	file, err := os.OpenFile(path, os.O_RDWR|os.O_CREATE|os.O_APPEND, 0o666)

@@ -76,3 +76,32 @@ func TestStatus(t *testing.T) {
 	require.NoError(t, err)
 	assert.Equal(t, s, again)
 }
+
+// TestKeepLog: of a log the first sweeps stay, whatever follows them; what is appended afterwards comes after them.
+func TestKeepLog(t *testing.T) {
+	f := open(t, filepath.Join(t.TempDir(), "a.run"), model, Options{})
+	require.NoError(t, f.KeepLog(3), "no log at all")
+	for n := 1; n <= 5; n++ {
+		require.NoError(t, f.Log(Sweep{Sweep: n}))
+	}
+	sweeps := func() (all []int) {
+		lines, err := ReadLog(f.Dir())
+		require.NoError(t, err)
+		for _, s := range lines {
+			all = append(all, s.Sweep)
+		}
+		return all
+	}
+	require.NoError(t, f.KeepLog(9))
+	require.Equal(t, []int{1, 2, 3, 4, 5}, sweeps())
+	require.NoError(t, f.KeepLog(3))
+	require.NoError(t, f.Log(Sweep{Sweep: 4, Note: "again"}))
+	require.Equal(t, []int{1, 2, 3, 4}, sweeps())
+	file, err := os.OpenFile(filepath.Join(f.Dir(), LogFile), os.O_APPEND|os.O_WRONLY, 0)
+	require.NoError(t, err)
+	_, err = file.WriteString("no JSON\n{\"sweep\":2")
+	require.NoError(t, err)
+	require.NoError(t, file.Close())
+	require.NoError(t, f.KeepLog(4))
+	require.Equal(t, []int{1, 2, 3, 4}, sweeps())
+}

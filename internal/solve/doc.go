@@ -12,9 +12,18 @@
 //
 // # Checkpoints
 //
-// At every settled bond dimension the state goes to the checkpoint folder, and when the context ends the last state as well.
-// The next [Run] of the same model starts from there, in the sector found before. A run that met its cap on time leaves results and
-// checkpoint: running it again goes on. One that met its cap on memory goes on when it is given more.
+// Every 30 s, between the updates of two bonds, where the search stands goes to the checkpoint folder (dmrg.Waypoint): to save it takes what
+// writing the site tensors takes. So it does when the context ends, which a search heeds within a second, and at the caps on time and
+// memory. The next [Run] of the same model goes on at that very bond and ends with the same bits as an undisturbed run, whatever
+// the number of threads. Two checkpoints are kept: should the newer one be damaged, a note tells so and the older one serves. One of another
+// format or model is a Refusal.
+//
+// A process that is killed loses what it did since its last checkpoint. Sweeps that are then done again are dropped from log.jsonl first, so that it
+// tells each sweep once; a sweep that was interrupted in the middle is told when it is whole, its seconds those of all its parts.
+// While values of free charges are being chosen nothing is saved: that phase begins anew.
+//
+// A run that met its cap on time leaves results and checkpoint: running it again goes on. One that met its cap on memory goes on when
+// it is given more.
 //
 // # Error bars of observations
 //

@@ -2,6 +2,7 @@ package solve
 
 import (
 	"fmt"
+	"time"
 
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
@@ -9,14 +10,15 @@ import (
 
 // Options steer a run. The zero value is the good default; every field's zero is stated beside it.
 type Options struct {
-	Dir        string         // run folder; "": the default beside the model file
-	Fresh      bool           // move an existing run aside and begin anew
-	StartDir   string         // run folder whose first state the search starts from; "": a product state
-	Threads    int            // workers; 0: GOMAXPROCS
-	Memory     int64          // cap on the bytes of state and environments; 0: what the model says
-	Version    string         // of the program, for the result
-	OnProgress func(Progress) // called often, from one goroutine; nil: nothing is told
-	OnNote     func(string)   // called with what the user should know, before the work that it is about; nil: nothing is told
+	Dir             string         // run folder; "": the default beside the model file
+	Fresh           bool           // move an existing run aside and begin anew
+	StartDir        string         // run folder whose first state the search starts from; "": a product state
+	Threads         int            // workers; 0: GOMAXPROCS
+	Memory          int64          // cap on the bytes of state and environments; 0: what the model says
+	CheckpointEvery time.Duration  // least time between two checkpoints; 0: 30 s, more where they take long
+	Version         string         // of the program, for the result
+	OnProgress      func(Progress) // called often, from one goroutine; nil: nothing is told
+	OnNote          func(string)   // called with what the user should know, before the work that it is about; nil: nothing is told
 }
 
 // Phase says what a run does.
@@ -85,6 +87,8 @@ func (o Options) check(m *modelfile.Model) error {
 	switch {
 	case o.Threads < 0:
 		return refuse("threads %d: expected a positive number, or none for all processors", o.Threads)
+	case o.CheckpointEvery < 0:
+		return refuse("checkpoints every %v: expected a positive time", o.CheckpointEvery)
 	case o.Memory < 0:
 		return refuse("memory of %d bytes: expected a positive size", o.Memory)
 	case m.Solve.States > 1:

@@ -80,7 +80,7 @@ func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyE
 		return nil, err
 	}
 	back := 0
-	if w.settledAt == w.check.Sweeps {
+	if w.check.SettledAt == w.check.Sweeps {
 		back = 1 // the state found is the last settled one
 	}
 	before, mark, err := w.check.earlier(back)

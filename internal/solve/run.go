@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"maps"
+	"path/filepath"
 
 	"rundle/dmrg"
 	"rundle/internal/dense"
@@ -68,11 +69,13 @@ func (r *run) returned() (bool, error) {
 	if err != nil {
 		return false, refused(err)
 	}
-	c, state, _ := openCheckpoint(r.folder)
-	if state != nil {
+	if anyVerdict(result, runfolder.TimeCap) {
+		return false, nil
+	}
+	if anyVerdict(result, runfolder.MemoryCap) {
 		memory := r.memory()
-		more := memory == 0 || memory > c.Memory
-		if anyVerdict(result, runfolder.TimeCap) || anyVerdict(result, runfolder.MemoryCap) && c.Memory > 0 && more {
+		c, at, _, err := openCheckpoint(r.folder, r.origin.Hash)
+		if err == nil && at != nil && c.Memory > 0 && (memory == 0 || memory > c.Memory) {
 			return false, nil
 		}
 	}
@@ -106,28 +109,37 @@ func (r *run) precision() float64 {
 func (r *run) solve(parent context.Context, start *mps.State) error {
 	ctx, stop := context.WithCancelCause(parent)
 	defer stop(nil)
-	check, saved, notes := openCheckpoint(r.folder)
+	check, at, notes, err := openCheckpoint(r.folder, r.origin.Hash)
+	if err != nil {
+		return err
+	}
 	for _, n := range notes {
 		r.note("%s", n)
+	}
+	if err := errors.Join(check.clean(r.folder), r.folder.KeepLog(check.Sweeps)); err != nil {
+		return diskError(r.folder.Dir(), err)
+	}
+	if at != nil {
+		r.out.Resumed = true
+		r.note("going on from the checkpoint after %d sweeps", check.Sweeps)
 	}
 	sector := maps.Clone(r.model.Sector)
 	if sector == nil {
 		sector = ladder.Sector{}
 	}
-	if saved != nil {
-		start, r.out.Resumed = saved, true
-		r.note("going on from the checkpoint of sweep %d", check.Sweeps)
-	}
 	if start != nil {
 		stay(sector, start)
 	}
 	check.Memory = r.memory()
-	w := newWatch(r.folder, check, r.opt.OnProgress, stop)
+	w := newWatch(r.folder, check, at, r.opt.OnProgress, stop)
 	w.enter(Preparing)
 	if err := w.status(runfolder.Running, ""); err != nil {
 		return diskError(r.folder.Dir(), err)
 	}
-	found, err := dmrg.Ground(ctx, r.model.Hamiltonian, sector, r.options(w, start))
+	found, err := dmrg.Ground(ctx, r.model.Hamiltonian, sector, r.options(w, start, at))
+	if errors.Is(err, dmrg.ErrDeparted) {
+		err = otherVersion(filepath.Join(r.folder.Dir(), runfolder.CheckpointName), err)
+	}
 	if err != nil {
 		return r.interrupted(ctx, w, found, err)
 	}
@@ -148,14 +160,12 @@ func stay(sector ladder.Sector, start *mps.State) {
 	}
 }
 
-func (r *run) options(w *watch, start *mps.State) dmrg.Options {
+func (r *run) options(w *watch, start *mps.State, at *dmrg.Waypoint) dmrg.Options {
 	s := r.model.Solve
 	o := dmrg.Options{
 		Precision: r.precision(), ObservablePrecision: s.ObservablePrecision, Bond: s.Bond, Sweeps: s.Sweeps, Time: s.Time,
 		Memory: r.memory(), Threads: r.opt.Threads, Seed: s.Seed, Charges: s.Charges, Start: start,
-	}
-	if s.Sweeps > 0 {
-		o.Sweeps = max(1, s.Sweeps-w.before.Sweeps)
+		From: at, WaypointEvery: r.opt.CheckpointEvery,
 	}
 	w.hook(&o)
 	return o
@@ -164,9 +174,9 @@ func (r *run) options(w *watch, start *mps.State) dmrg.Options {
 // interrupted ends a run whose context ended, with a checkpoint, or passes on why it failed.
 func (r *run) interrupted(ctx context.Context, w *watch, found *dmrg.Result, err error) error {
 	if ended(ctx, err) {
-		if found != nil && found.State != nil && w.now.Sweep > 0 {
-			w.check.Sector = found.State.Charges()
-			if err := w.check.keep(r.folder, found.State); err != nil {
+		if found != nil && found.Waypoint != nil {
+			w.check.Sector = found.Sector
+			if err := w.save(found.Waypoint); err != nil {
 				return diskError(r.folder.Dir(), err)
 			}
 		}
@@ -207,8 +217,8 @@ func (r *run) write(w *watch, found *dmrg.Result, result *runfolder.Result) erro
 		func() error { return found.State.Save(r.folder.StatePath(0)) },
 		func() error { return r.folder.WriteResult(result) },
 		func() error {
-			if goesOn(result) {
-				return w.check.keep(r.folder, found.State)
+			if goesOn(result) && found.Waypoint != nil {
+				return w.save(found.Waypoint)
 			}
 			return r.folder.DropCheckpoint()
 		},

@@ -13,6 +13,7 @@ import (
 	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 
+	"rundle/dmrg"
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
 )
@@ -208,7 +209,7 @@ func TestResume(t *testing.T) {
 		require.NoError(t, err)
 		assert.Equal(t, calls > 1, out.Resumed)
 		if out.Resumed {
-			assert.Equal(t, []string{fmt.Sprintf("going on from the checkpoint of sweep %d", sweeps)}, notes)
+			assert.Equal(t, []string{fmt.Sprintf("going on from the checkpoint after %d sweeps", sweeps)}, notes)
 		}
 		status, err := runfolder.ReadStatus(dir)
 		require.NoError(t, err)
@@ -217,7 +218,7 @@ func TestResume(t *testing.T) {
 			break
 		}
 		assert.Equal(t, runfolder.Stopped, status.Phase)
-		assert.FileExists(t, filepath.Join(dir, runfolder.CheckpointName, latestFile))
+		assert.FileExists(t, filepath.Join(dir, runfolder.CheckpointName, fmt.Sprintf(pointName, calls)))
 		assert.NoFileExists(t, filepath.Join(dir, runfolder.ResultFile))
 		assert.Equal(t, sweeps+calls, status.Sweep)
 		sweeps = status.Sweep
@@ -234,6 +235,9 @@ func TestResume(t *testing.T) {
 		assert.Equal(t, i+1, line.Sweep)
 	}
 	assert.Len(t, log, s.Sweeps)
+	whole := solved(t, m, Options{Dir: filepath.Join(t.TempDir(), "b.run")}).Result.States
+	whole[0].Seconds, out.Result.States[0].Seconds = 0, 0
+	assert.Equal(t, whole, out.Result.States, "the same bits as an undisturbed run's, error bars included")
 }
 
 // TestStoppedEarly: a context that ended before the search leaves nothing to go on from, and nothing broken.
@@ -268,54 +272,122 @@ func TestStoppedObserving(t *testing.T) {
 	assert.InDelta(t, energy, again.Result.States[0].Energy, 1e-8)
 }
 
-// TestDamagedCheckpoint: a checkpoint that cannot be read is told of and left aside.
+// TestDamagedCheckpoint: of checkpoints that cannot be read the one before serves, and it is told; foreign ones are refused.
 func TestDamagedCheckpoint(t *testing.T) {
-	stopped := func(t *testing.T) (*modelfile.Model, string) {
-		m := chain(t, 10, 5, 1e-7)
+	m := chain(t, 10, 5, 1e-7)
+	whole := solved(t, m, Options{Dir: filepath.Join(t.TempDir(), "a.run")}).Result.States[0]
+	stopped := func(t *testing.T) string {
 		dir := filepath.Join(t.TempDir(), "a.run")
 		ctx, stop := context.WithCancel(context.Background())
 		defer stop()
-		out, err := Run(ctx, m, Options{Dir: dir, OnProgress: func(p Progress) {
+		out, err := Run(ctx, m, Options{Dir: dir, CheckpointEvery: 1, OnProgress: func(p Progress) {
 			if p.Sweep == 9 {
 				stop()
 			}
 		}})
 		require.NoError(t, err)
 		require.True(t, out.Stopped)
-		return m, dir
+		return dir
 	}
-	for _, c := range []struct {
-		name    string
-		spoil   func(t *testing.T, dir string)
-		resumed bool
-		note    string
-	}{
-		{"progress", func(t *testing.T, dir string) {
-			require.NoError(t, os.WriteFile(filepath.Join(dir, progressFile), []byte("{"), 0o600))
-		}, false, "the search begins anew"},
-		{"format", func(t *testing.T, dir string) {
-			require.NoError(t, os.WriteFile(filepath.Join(dir, progressFile), []byte(`{"format": "other/2"}`), 0o600))
-		}, false, `it has the format "other/2"`},
-		{"latest state", func(t *testing.T, dir string) {
-			require.NoError(t, os.WriteFile(filepath.Join(dir, latestFile), []byte("PK"), 0o600))
-		}, true, latestFile},
-		{"all states", func(t *testing.T, dir string) {
-			for _, name := range []string{latestFile, settledFile, earlierFile} {
-				require.NoError(t, os.WriteFile(filepath.Join(dir, name), nil, 0o600))
-			}
-		}, false, "no state to go on from"},
-	} {
-		t.Run(c.name, func(t *testing.T) {
-			m, dir := stopped(t)
-			c.spoil(t, filepath.Join(dir, runfolder.CheckpointName))
-			var notes []string
-			out := solved(t, m, Options{Dir: dir, OnNote: func(s string) { notes = append(notes, s) }})
-			assert.Equal(t, c.resumed, out.Resumed)
-			assert.Contains(t, strings.Join(notes, "\n"), c.note)
-			energy, _ := filled(10, 5)
-			assert.InDelta(t, energy, out.Result.States[0].Energy, 1e-7)
-		})
+	points := func(t *testing.T, dir string) []string {
+		paths, err := filepath.Glob(filepath.Join(dir, runfolder.CheckpointName, "point-*.npz"))
+		require.NoError(t, err)
+		require.Len(t, paths, keptPoints)
+		slices.SortStableFunc(paths, func(a, b string) int { return len(a) - len(b) }) // 99 comes before 100
+		return paths
 	}
+	spoil := func(t *testing.T, paths ...string) {
+		for _, path := range paths {
+			text, err := os.ReadFile(path)
+			require.NoError(t, err)
+			text[len(text)/2] ^= 1
+			require.NoError(t, os.WriteFile(path, text, 0o600))
+		}
+	}
+	again := func(t *testing.T, dir string, resumed bool, note string) {
+		var notes []string
+		out := solved(t, m, Options{Dir: dir, OnNote: func(s string) { notes = append(notes, s) }})
+		assert.Equal(t, resumed, out.Resumed)
+		assert.Contains(t, strings.Join(notes, "\n"), note)
+		assert.Equal(t, whole.Energy, out.Result.States[0].Energy)
+		log, err := runfolder.ReadLog(dir)
+		require.NoError(t, err)
+		assert.Len(t, log, whole.Sweeps)
+	}
+	t.Run("the newest", func(t *testing.T) {
+		dir := stopped(t)
+		paths := points(t, dir)
+		spoil(t, paths[1])
+		again(t, dir, true, filepath.Base(paths[1]))
+	})
+	t.Run("a half", func(t *testing.T) {
+		dir := stopped(t)
+		paths := points(t, dir)
+		require.NoError(t, os.Truncate(paths[1], 1000))
+		again(t, dir, true, filepath.Base(paths[1]))
+	})
+	t.Run("all", func(t *testing.T) {
+		dir := stopped(t)
+		spoil(t, points(t, dir)...)
+		again(t, dir, false, "the search begins anew")
+	})
+	refusal := func(t *testing.T, dir, want string) {
+		_, err := Run(context.Background(), m, Options{Dir: dir})
+		assert.True(t, isRefusal(err), "%v", err)
+		assert.ErrorContains(t, err, want)
+		assert.ErrorContains(t, err, "--fresh")
+	}
+	t.Run("of another format", func(t *testing.T) {
+		dir := stopped(t)
+		paths := points(t, dir)
+		require.NoError(t, os.Remove(paths[0]))
+		w, note, err := dmrg.LoadWaypoint(paths[1])
+		require.NoError(t, err)
+		require.NoError(t, w.Save(paths[1], strings.Replace(note, progressFormat, "rundle-checkpoint/7", 1)))
+		refusal(t, dir, `"rundle-checkpoint/7"`)
+	})
+	t.Run("of another model", func(t *testing.T) {
+		dir := stopped(t)
+		paths := points(t, dir)
+		w, note, err := dmrg.LoadWaypoint(paths[1])
+		require.NoError(t, err)
+		require.NoError(t, w.Save(paths[1], strings.Replace(note, m.Hash, strings.Repeat("0", len(m.Hash)), 1)))
+		refusal(t, dir, "of the model 000000")
+	})
+	t.Run("of the format before", func(t *testing.T) {
+		dir := stopped(t)
+		for _, path := range points(t, dir) {
+			require.NoError(t, os.Remove(path))
+		}
+		require.NoError(t, os.WriteFile(filepath.Join(dir, runfolder.CheckpointName, oldProgressFile), []byte("{}"), 0o600))
+		refusal(t, dir, "format before")
+	})
+}
+
+// TestLogOfAKilledRun: sweeps after the checkpoint are done again, and the log tells each of them once.
+func TestLogOfAKilledRun(t *testing.T) {
+	m := chain(t, 10, 5, 1e-7)
+	dir := filepath.Join(t.TempDir(), "a.run")
+	ctx, stop := context.WithCancel(context.Background())
+	defer stop()
+	_, err := Run(ctx, m, Options{Dir: dir, OnProgress: func(p Progress) {
+		if p.Sweep == 6 {
+			stop()
+		}
+	}})
+	require.NoError(t, err)
+	log := filepath.Join(dir, runfolder.LogFile)
+	text, err := os.ReadFile(log)
+	require.NoError(t, err)
+	text = append(text, strings.Replace(string(text[:strings.IndexByte(string(text), '\n')+1]), `"sweep":1,`, `"sweep":6,`, 1)+`{"state":0,"swe`...)
+	require.NoError(t, os.WriteFile(log, text, 0o600))
+	out := solved(t, m, Options{Dir: dir})
+	lines, err := runfolder.ReadLog(dir)
+	require.NoError(t, err)
+	for i, line := range lines {
+		assert.Equal(t, i+1, line.Sweep)
+	}
+	assert.Len(t, lines, out.Result.States[0].Sweeps)
 }
 
 // TestLimits: a run that met its cap on time goes on; one that met its cap on memory goes on when it is given more.

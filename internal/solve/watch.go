@@ -17,25 +17,28 @@ type watch struct {
 	report func(Progress)
 	stop   context.CancelCauseFunc
 
-	before    progress // of the checkpoint that the search went on from
-	begin     time.Time
-	now       Progress
-	stages    int
-	settledAt int // sweep after which the last bond dimension settled
-	told      time.Time
+	before float64 // seconds spent by earlier runs
+	begin  time.Time
+	now    Progress
+	stages int
+	told   time.Time
 }
 
 // statusEvery spares the disk: status.json serves eyes.
 const statusEvery = time.Second
 
-func newWatch(f *runfolder.Folder, c *checkpoint, report func(Progress), stop context.CancelCauseFunc) *watch {
-	w := &watch{folder: f, check: c, report: report, stop: stop, before: c.progress, begin: time.Now()}
+// newWatch follows a search that goes on from a waypoint, or begins where that is nil.
+func newWatch(f *runfolder.Folder, c *checkpoint, at *dmrg.Waypoint, report func(Progress), stop context.CancelCauseFunc) *watch {
+	w := &watch{folder: f, check: c, report: report, stop: stop, before: c.Seconds, begin: time.Now()}
 	w.now = Progress{Phase: Preparing, Sweep: c.Sweeps}
+	if at != nil {
+		w.stages = at.Stages
+	}
 	return w
 }
 
 func (w *watch) hook(o *dmrg.Options) {
-	o.OnBond, o.OnSweep, o.OnStage = w.onBond, w.onSweep, w.onStage
+	o.OnBond, o.OnSweep, o.OnStage, o.OnWaypoint = w.onBond, w.onSweep, w.onStage, w.onWaypoint
 }
 
 // enter reports a phase.
@@ -51,19 +54,16 @@ func (w *watch) tell() {
 }
 
 func (w *watch) onBond(p dmrg.Position) {
-	if n := w.before.Sweeps + p.Sweep; n != w.now.Sweep || w.now.Phase != Sweeping {
-		w.now.Phase, w.now.Sweep, w.now.Done, w.now.Of = Sweeping, n, 0, 2*p.Bonds
-	}
-	w.now.Done = min(w.now.Done+1, w.now.Of)
+	w.now.Phase, w.now.Sweep, w.now.Of = Sweeping, p.Sweep, 2*p.Bonds
+	w.now.Done = p.Done
 	w.now.Energy = p.Energy
 	w.tell()
 }
 
 func (w *watch) onSweep(s dmrg.Sweep) {
-	n := w.before.Sweeps + s.Number
-	w.check.Sweeps, w.check.Seconds = n, w.before.Seconds+time.Since(w.begin).Seconds()
+	w.check.Sweeps = s.Number
 	w.now.Energy, w.now.Bond, w.now.LargestBond, w.now.Discarded = s.Energy, s.Bond, s.LargestBond, s.Discarded
-	w.fail(w.folder.Log(runfolder.Sweep{Stage: w.stages, Sweep: n, Energy: s.Energy, DiscardedWeight: s.Discarded,
+	w.fail(w.folder.Log(runfolder.Sweep{Stage: w.stages, Sweep: s.Number, Energy: s.Energy, DiscardedWeight: s.Discarded,
 		LargestBond: s.LargestBond, Seconds: s.Seconds}))
 	if time.Since(w.told) >= statusEvery {
 		w.told = time.Now()
@@ -73,9 +73,17 @@ func (w *watch) onSweep(s dmrg.Sweep) {
 
 func (w *watch) onStage(s dmrg.Stage) {
 	w.stages++
-	w.settledAt = w.check.Sweeps
+	w.check.SettledAt = w.check.Sweeps
 	w.check.Sector = s.State.Charges()
-	w.fail(w.check.settle(w.folder, s.State, settled{Bond: s.Bond, Discarded: s.Discarded}))
+	w.fail(w.check.settle(w.folder, s.State, settled{Stage: w.stages, Bond: s.Bond, Discarded: s.Discarded}))
+}
+
+func (w *watch) onWaypoint(at *dmrg.Waypoint) { w.fail(w.save(at)) }
+
+// save keeps where the search stands.
+func (w *watch) save(at *dmrg.Waypoint) error {
+	w.check.Seconds = w.seconds()
+	return w.check.save(w.folder, at)
 }
 
 // fail ends the search at the next bond when the folder cannot be written.
@@ -100,7 +108,7 @@ func (w *watch) status(p runfolder.Phase, message string) error {
 }
 
 // seconds is the time that the search took, earlier runs included.
-func (w *watch) seconds() float64 { return w.before.Seconds + time.Since(w.begin).Seconds() }
+func (w *watch) seconds() float64 { return w.before + time.Since(w.begin).Seconds() }
 
 // ended tells whether err is that of a context that ended, and not of a failure that ended it.
 func ended(ctx context.Context, err error) bool {

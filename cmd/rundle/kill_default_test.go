@@ -1,0 +1,8 @@
+//go:build unix && !long
+
+package main
+
+const (
+	killCount = 5
+	killRungs = 8
+)
