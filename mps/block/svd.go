@@ -64,6 +64,11 @@ func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, pool *task.Pool) (u *T
 }
 
 // decomposition holds the factored matrices of a tensor, one a bond charge.
+//
+// Why singular values: where one isometry is enough, the eigenvectors of the smaller of A A^H and A^H A cost 0.8 (n = 32, half kept) to
+// 0.55 (n = 512, a quarter kept) of them, but have squares right to 2e-15 of the sum only, near the 1e-13 that a search with default
+// precision may discard; of a sweep at bond 400 on four legs that saved 0.6 %. A pivoted QR first saves up to two thirds if the rank is
+// a quarter of n to full accuracy, which the spectra of ground states are not, and costs a third if it is full.
 type decomposition[T dense.Scalar] struct {
 	plan   *MatrixPlan
 	svd    []dense.SVD[T]
