@@ -164,6 +164,7 @@ func (b *bundle[T]) solve(h *mpo.Projected[T], thetas []*block.Tensor[T], s sett
 		b.count(h.Flops())
 	}
 	against := b.constraints(h)
+	var live, dead []*block.Tensor[T]
 	var worst float64
 	for k, theta := range thetas {
 		if s.noise > 0 && theta.Norm() > 0 {
@@ -173,9 +174,7 @@ func (b *bundle[T]) solve(h *mpo.Projected[T], thetas []*block.Tensor[T], s sett
 			b.randomize(theta)
 		}
 		if !b.freed(theta, against) {
-			// The space of these two sites is too small for as many states; wider bonds come.
-			clear(theta.Data)
-			worst = math.Inf(1)
+			dead = append(dead, theta)
 			continue
 		}
 		r := krylov.Lowest(apply, theta.Data, against, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance, Pool: b.pool}, &b.kry)
@@ -187,23 +186,26 @@ func (b *bundle[T]) solve(h *mpo.Projected[T], thetas []*block.Tensor[T], s sett
 		}
 		worst = max(worst, r.Residual)
 		b.gains[k] = r.Start - r.Value
-		against = append(against, theta.Data)
+		against, live = append(against, theta.Data), append(live, theta)
 	}
-	if b.combine(apply, thetas); halted != nil {
-		return halted
+	if b.residual = worst; len(dead) > 0 {
+		b.residual = math.Inf(1) // the space of these two sites is too small for as many states; wider bonds come
 	}
-	b.residual = worst
-	return nil
+	if len(live) == 0 {
+		for k := range b.values {
+			b.values[k] = math.Inf(1)
+		}
+		return nil
+	}
+	for _, theta := range dead {
+		clear(theta.Data)
+	}
+	b.combine(apply, live)
+	return halted
 }
 
 // combine turns orthonormal states into the eigenvectors of the Hamiltonian in their span.
-func (b *bundle[T]) combine(apply func(dst, src []T), thetas []*block.Tensor[T]) {
-	var live []*block.Tensor[T]
-	for _, t := range thetas {
-		if t.Norm() > 0 {
-			live = append(live, t)
-		}
-	}
+func (b *bundle[T]) combine(apply func(dst, src []T), live []*block.Tensor[T]) {
 	m := len(live)
 	matrix, vectors, image := make([]T, m*m), make([]T, m*m), make([]T, len(live[0].Data))
 	for j, t := range live {

@@ -13,7 +13,7 @@ import (
 // Figures of the probes that guard the verdict Converged.
 const (
 	probeShare  = 0.25 // of the operations of the search
-	probeBlink  = 1e8  // operations, where that is less
+	probeBlink  = 4e7  // operations, where that is less
 	probeBond   = 16   // of the first stage
 	probeGrowth = 2    // factor between stages
 	probeStates = 3    // searched for at once
