@@ -20,25 +20,26 @@ type tiling struct {
 	dotWeight           int        // and how many steps along k an element's sum over lanes costs
 	turnedFrom          int        // m·k from which they are worth a copy of B for few columns
 
+	crowdedRows  int // of C up to which a B whose rows crowd the caches, a page or more apart, is read where it lies
 	turnedStride int // of a transposed A from which a copy is worth it if it crowds the cache
 }
 
 var (
 	real512 = tiling{
 		size: 8, lanes: 8, shift: 3, tile: tileReal512, rows: 8, vectors: 3, depth: 256, height: 128, width: 504,
-		dots: dotsReal512, dotRows: 4, dotColumns: 4, dotHeight: 32, dotWeight: 4, turnedFrom: 512, turnedStride: 1 << 62,
+		dots: dotsReal512, dotRows: 4, dotColumns: 4, dotHeight: 32, dotWeight: 4, turnedFrom: 512, turnedStride: 1 << 62, crowdedRows: 32,
 	}
 	complex512 = tiling{
 		size: 16, lanes: 4, shift: 2, tile: tileComplex512, rows: 4, vectors: 3, depth: 128, height: 128, width: 252,
-		dots: dotsComplex512, dotRows: 4, dotColumns: 2, dotHeight: 32, dotWeight: 8, turnedFrom: 512, turnedStride: 1 << 14,
+		dots: dotsComplex512, dotRows: 4, dotColumns: 2, dotHeight: 32, dotWeight: 8, turnedFrom: 512, turnedStride: 1 << 14, crowdedRows: 32,
 	}
 	real256 = tiling{
 		size: 8, lanes: 4, shift: 2, tile: tileReal256, rows: 4, vectors: 3, depth: 256, height: 128, width: 504,
-		dots: dotsReal256, dotRows: 2, dotColumns: 4, dotHeight: 32, dotWeight: 2, turnedFrom: 2048,
+		dots: dotsReal256, dotRows: 2, dotColumns: 4, dotHeight: 32, dotWeight: 2, turnedFrom: 2048, crowdedRows: 12,
 	}
 	complex256 = tiling{
 		size: 16, lanes: 2, shift: 1, tile: tileComplex256, rows: 3, vectors: 2, depth: 128, height: 128, width: 252,
-		dots: dotsComplex256, dotRows: 2, dotColumns: 2, dotHeight: 16, dotWeight: 4, turnedFrom: 2048,
+		dots: dotsComplex256, dotRows: 2, dotColumns: 2, dotHeight: 16, dotWeight: 4, turnedFrom: 2048, crowdedRows: 9,
 	}
 )
 

@@ -38,7 +38,7 @@ func runTiles(p *tileCall, size int, transA, transB bool, m, n, k, lda, ldb, ldc
 			return
 		}
 	}
-	inPlace := !transB && (m <= inPlaceRows || k*p.rowB <= inPlaceBytes && !crowded(k, p.rowB))
+	inPlace := !transB && t.readsInPlace(m, k, p.rowB)
 	if inPlace && m <= t.height && k <= t.depth && n <= t.vectors<<t.shift {
 		vectors := (n + t.lanes - 1) >> t.shift
 		p.k, p.tail = k, n-(vectors-1)<<t.shift
@@ -47,6 +47,17 @@ func runTiles(p *tileCall, size int, transA, transB bool, m, n, k, lda, ldb, ldc
 		return
 	}
 	t.blocks(p, transA, transB, inPlace, m, n, k)
+}
+
+// readsInPlace tells whether a copy of B, which is not transposed, would cost more than it saves.
+func (t *tiling) readsInPlace(m, k, rowB int) bool {
+	switch {
+	case m <= t.crowdedRows:
+		return true
+	case m <= inPlaceRows:
+		return rowB < 4096 || !crowded(k, rowB)
+	}
+	return k*rowB <= inPlaceBytes && !crowded(k, rowB)
 }
 
 // dotsServe tells whether sums over lanes cost less than the copy of a transposed B that tiles would need.

@@ -32,6 +32,7 @@ func TestBlocks(t *testing.T) {
 		set(t, &tiling.width, 2*tiling.vectors*tiling.lanes)
 		set(t, &tiling.height, 11)
 		set(t, &tiling.dotHeight, 0)
+		set(t, &tiling.crowdedRows, -1)
 	}
 	for _, kernels := range []kernelSet{avx2Kernels, avx512Kernels} {
 		if kernels.available() {
@@ -204,6 +205,16 @@ func BenchmarkWays(b *testing.B) {
 		}
 	}
 	inPlaceRows = rows
+	if kernels == avx512Kernels {
+		kernels = avx2Kernels
+		defer func(crowded int) { kernels, real256.crowdedRows = avx512Kernels, crowded }(real256.crowdedRows)
+		for _, m := range []int{4, 8, 12, 16, 32} {
+			for _, real256.crowdedRows = range []int{0, 32} {
+				product(fmt.Sprintf("kernel=avx2/crowdedRows=%d", real256.crowdedRows), NoTrans, NoTrans, m, 512, 512)
+			}
+		}
+		kernels = avx512Kernels
+	}
 	for _, k := range []int{4, 8, 16, 32, 64} {
 		for _, m := range []int{4, 8, 16, 32} {
 			for _, n := range []int{8, 32} {
