@@ -16,6 +16,7 @@ const (
 	tiny    group = "tiny"
 	factors group = "half of the vectors"
 	eigen   group = "all vectors"
+	workers group = "two threads"
 )
 
 // A task is one row of the table.

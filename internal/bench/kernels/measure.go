@@ -1,6 +1,7 @@
 package main
 
 import (
+	"math"
 	"runtime"
 	"slices"
 
@@ -18,6 +19,9 @@ type row struct {
 	Gflops    float64 `json:"gflops"`
 	Reference float64 `json:"reference_gflops,omitempty"`
 	Ratio     float64 `json:"ratio,omitempty"` // above 1: faster than the reference
+	Bytes     uint64  `json:"bytes,omitempty"` // allocated by a call
+
+	group group
 }
 
 // slice is the thread time that a contestant runs before the next has its turn.
@@ -53,7 +57,9 @@ func (t task) measure(names []string, quick bool) []row {
 	out := make([]row, len(names))
 	for i, name := range names {
 		seconds := contestants[i].median()
-		out[i] = row{Routine: t.routine, Op: t.op, M: t.m, N: t.n, K: t.k, Kernels: name, Gflops: t.flops / seconds / 1e9}
+		contestants[i].once(1)
+		bytes := allocated(ours)
+		out[i] = row{Routine: t.routine, Op: t.op, M: t.m, N: t.n, K: t.k, Kernels: name, Gflops: t.flops / seconds / 1e9, Bytes: bytes, group: t.group}
 		if theirs != nil {
 			reference := contestants[len(names)].median()
 			out[i].Reference = t.flops / reference / 1e9
@@ -61,6 +67,19 @@ func (t task) measure(names []string, quick bool) []row {
 		}
 	}
 	return out
+}
+
+// allocated returns the bytes that a call allocates: the least of a few, as others may allocate meanwhile.
+func allocated(run func()) uint64 {
+	least := uint64(math.MaxUint64)
+	for range 3 {
+		var before, after runtime.MemStats
+		runtime.ReadMemStats(&before)
+		run()
+		runtime.ReadMemStats(&after)
+		least = min(least, after.TotalAlloc-before.TotalAlloc)
+	}
+	return least
 }
 
 type contestant struct {

@@ -118,6 +118,11 @@ func referenceEigen[T dense.Scalar](n int, a []T) func() {
 	return nil
 }
 
+// wideReference tells whether the library uses AVX-512.
+func wideReference() bool {
+	return slices.Contains([]string{"SkylakeX", "Cooperlake", "Sapphirerapids"}, openblas.Core())
+}
+
 // coreVariable tells OpenBLAS which processor to serve. It is read before main is.
 const coreVariable = "OPENBLAS_CORETYPE"
 
@@ -131,7 +136,7 @@ func prepareReference(want string) error {
 	}
 	if want == "" {
 		want = have
-		if cpu.X86.HasAVX512DQ && cpu.X86.HasAVX512VL && !slices.Contains([]string{"SkylakeX", "Cooperlake", "Sapphirerapids"}, have) {
+		if cpu.X86.HasAVX512DQ && cpu.X86.HasAVX512VL && !wideReference() {
 			want = "SkylakeX"
 		}
 	}

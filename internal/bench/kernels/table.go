@@ -27,7 +27,11 @@ func (t *table) add(x task, rows []row) {
 		t.end()
 		t.group = g
 		t.sum = make([]summary, len(t.names))
-		fmt.Fprintf(t.w, "%-30s %10s", g, "OpenBLAS")
+		against := "OpenBLAS"
+		if x.group == workers {
+			against = "one thread"
+		}
+		fmt.Fprintf(t.w, "%-30s %10s", g, against)
 		for _, name := range t.names {
 			fmt.Fprintf(t.w, " %8s %6s", name, "ratio")
 		}
