@@ -57,7 +57,7 @@ func TestSchedule(t *testing.T) {
 	r := row{bonds: []int{50, 100}}
 	want := []dmrg.Pass{{Bond: 50, Vectors: 4, Perturbation: 1e-4}, {Bond: 50, Vectors: 4, Perturbation: 1e-4}, {Bond: 100, Vectors: 4, Perturbation: 1e-5},
 		{Bond: 100, Vectors: 4}, {Bond: 100, Vectors: 4}, {Bond: 100, Vectors: 4}}
-	require.Equal(t, want, r.schedule())
+	require.Equal(t, want, r.schedule(cleanPasses))
 }
 
 // fakeBaseline is a program in the place of the baseline that prints what a run printed, and keeps its arguments.

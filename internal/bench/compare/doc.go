@@ -13,7 +13,7 @@
 //   - energy: seconds from a product state to the baseline's final energy within 1e-9. Of the baseline its sweeps up to the first that is that
 //     near, without loading and setting up; of Rundle everything from the start of the process.
 //     The note tells the ratio to the whole run of the baseline, which does not know beforehand when it is done.
-//   - memory: peaks of resident memory of the same run.
+//   - memory: peaks of resident memory of the same ramp with one clean sweep.
 //   - exponent: slope of log(seconds a clean sweep) against log(bond dimension), between neighbours and over all.
 //   - threads: seconds a clean sweep with one thread over that with two.
 //   - gemm: share of the clean sweeps inside matrix products, from a CPU profile; and their rate there, in units of that of one large product

@@ -117,7 +117,7 @@ const (
 
 // schedule is the baseline's ramp: of each bond dimension two perturbed passes, a tenth of the weight from one to the next, of the last
 // one perturbed pass and clean ones.
-func (r row) schedule() []dmrg.Pass {
+func (r row) schedule(clean int) []dmrg.Pass {
 	var passes []dmrg.Pass
 	weight := firstPerturbation
 	for i, bond := range r.bonds {
@@ -130,7 +130,7 @@ func (r row) schedule() []dmrg.Pass {
 		}
 		weight /= 10
 	}
-	for range cleanPasses {
+	for range clean {
 		passes = append(passes, dmrg.Pass{Bond: r.bond(), Vectors: vectors})
 	}
 	return passes
