@@ -53,7 +53,7 @@ var (
 
 // claim tells which part the functions on a stack, the innermost first, belong to.
 func claim(stack []string) part {
-	any := func(r *regexp.Regexp) bool {
+	on := func(r *regexp.Regexp) bool {
 		for _, f := range stack {
 			if r.MatchString(f) {
 				return true
@@ -61,9 +61,9 @@ func claim(stack []string) part {
 		}
 		return false
 	}
-	product, decomposition := any(multiplying), any(decomposing)
+	product, decomposition := on(multiplying), on(decomposing)
 	switch {
-	case any(collecting):
+	case on(collecting):
 		return memoryPart
 	case product && decomposition:
 		return innerProductsPart
@@ -71,11 +71,11 @@ func claim(stack []string) part {
 		return decompositionPart
 	case product:
 		return productsPart
-	case any(planningParts):
+	case on(planningParts):
 		return planningPart
-	case any(moving), any(applying):
+	case on(moving), on(applying):
 		return movesPart
-	case any(searching):
+	case on(searching):
 		return krylovPart
 	}
 	return otherPart
