@@ -55,7 +55,7 @@ func Lowest(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, k 
 		return nil, fmt.Errorf("dmrg: %d states asked for: want one or more", k)
 	}
 	if opt.From != nil {
-		return nil, errors.New("dmrg: a waypoint is where Ground goes on; Lowest goes on from states (Options.Start and Higher)")
+		return nil, errors.New("dmrg: a waypoint is where Ground goes on; Lowest goes on from states (Options.Start and Levels)")
 	}
 	opt.OnWaypoint = nil
 	p, err := begun(ctx, h, sector, opt, time.Now())
@@ -139,7 +139,9 @@ func (c *climb[T]) search() error {
 		if err != nil {
 			return err
 		}
-		c.spent += r.Flops
+		if c.spent += r.Flops; c.from.opt.OnLevel != nil && r.Verdict != unfinished {
+			c.from.opt.OnLevel(r)
+		}
 		if r.Verdict == TimeCap {
 			c.reason = "the time is up"
 			return nil
@@ -150,11 +152,16 @@ func (c *climb[T]) search() error {
 // startOf is where the search for the next level of a total begins.
 func (c *climb[T]) startOf(l *levels[T]) (*mps.Chain[T], error) {
 	n := len(l.found)
-	switch {
-	case n == 0:
+	for _, s := range c.from.opt.Levels {
+		if s.Frames().Group == c.from.frames.Group && s.Charge() == l.total {
+			if n == 0 {
+				return givenChain[T](c.from, s, l.total)
+			}
+			n--
+		}
+	}
+	if len(l.found) == 0 {
 		return startChain[T](c.from, l.total)
-	case n <= len(c.from.opt.Higher):
-		return givenChain[T](c.from, c.from.opt.Higher[n-1], l.total)
 	}
 	return l.start()
 }
@@ -237,7 +244,19 @@ func (c *climb[T]) spectrum() *Spectrum {
 		s.Levels = append(s.Levels, level)
 	}
 	s.close(len(s.Levels))
+	if !s.Whole {
+		s.doubt()
+	}
 	return s
+}
+
+// doubt takes back what was said of the last multiplet where it may have more states.
+func (s *Spectrum) doubt() {
+	for i := range s.Levels {
+		if l := s.Levels[i]; l.Multiplet == len(s.Multiplets)-1 && l.Verdict == Converged {
+			l.Verdict, l.Result.Reason = Suspect, "this multiplet may have more states: "+s.Reason
+		}
+	}
 }
 
 // close ends a multiplet before level i.

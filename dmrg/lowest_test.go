@@ -232,8 +232,9 @@ func TestLowestStops(t *testing.T) {
 	require.Equal(t, Converged, s.Levels[0].Verdict)
 	require.Empty(t, s.Levels[1].Verdict)
 	require.False(t, s.Whole)
+	require.NotEmpty(t, s.Reason)
 	next, err := Lowest(context.Background(), heisenberg(t, 10), ladder.Sector{"Sz": 0}, 3,
-		Options{Start: s.Levels[0].State, Higher: []*mps.State{s.Levels[1].State}})
+		Options{Levels: []*mps.State{s.Levels[0].State, s.Levels[1].State}})
 	require.NoError(t, err)
 	whole, err := Lowest(context.Background(), heisenberg(t, 10), ladder.Sector{"Sz": 0}, 3, Options{})
 	require.NoError(t, err)

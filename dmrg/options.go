@@ -24,12 +24,13 @@ type Options struct {
 	Schedule            []Pass          // sweeps to do instead of those that the search would choose, for measurements and experts; nil: the search chooses
 	Unprobed            bool            // call converged without a probe from another start; for measurements
 	Start               *mps.State      // state to begin from, as stored; its charges stand where the sector is silent; nil: a product state chosen from the diagonal terms
-	Higher              []*mps.State    // states from which Lowest begins the levels above the first, in order, with Start; nil: none known
+	Levels              []*mps.State    // states near the levels that Lowest looks for, from which it begins: of each sector in order; nil: none known
 	From                *Waypoint       // where an earlier search was saved, to go on from; nil: from the start
 	WaypointEvery       time.Duration   // least time between two calls of OnWaypoint; 0: 30 s, more where saving takes long
 	OnWaypoint          func(*Waypoint) // called between two updates, now and then, with what to save; nil: never
 	OnSweep             func(Sweep)     // called after every sweep
 	OnStage             func(Stage)     // called with the state at each settled bond dimension
+	OnLevel             func(*Result)   // called by Lowest with each level that was searched for to the end
 	OnBond              func(Position)  // called after every bond update
 }
 

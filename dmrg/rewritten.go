@@ -51,7 +51,7 @@ const complexCost = 4
 // rewrite turns a complex problem into a real one where there is one that keeps its charges and costs less. What the user starts from stays as
 // it is.
 func (p *problem) rewrite(sector ladder.Sector) error {
-	if p.strings.Real || p.opt.Complex || p.opt.Start != nil {
+	if p.strings.Real || p.opt.Complex || p.opt.Start != nil || len(p.opt.Levels) > 0 {
 		return nil
 	}
 	if m := p.h.Merged(p.frames); m != nil {

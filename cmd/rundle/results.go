@@ -30,10 +30,32 @@ func summary(r *runfolder.Result, origin string) string {
 		fmt.Fprintln(&b, r.Model.Title)
 	}
 	fmt.Fprintf(&b, "%s\n", origin)
+	levelTable(&b, r)
 	for _, s := range r.States {
 		summarizeState(&b, r, &s)
 	}
 	return b.String()
+}
+
+// levelTable lists the levels of a run for several states, a multiplet that has several of them with its splitting.
+func levelTable(b *strings.Builder, r *runfolder.Result) {
+	if len(r.Multiplets) == 0 {
+		return
+	}
+	var rows [][]string
+	for k, s := range r.States {
+		gap := ""
+		if k > 0 && s.Gap != nil && s.GapError != nil {
+			gap = withError(*s.Gap, *s.GapError)
+		}
+		rows = append(rows, []string{fmt.Sprint(k), fmt.Sprint(s.Multiplet), sectorText(s.Sector), withError(s.EnergyLimit, s.EnergyError), gap, string(s.Verdict)})
+	}
+	fmt.Fprintf(b, "\n%s", grid([]string{"level", "multiplet", "sector", "energy", "above the first", "verdict"}, rows, "level", "multiplet"))
+	for k, m := range r.Multiplets {
+		if m.Count > 1 {
+			fmt.Fprintf(b, "multiplet %d: %d states at %s, split by at most %s\n", k, m.Count, withError(m.Energy, m.EnergyError), shortError(m.SplittingBound))
+		}
+	}
 }
 
 func summarizeState(b *strings.Builder, r *runfolder.Result, s *runfolder.State) {

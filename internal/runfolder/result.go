@@ -23,10 +23,11 @@ func Verdicts() []Verdict {
 
 // A Result is the content of result.json.
 type Result struct {
-	Format    string    `json:"format"`
-	Model     Model     `json:"model"`
-	States    []State   `json:"states"`
-	Resources Resources `json:"resources"`
+	Format     string      `json:"format"`
+	Model      Model       `json:"model"`
+	States     []State     `json:"states"`
+	Multiplets []Multiplet `json:"multiplets,omitempty"` // of States, where several were asked for
+	Resources  Resources   `json:"resources"`
 }
 
 // Converged tells whether every state is converged.
@@ -74,6 +75,8 @@ type State struct {
 	Energy          float64                  `json:"energy"`    // <H> of the saved state
 	EnergyLimit     float64                  `json:"energy_limit"`
 	EnergyError     float64                  `json:"energy_error"`
+	Gap             *float64                 `json:"gap,omitempty"` // energy_limit above that of the first state; nil where one state was asked for
+	GapError        *float64                 `json:"gap_error,omitempty"`
 	Variance        *float64                 `json:"variance,omitempty"` // nil where it was left out
 	DiscardedWeight float64                  `json:"discarded_weight"`
 	LargestBond     int                      `json:"largest_bond"`
@@ -84,6 +87,17 @@ type State struct {
 	Seconds         float64                  `json:"seconds"`
 	Observations    map[string][]Observation `json:"observations"`
 	Entanglement    *Entanglement            `json:"entanglement,omitempty"`
+}
+
+// A Multiplet is a group of states that their error bars do not tell apart: States[First : First+Count]. Observations are means over it.
+type Multiplet struct {
+	First          int                      `json:"first"`
+	Count          int                      `json:"count"`
+	Energy         float64                  `json:"energy"` // mean of the limits
+	EnergyError    float64                  `json:"energy_error"`
+	Splitting      float64                  `json:"splitting"`       // highest limit less lowest one
+	SplittingBound float64                  `json:"splitting_bound"` // bounds the exact splitting
+	Observations   map[string][]Observation `json:"observations,omitempty"`
 }
 
 // An Observation is one value of an observed formula.

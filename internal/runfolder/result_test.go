@@ -16,6 +16,7 @@ import (
 // sample fills every field, so that the schema's every property occurs.
 func sample() *Result {
 	top, variance, flops := 0.0, 2e-10, 1e12
+	gap, gapError := 0.25, 2e-9
 	return &Result{
 		Format: ResultFormat,
 		Model: Model{
@@ -25,7 +26,7 @@ func sample() *Result {
 		},
 		States: []State{{
 			Sector: Numbers{"N": 4, "Sz": -0.5}, Index: 0, Multiplet: 1,
-			Energy: -3.25, EnergyLimit: -3.2501, EnergyError: 1e-9, Variance: &variance, DiscardedWeight: 1e-12,
+			Energy: -3.25, EnergyLimit: -3.2501, EnergyError: 1e-9, Gap: &gap, GapError: &gapError, Variance: &variance, DiscardedWeight: 1e-12,
 			LargestBond: 40, TopOccupation: &top, Sweeps: 7, Verdict: Suspect, Reason: "boson cutoff", Seconds: 0.5,
 			Observations: map[string][]Observation{
 				"density": {{At: At{"j": 3, "l": "a"}, Value: Number(0.46), Error: 1e-9}},
@@ -37,6 +38,8 @@ func sample() *Result {
 				Spectrum: []Level{{Xi: 0.2, Charge: Numbers{"N": 2}}},
 			}}},
 		}},
+		Multiplets: []Multiplet{{First: 0, Count: 1, Energy: -3.25, EnergyError: 1e-9, Splitting: 1e-10, SplittingBound: 2e-9,
+			Observations: map[string][]Observation{"density": {{At: At{"j": 3}, Value: Number(0.46), Error: 1e-9}}}}},
 		Resources: Resources{1.5, 2.5, 1 << 30, &flops, 2, "go", "0.1.0"},
 	}
 }

@@ -25,6 +25,11 @@
 // A run that met its cap on time leaves results and checkpoint: running it again goes on. One that met its cap on memory goes on when
 // it is given more.
 //
+// # Several states
+//
+// Where the model asks for several states, each is saved and observed, and multiplets state means. The checkpoint then holds the states that searches came to;
+// a run that goes on begins from these and settles each again, in a few sweeps.
+//
 // # Error bars of observations
 //
 // Between the settled bond dimensions the discarded weight w falls, and an expectation value v approaches its limit about linearly

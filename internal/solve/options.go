@@ -91,8 +91,6 @@ func (o Options) check(m *modelfile.Model) error {
 		return refuse("checkpoints every %v: expected a positive time", o.CheckpointEvery)
 	case o.Memory < 0:
 		return refuse("memory of %d bytes: expected a positive size", o.Memory)
-	case m.Solve.States > 1:
-		return refuse("%s: states = %d in [solve]: this version finds the ground state alone; write states = 1", m.File, m.Solve.States)
 	}
 	return nil
 }

@@ -8,6 +8,7 @@ import (
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
 	"rundle/mpo/ladder"
+	"rundle/mps"
 )
 
 // result observes the state found and puts the document together.
@@ -42,6 +43,21 @@ func chargesOf(f *ladder.Frames) []runfolder.Charge {
 
 // state describes the state found with all that is read out of it.
 func (r *run) state(ctx context.Context, w *watch, found *dmrg.Result) (runfolder.State, error) {
+	s, err := r.bare(w, found)
+	if err != nil {
+		return s, err
+	}
+	if err := ctx.Err(); err != nil {
+		return s, err
+	}
+	if s.Observations, err = r.observe(ctx, w, found, s.EnergyError); err != nil {
+		return s, err
+	}
+	return s, r.finish(ctx, &s, found)
+}
+
+// bare describes a state with what the search knows of it.
+func (r *run) bare(w *watch, found *dmrg.Result) (runfolder.State, error) {
 	s := runfolder.State{
 		Sector: found.Sector, Energy: found.Energy, EnergyLimit: found.EnergyLimit, EnergyError: found.EnergyError,
 		DiscardedWeight: found.DiscardedWeight, LargestBond: found.LargestBond, Sweeps: w.check.Sweeps,
@@ -58,32 +74,34 @@ func (r *run) state(ctx context.Context, w *watch, found *dmrg.Result) (runfolde
 		s.EnergyError = bound
 	}
 	var err error
-	if s.Variance, err = r.variance(w, found); err != nil {
-		return s, err
-	}
-	if err := ctx.Err(); err != nil {
-		return s, err
-	}
-	if s.Observations, err = r.observe(ctx, w, found, s.EnergyError); err != nil {
-		return s, err
-	}
+	s.Variance, err = r.variance(w, found)
+	return s, err
+}
+
+// finish adds entanglement and the judgement of the boson cutoff.
+func (r *run) finish(ctx context.Context, s *runfolder.State, found *dmrg.Result) (err error) {
 	if s.Entanglement, err = entangled(found.State, r.model.Observe); err != nil {
-		return s, err
+		return err
 	}
-	return s, judgeCutoff(ctx, &s, found.State, r.precision())
+	return judgeCutoff(ctx, s, found.State, r.precision())
 }
 
 // observe measures the state found and, for the error bars, the one at the settled bond dimension before it.
 func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyError float64) (map[string][]runfolder.Observation, error) {
-	now, err := measure(ctx, found.State, r.model.Observe)
-	if err != nil {
-		return nil, err
-	}
 	back := 0
 	if w.check.SettledAt == w.check.Sweeps {
 		back = 1 // the state found is the last settled one
 	}
 	before, mark, err := w.check.earlier(back)
+	if err != nil {
+		return nil, err
+	}
+	return r.observations(ctx, found, before, mark.Discarded, energyError)
+}
+
+// observations measures a state and, for the error bars, the one at the settled bond dimension before it, where there is one, that discarded so much.
+func (r *run) observations(ctx context.Context, found *dmrg.Result, before *mps.State, discarded, energyError float64) (map[string][]runfolder.Observation, error) {
+	now, err := measure(ctx, found.State, r.model.Observe)
 	if err != nil {
 		return nil, err
 	}
@@ -107,7 +125,7 @@ func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyE
 		return nil, err
 	}
 	for i := range now {
-		bars[i] = spreadBars(now[i], earlier[i].values, q, mark.Discarded)
+		bars[i] = spreadBars(now[i], earlier[i].values, q, discarded)
 	}
 	return observations(now, bars), nil
 }

@@ -47,6 +47,9 @@ func Run(ctx context.Context, m *modelfile.Model, opt Options) (*Outcome, error)
 	if done, err := r.returned(); done || err != nil {
 		return r.out, err
 	}
+	if m.Solve.States > 1 {
+		return r.out, r.climb(ctx, start)
+	}
 	return r.out, r.solve(ctx, start)
 }
 
@@ -224,6 +227,11 @@ func (r *run) write(w *watch, found *dmrg.Result, result *runfolder.Result) erro
 		},
 		func() error { return w.status(runfolder.Done, string(result.States[0].Verdict)) },
 	}
+	return r.take(steps, result)
+}
+
+// take does the steps that end in a result.
+func (r *run) take(steps []func() error, result *runfolder.Result) error {
 	for _, step := range steps {
 		err := step()
 		var notFinite *runfolder.NotFiniteError

@@ -470,11 +470,6 @@ func TestStart(t *testing.T) {
 			assert.ErrorContains(t, err, c.want)
 		})
 	}
-	several := chain(t, 4, 2, 1e-8)
-	several.Solve.States = 2
-	_, err := Run(context.Background(), several, Options{})
-	assert.True(t, isRefusal(err))
-	assert.ErrorContains(t, err, "model.toml: states = 2")
 }
 
 // TestThreads: the results are bitwise the same at any number of threads.
