@@ -108,6 +108,7 @@ func (b *bundle[T]) step(i int, right bool, s setting, out *bundleOutcome) error
 	out.total += discarded
 	out.largest = max(out.largest, b.psi.Bond(i).Dim())
 	out.residual = max(out.residual, b.residual)
+	out.rest = math.Hypot(out.rest, b.residual)
 	for k, g := range b.gains {
 		out.gains[k] += g
 	}

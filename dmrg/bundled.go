@@ -63,7 +63,7 @@ func (q *bundleSearch[T]) settle(set setting) error {
 			}
 			st := &q.stages[k][len(q.stages[k])-1]
 			st.energies = append(st.energies, e)
-			st.discarded, st.largest, st.residual, st.gain = out.total, out.largest, out.residual, out.gains[k]
+			st.discarded, st.largest, st.rest, st.gain = out.total, out.largest, out.rest, out.gains[k]
 			enough = enough && st.drift() <= max(0.1*q.opt.Precision, 0.02*st.gain, roundingOf(e, q.scale, q.psi.Len()))
 		}
 		if enough || out.energies[0] < q.below {

@@ -41,6 +41,7 @@ type engine[T dense.Scalar] struct {
 	products int     // with projected Hamiltonians
 	flops    float64 // of environments and projected Hamiltonians, in real operations
 	residual float64 // of the last eigenvector
+	narrow   float64 // inverse of the gap above it, as far as its Krylov space tells
 	gain     float64 // of the last eigenvector against its start
 	growth   float64 // those of the environments of the last left-going half sweep
 }
@@ -62,6 +63,8 @@ type outcome struct {
 	total     float64 // sum over the bonds of the left-going half
 	largest   int
 	residual  float64 // largest of the left-going half
+	rest      float64 // root of the squared residuals, summed over the bonds of the left-going half
+	narrow    float64 // inverse of the smallest gap that a Krylov space of the whole sweep told; 0: none did
 	gain      float64 // of energy by all updates of the left-going half
 	change    float64 // largest norm by which an update changed its normalized two-site tensor, in the whole sweep
 	products  int     // with projected Hamiltonians, in the whole sweep
@@ -71,7 +74,7 @@ type outcome struct {
 
 // halfway keeps what counts for the whole sweep.
 func (o outcome) halfway() outcome {
-	return outcome{change: o.change, products: o.products, flops: o.flops, seconds: o.seconds}
+	return outcome{change: o.change, narrow: o.narrow, products: o.products, flops: o.flops, seconds: o.seconds}
 }
 
 // newEngine begins a search from psi, which it keeps and normalizes; prepare must follow. Once halt says why to stop, the engine's methods return
@@ -91,6 +94,9 @@ func standingEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt 
 	e.brief = e.pool.Until(func() bool { return halt() != nil })
 	return e
 }
+
+// leastGap keeps inverse gaps finite.
+const leastGap = 1e-300
 
 // noiseStream sets the random numbers of the engine apart from others of the same seed.
 const noiseStream = 0x72756e646c65
@@ -221,6 +227,8 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 	out.total += discarded
 	out.largest = max(out.largest, e.psi.Bond(i).Dim())
 	out.residual = max(out.residual, e.residual)
+	out.rest = math.Hypot(out.rest, e.residual)
+	out.narrow = max(out.narrow, e.narrow)
 	out.gain += e.gain
 	if e.onBond != nil {
 		bonds, done := e.psi.Len()-1, i+1
@@ -319,7 +327,7 @@ func (e *engine[T]) single(s setting) (outcome, error) {
 		return outcome{}, e.at(0, err)
 	}
 	e.psi.Sites[0] = theta
-	return outcome{energy: energy, largest: 1, residual: e.residual, products: e.products - products, flops: e.flops - flops}, nil
+	return outcome{energy: energy, largest: 1, residual: e.residual, rest: e.residual, narrow: e.narrow, products: e.products - products, flops: e.flops - flops}, nil
 }
 
 // lowest replaces theta by the lowest eigenvector that a few Krylov vectors give, and returns its energy.
@@ -346,7 +354,7 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 	if math.IsNaN(r.Value) || math.IsInf(r.Value, 0) {
 		return 0, errors.New("the energy is not finite; look for couplings whose products overflow")
 	}
-	e.residual, e.gain = r.Residual, r.Start-r.Value
+	e.residual, e.gain, e.narrow = r.Residual, r.Start-r.Value, 1/max(r.Gap, leastGap)
 	return r.Value, nil
 }
 

@@ -8,8 +8,9 @@ type settledStage struct {
 	energies  []float64 // after each clean sweep
 	discarded float64   // sum over the bonds of the last clean sweep
 	largest   int
-	residual  float64 // of the last clean sweep, see outcome
-	gain      float64 // the same
+	rest      float64 // root of the squared residuals of the last clean sweep, see outcome
+	narrow    float64 // largest of all sweeps, see outcome
+	gain      float64 // of the last clean sweep
 	change    float64 // the same
 }
 
@@ -53,7 +54,8 @@ const (
 	crude        = 50    // in units of the gain times the discarded weight: where much is discarded, costs do not add up
 	mostCrude    = 3     // in units of the gain
 	roundingUnit = 2e-15 // relative error of an energy, and error for each coupling that a bond sees
-	narrowGap    = 0.1   // couplings between the lowest levels of a bond: an eigenvector with a residual r errs by r²/gap in energy
+	widestGap    = 0.1   // couplings between the lowest levels, where the Krylov spaces of the bonds found nothing narrower
+	gapShare     = 0.3   // of the smallest gap that a Krylov space found: it bounds the true one from above
 )
 
 // estimateError judges the stages that have settled. scale is the size of the Hamiltonian's terms, bonds the number of bonds.
@@ -82,8 +84,17 @@ func estimateError(stages []settledStage, scale float64, bonds int) estimate {
 		}
 	}
 	rounding := roundingOf(last.energy(), scale, bonds)
-	err += min(mostCrude, crude*last.discarded)*gain + last.drift() + last.residual*(last.residual/(narrowGap*scale)) + rounding
+	err += min(mostCrude, crude*last.discarded)*gain + last.drift() + last.rest*(last.rest/gapAbove(stages, scale)) + rounding
 	return estimate{limit: last.energy() - distance, err: err, rounding: rounding, above: distance + err}
+}
+
+// gapAbove is about the gap above the state, or less: an eigenvector with the residual r errs by r²/gap in energy (Temple 1928).
+func gapAbove(stages []settledStage, scale float64) float64 {
+	gap := widestGap * scale
+	for i := max(0, len(stages)-2); i < len(stages); i++ {
+		gap = min(gap, gapShare/stages[i].narrow)
+	}
+	return gap
 }
 
 // roundingOf is about the rounding error of an energy.

@@ -50,11 +50,15 @@ func TestEstimate(t *testing.T) {
 		})
 	}
 	left := stage(0, -10, -10)
-	left.residual = 1e-3
+	left.rest = 1e-3
+	narrow := left
+	narrow.narrow = 1e2
 	rough := stage(1e-2, -10, -10)
 	rough.discarded = 0.1
 	require.InDelta(t, (guessedError+mostCrude)*1e-2, estimateError([]settledStage{rough}, scale, bonds).err, 1e-9, "much is discarded")
-	require.InDelta(t, 1e-6/(narrowGap*scale), estimateError([]settledStage{left}, scale, bonds).err, 1e-12, "what the eigensolver left")
+	require.InDelta(t, 1e-6/(widestGap*scale), estimateError([]settledStage{left}, scale, bonds).err, 1e-12, "what the eigensolver left")
+	require.InDelta(t, 1e-4/gapShare, estimateError([]settledStage{narrow}, scale, bonds).err, 1e-10, "above a narrow gap")
+	require.InDelta(t, 1e-4/gapShare, estimateError([]settledStage{narrow, left}, scale, bonds).err, 1e-10, "that the stage before has found")
 }
 
 // model is a Hamiltonian with a ground energy known by other means.
@@ -181,4 +185,15 @@ func testErrorBars(t *testing.T, bonds ...int) {
 	median := ratios[len(ratios)/2]
 	t.Logf("%d searches, bar over error in the median %.1f, at most %.0f", len(ratios), median, ratios[len(ratios)-1])
 	require.LessOrEqual(t, median, 10.0)
+}
+
+// The two-site variance is the variance on chains of neighbours, part of it on a ladder, whose leg hops pass over a site.
+func TestTwoSiteVariance(t *testing.T) {
+	chain := ground1(t, heisenberg(t, 16), ladder.Sector{"Sz": 0}, Options{Bond: 10})
+	require.InEpsilon(t, chain.Variance, chain.TwoSiteVariance, 1e-6)
+	m := freeLadder(t)
+	wide := ground1(t, m.h, m.sector, Options{Bond: 12})
+	require.Less(t, wide.TwoSiteVariance, wide.Variance)
+	require.Greater(t, wide.TwoSiteVariance, 0.2*wide.Variance)
+	t.Logf("ladder: %.2g of %.2g", wide.TwoSiteVariance, wide.Variance)
 }

@@ -141,13 +141,16 @@ func (s *search[T]) result(verdict Verdict, reason string, ended bool) (*Result,
 	e, est := s.engine, s.estimate()
 	r := &Result{Verdict: verdict, Reason: reason, Sweeps: s.sweeps, Stages: s.reports, OperatorBonds: e.op.BondDims(),
 		LargestBond: e.psi.MaxBond(), Energy: math.NaN(), EnergyLimit: est.limit - s.mixing, EnergyError: est.err + s.mixing,
-		Variance: math.NaN(), VarianceRounding: math.NaN()}
+		Variance: math.NaN(), VarianceRounding: math.NaN(), TwoSiteVariance: math.NaN()}
 	if n := len(s.sweeps); n > 0 {
 		r.DiscardedWeight = s.sweeps[n-1].Discarded
 	}
 	if !ended {
 		var err error
 		if r.Energy, err = e.energy(); err != nil {
+			return nil, err
+		}
+		if r.TwoSiteVariance, err = e.twoSiteVariance(); err != nil {
 			return nil, err
 		}
 		if s.varianceIsCheap() {

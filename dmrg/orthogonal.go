@@ -136,6 +136,6 @@ func (e *engine[T]) blocked(theta *block.Tensor[T], apply func(dst, src []T)) fl
 	theta.Scale(dense.FromFloat[T](1 / theta.Norm()))
 	out := block.New[T](theta.Structure)
 	apply(out.Data, theta.Data)
-	e.residual, e.gain = math.Inf(1), 0
+	e.residual, e.gain, e.narrow = math.Inf(1), 0, 0
 	return dense.Real(block.Dot(theta, out))
 }

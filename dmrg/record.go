@@ -56,8 +56,8 @@ func (s setting) MarshalJSON() ([]byte, error)     { return marshalFields(s.fiel
 func (s *setting) UnmarshalJSON(text []byte) error { return unmarshalFields(text, s.fields()) }
 
 func (o *outcome) fields() []named {
-	return []named{{"energy", &o.energy}, {"discarded", &o.discarded}, {"total", &o.total}, {"largest", &o.largest}, {"residual", &o.residual},
-		{"gain", &o.gain}, {"change", &o.change}, {"products", &o.products}, {"flops", &o.flops}, {"seconds", &o.seconds}}
+	return []named{{"energy", &o.energy}, {"discarded", &o.discarded}, {"total", &o.total}, {"largest", &o.largest}, {"residual", &o.residual}, {"rest", &o.rest},
+		{"narrow", &o.narrow}, {"gain", &o.gain}, {"change", &o.change}, {"products", &o.products}, {"flops", &o.flops}, {"seconds", &o.seconds}}
 }
 
 func (o outcome) MarshalJSON() ([]byte, error)     { return marshalFields(o.fields()) }

@@ -37,7 +37,8 @@ type search[T dense.Scalar] struct {
 
 	journal      journal // what follows, and what the schedule does next, is a function of it
 	nextPause    time.Time
-	stagesBefore int // settled when the waypoint to go on from was saved
+	stagesBefore int     // settled when the waypoint to go on from was saved
+	narrow       float64 // largest inverse gap since the bond dimension was last raised
 	stages       []settledStage
 	sweeps       []Sweep
 	reports      []Stage
@@ -162,6 +163,7 @@ func (s *search[T]) settledTwice() bool {
 
 // stage settles one bond dimension: sweeps with decreasing perturbation, then clean sweeps.
 func (s *search[T]) stage(bond int) (Verdict, string, error) {
+	s.narrow = 0
 	if v, r, err := s.open(bond); v != unfinished || err != nil {
 		return v, r, err
 	}
@@ -273,10 +275,12 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	if err != nil {
 		return unfinished, "", err
 	}
+	s.narrow = max(s.narrow, out.narrow)
 	if n := len(s.stages); n > 0 && set.perturbation == 0 {
 		st := &s.stages[n-1]
 		st.energies = append(st.energies, out.energy)
-		st.discarded, st.largest, st.residual, st.gain, st.change = out.total, out.largest, out.residual, out.gain, out.change
+		st.discarded, st.largest, st.rest, st.gain, st.change = out.total, out.largest, out.rest, out.gain, out.change
+		st.narrow = s.narrow
 	}
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Perturbation: set.perturbation, Energy: out.energy, Discarded: out.discarded,
 		Residual: out.residual, LargestBond: out.largest, Products: out.products, Flops: out.flops, Seconds: out.seconds}

@@ -4,6 +4,7 @@ import (
 	"math"
 
 	"rundle/internal/dense"
+	"rundle/mpo"
 )
 
 // The variance is computed where it takes no more than varianceShare of the operations of the search, or a blink of an eye, and no more memory than
@@ -31,4 +32,14 @@ func (s *search[T]) varianceIsCheap() bool {
 		size = 16
 	}
 	return e.growth*widest+compress <= max(varianceShare*e.flops, varianceBlink) && size*elements <= max(s.present(), varianceLittle)
+}
+
+// twoSiteVariance is that of mpo.TwoSiteVariance, from the environments that stand after a whole sweep; NaN where they do not. It takes about as
+// much as half a sweep with one product a bond, and is not counted among the operations of the search.
+func (e *engine[T]) twoSiteVariance() (float64, error) {
+	if e.psi.Center != 0 || !e.envs.stand(0, 0) || e.unit != 1 {
+		return math.NaN(), nil
+	}
+	v, _, err := mpo.TwoSiteVarianceFrom(e.psi, e.plan, e.envs.right, &e.work, e.pool)
+	return v, err
 }
