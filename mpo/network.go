@@ -83,9 +83,12 @@ func (p *network[T]) closed() int {
 	return p.chains[len(p.chains)-1].to
 }
 
-// Workspace holds the two slabs between the passes of a network. The zero value is ready; it grows and is reused.
+// Workspace holds what plans need while they run. The zero value is ready; it grows and is reused.
 // It is not for concurrent use.
-type Workspace[T dense.Scalar] struct{ x, y []T }
+type Workspace[T dense.Scalar] struct {
+	x, y []T // the two slabs between the passes of a network
+	run  projectionRun[T]
+}
 
 func grow[T any](s []T, n int) []T {
 	if cap(s) < n {

@@ -170,8 +170,9 @@ func (d *draft[T]) finish(p *Perturbation[T], x slab) {
 // perturbLeft: y(l', s1' | w, s2, r) = sum W1(a, w; s1', s1) env(l', a, l) theta(l, s1, s2, r).
 func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 	p := &Perturbation[T]{left: true}
-	p.net.first = h.net.first // the first pass is that of h
+	var x slab
 	w, th := h.planner.crossing(h.first, true), h.Theta
+	source := newLeftSource(&p.net, w, h.left.Structure, asKet(th), &x)
 	na, nm := len(w.wl.Sectors), len(w.wr.Sectors)
 	outer := h.left.Axes[0]
 	d := newDraft[T](w.group, w.wr, th, outer, true)
@@ -181,7 +182,7 @@ func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 		l, s1, s2 := tb.Sectors[0], tb.Sectors[1], tb.Sectors[2]
 		d1, cols := tb.Shape[1], tb.Shape[2]*tb.Shape[3]
 		for a := range na {
-			src := h.source.at[t*na+a]
+			src := source.at[t*na+a]
 			if src < 0 {
 				continue
 			}
@@ -197,7 +198,7 @@ func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 			}
 		}
 	}
-	d.finish(p, slab{h.net.xSize})
+	d.finish(p, x)
 	return p
 }
 

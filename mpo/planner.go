@@ -14,6 +14,10 @@ type Planner[T dense.Scalar] struct {
 	begun []*window[T] // site i, the entries that lead to an index that crosses the bond on its right
 	ended []*window[T] // site i, the entries that come from an index that crosses the bond on its left
 	kept  int          // entries of pairs
+
+	projections []*projection[T] // the last ones, of one site and of two from each site on
+	tasks       int              // of them all
+	spare       block.Scratch[T]
 }
 
 // pairEntries bounds the joined entries that a planner keeps: about 50 MB in real arithmetic. Beyond, pairs are joined anew for each plan,
@@ -23,7 +27,8 @@ const pairEntries = 1 << 20
 // NewPlanner returns a planner for o.
 func NewPlanner[T dense.Scalar](o *Operator[T]) *Planner[T] {
 	n := o.Len()
-	return &Planner[T]{op: o, sites: make([]*window[T], n), pairs: make([]*window[T], n), begun: make([]*window[T], n), ended: make([]*window[T], n)}
+	return &Planner[T]{op: o, sites: make([]*window[T], n), pairs: make([]*window[T], n), begun: make([]*window[T], n), ended: make([]*window[T], n),
+		projections: make([]*projection[T], 2*n)}
 }
 
 // site returns the window of one site.

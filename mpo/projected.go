@@ -12,11 +12,11 @@ import (
 type Projected[T dense.Scalar] struct {
 	Theta       *block.Structure
 	left, right *block.Tensor[T]
-	net         network[T]
+	plan        *projection[T]
+	mixed       [2][]T // the mixtures of the left and of the right
 
 	planner *Planner[T]
-	source  *leftSource[T] // the first pass
-	first   int            // site
+	first   int // site
 }
 
 // Project plans the Hamiltonian on sites first..first+count-1 (count 1 or 2) for the tensor structure theta.
@@ -24,7 +24,8 @@ func Project[T dense.Scalar](o *Operator[T], first, count int, left, right *bloc
 	return NewPlanner(o).Project(first, count, left, right, theta)
 }
 
-// Project plans the Hamiltonian on sites first..first+count-1 (count 1 or 2) for the tensor structure theta.
+// Project plans the Hamiltonian on sites first..first+count-1 (count 1 or 2) for the tensor structure theta. The environments must keep their
+// elements as long as the result is used.
 func (p *Planner[T]) Project(first, count int, left, right *block.Tensor[T], theta *block.Structure) *Projected[T] {
 	w := p.site(first)
 	if count == 2 {
@@ -33,38 +34,129 @@ func (p *Planner[T]) Project(first, count int, left, right *block.Tensor[T], the
 	t := asKet(theta)
 	mustMeet("left", first, left.Axes, []block.Axis{t.left().Reversed(), w.wl, t.left()})
 	mustMeet("right", first+count-1, right.Axes, []block.Axis{w.wr, t.right().Reversed(), t.right()})
-	h := &Projected[T]{Theta: theta, left: left, right: right, planner: p, first: first}
-	var x, y slab
-	h.source = newLeftSource(&h.net, w, left.Structure, t, &x)
-	nw := len(w.wr.Sectors)
-	down := steps(w.group, t.right(), -1, w.wr, t.right())
-	// For each result block and sector w of the MPO bond, rows (l', s') of y, columns (w, r).
-	for i := range theta.Blocks {
-		lp, out, rp := t.at(i)
-		m, d, n := t.shape(i)
-		for v := range nw {
-			r := down[rp*nw+v]
-			e, ok := right.Find(v, r, rp)
-			if !ok || !h.source.moves(&h.net, lp, v, out, r) {
-				continue
-			}
-			cols := w.wr.Sectors[v].Dim * t.right().Sectors[r].Dim
-			at := h.net.piece(&y, m*d*cols)
-			h.net.chained(gemmTask{a: at, b: right.Blocks[e].Offset, c: theta.Blocks[i].Offset, m: m * d, n: n, k: cols, lda: cols, ldb: n, ldc: n})
-		}
-		h.net.endChain()
+	vacant, done := placeOf(w.wl, p.op.Bonds[first].Vacant), placeOf(w.wr, p.op.Bonds[first+count].Done)
+	if !isIdentity(left, true, vacant) {
+		vacant = nowhere
 	}
-	h.net.seal(x, y)
+	if !isIdentity(right, false, done) {
+		done = nowhere
+	}
+	key := projectionKey{theta, left.Structure, right.Structure, vacant, done}
+	h := &Projected[T]{Theta: theta, left: left, right: right, planner: p, first: first, plan: p.projection(first, w, key)}
+	for i, m := range []*mixtures[T]{h.plan.lefts, h.plan.rights} {
+		h.mixed[i] = p.spare.Take(m.size)
+		m.fill(h.mixed[i], []*block.Tensor[T]{left, right}[i].Data)
+	}
 	return h
 }
 
 // Sites returns the first site that h acts on, and their number.
 func (h *Projected[T]) Sites() (first, count int) { return h.first, len(h.Theta.Axes) - 2 }
 
+// Release gives the memory of h back to its planner; h must not be used any more. Without it the collector does so.
+func (h *Projected[T]) Release() {
+	for i := range h.mixed {
+		h.planner.spare.Give(h.mixed[i])
+		h.mixed[i] = nil
+	}
+	h.plan = nil
+}
+
+// placeOf returns the place of an index of an axis; nowhere if it is negative.
+func placeOf(a block.Axis, index int) place {
+	for i, s := range a.Sectors {
+		if index >= 0 && index < s.Dim {
+			return place{i, index}
+		}
+		index -= s.Dim
+	}
+	return nowhere
+}
+
 // Flops returns the operations of one application.
-func (h *Projected[T]) Flops() float64 { return h.net.flops() }
+func (h *Projected[T]) Flops() float64 { return h.plan.flops }
 
 // Apply sets dst = H src on slabs of the structure Theta.
 func (h *Projected[T]) Apply(dst, src []T, ws *Workspace[T], pool *task.Pool) {
-	h.net.run(dst, h.left.Data, src, nil, h.right.Data, ws, pool)
+	r := &ws.run
+	r.bind()
+	r.plan = h.plan
+	r.slabs = [operands][]T{theta: src, leftEnvironment: h.left.Data, leftMixed: h.mixed[0], rightEnvironment: h.right.Data, rightMixed: h.mixed[1]}
+	r.dst = dst
+	for len(r.scratch) < pool.Threads() {
+		r.scratch = append(r.scratch, nil)
+	}
+	for i := range pool.Threads() {
+		r.scratch[i] = grow(r.scratch[i], h.plan.scratch)
+	}
+	h.plan.clearGaps(dst)
+	pool.Do(len(h.plan.chains), h.plan.chainFlops, r.onChain)
+	pool.Do(len(h.plan.bands), h.plan.bandFlops, r.onBand)
+	r.plan, r.slabs, r.dst = nil, [operands][]T{}, nil
+}
+
+// projectionRun carries a running plan to the tasks of the pool. The functions are bound once, so that nothing is allocated.
+type projectionRun[T dense.Scalar] struct {
+	plan    *projection[T]
+	slabs   [operands][]T
+	dst     []T
+	scratch [][]T // by worker
+
+	onChain, onBand func(worker, i int)
+}
+
+func (r *projectionRun[T]) bind() {
+	if r.onChain == nil {
+		r.onChain, r.onBand = r.chain, r.band
+	}
+}
+
+func (r *projectionRun[T]) chain(_, i int) {
+	c := &r.plan.chains[i]
+	if c.from == c.to {
+		for j := range c.rows {
+			clear(r.dst[c.at+j*c.ld:][:c.cols])
+		}
+	}
+	for j := c.from; j < c.to; j++ {
+		g := &r.plan.products[j]
+		g.run(r.slabs[g.fromA], r.slabs[g.fromB], r.dst)
+	}
+	for j := c.movesFrom; j < c.movesTo; j++ {
+		move(&r.plan.moves[j], r.slabs[theta], r.dst)
+	}
+}
+
+func (r *projectionRun[T]) band(worker, i int) {
+	b, space := &r.plan.bands[i], r.scratch[worker]
+	slabs := r.slabs
+	slabs[between] = space
+	for j := b.first.from; j < b.first.to; j++ {
+		g := &r.plan.products[j]
+		g.run(slabs[g.fromA], slabs[g.fromB], space)
+	}
+	for j := b.feeds.from; j < b.feeds.to; j++ {
+		f := &r.plan.feeds[j]
+		if f.overwrite {
+			for k := range f.rows {
+				clear(space[f.dst+k*f.ldd:][:f.cols])
+			}
+		}
+		move(&f.moveTask, slabs[f.from], space)
+	}
+	for j := b.last.from; j < b.last.to; j++ {
+		g := &r.plan.products[j]
+		g.run(slabs[g.fromA], slabs[g.fromB], r.dst)
+	}
+	for j := b.moves.from; j < b.moves.to; j++ {
+		move(&r.plan.moves[j], space, r.dst)
+	}
+}
+
+func (g *scaledGemm[T]) run(a, b, c []T) {
+	beta := dense.FromFloat[T](1)
+	if g.overwrite {
+		beta = dense.FromFloat[T](0)
+	}
+	dense.Gemm(dense.NoTrans, dense.NoTrans, g.m, g.n, g.k, g.alpha, a[g.a:], g.lda, b[g.b:], g.ldb, beta, c[g.c:], g.ldc)
 }

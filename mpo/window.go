@@ -17,7 +17,8 @@ type window[T dense.Scalar] struct {
 	links  []link
 	local  []localEntry[T]
 
-	tables [faces][][]link // see by
+	tables  [faces][][]link // see by
+	schemes [4]*scheme[T]   // by which environments are the identity
 }
 
 // stateGroup is a sector of the states of a window.
