@@ -205,7 +205,7 @@ func TestDeterminism(t *testing.T) {
 	for i := range 4 {
 		require.NoError(t, e.growLeft(i))
 	}
-	require.Greater(t, e.plan.Project(4, 2, e.envs.lefts[4], e.envs.rights[5], theta.Structure).Flops(), 2*task.Threshold, "too small to be spread")
+	require.Greater(t, e.plan.Project(4, 2, e.envs.lefts[4], e.envs.rights[5], theta.Structure).Flops(), task.Threshold, "too small to be spread")
 	require.Equal(t, bits(one), bits(run(Options{Threads: 2, Seed: 5})), "two threads")
 	require.Equal(t, bits(one), bits(run(Options{Threads: 3, Seed: 5})), "three threads")
 	require.NotEqual(t, bits(one), bits(run(Options{Threads: 1, Seed: 6})), "the seed has no effect")
