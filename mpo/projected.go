@@ -73,7 +73,7 @@ func placeOf(a block.Axis, index int) place {
 	return nowhere
 }
 
-// Flops returns the operations of one application.
+// Flops returns the operations of the matrix products of one application, in the arithmetic of T.
 func (h *Projected[T]) Flops() float64 { return h.plan.flops }
 
 // Apply sets dst = H src on slabs of the structure Theta.

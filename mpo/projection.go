@@ -297,12 +297,6 @@ func (d *drawing[T]) finish() {
 	for i := range d.products {
 		d.flops += d.products[i].flops()
 	}
-	for _, v := range d.moves {
-		d.flops += 2 * float64(v.rows) * float64(v.cols)
-	}
-	for _, v := range d.feeds {
-		d.flops += 2 * float64(v.rows) * float64(v.cols)
-	}
 }
 
 // clearGaps zeroes what lies between the blocks of a slab.
