@@ -54,6 +54,8 @@ type setting struct {
 	noise        float64 // size of the random part of the start vectors
 	vectors      int     // Krylov vectors a bond
 	tolerance    float64 // residual of the eigenvector
+	least        float64 // gain of energy by which another Krylov vector is worth its product; 0: any
+	kind         kind    // of the updates
 }
 
 // outcome is what one sweep reports.
@@ -217,7 +219,11 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 		return err
 	}
 	e.reseed(i, right)
-	energy, discarded, change, err := e.update(i, right, s)
+	update := e.update
+	if s.kind != twoSite {
+		update = e.updateOne
+	}
+	energy, discarded, change, err := update(i, right, s)
 	if err != nil {
 		return err
 	}
@@ -266,20 +272,7 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 	if err != nil {
 		return 0, 0, 0, e.at(i, err)
 	}
-	e.psi.Sites[i], e.psi.Sites[i+1] = a, b
-	if right {
-		e.envs.dropRight(i)
-		e.psi.Center = i + 1
-		err = e.growLeft(i)
-	} else {
-		e.envs.dropLeft(i + 1)
-		e.psi.Center = i
-		err = e.growRight(i + 1)
-	}
-	if err != nil {
-		return 0, 0, 0, e.at(i, err)
-	}
-	return energy, discarded, change, nil
+	return energy, discarded, change, e.move(i, right, a, b)
 }
 
 // at names the bond of a failure.
@@ -347,7 +340,7 @@ func (e *engine[T]) lowest(h *mpo.Projected[T], theta *block.Tensor[T], s settin
 		energy := e.blocked(theta, apply)
 		return energy, halted
 	}
-	r := krylov.Lowest(apply, theta.Data, against, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance, Pool: e.pool}, &e.kry)
+	r := krylov.Lowest(apply, theta.Data, against, krylov.Options{MaxVectors: s.vectors, Tolerance: s.tolerance, Gain: s.least, Pool: e.pool}, &e.kry)
 	if halted != nil {
 		return 0, halted
 	}

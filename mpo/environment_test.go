@@ -130,6 +130,13 @@ func testEnvironments[T dense.Scalar](t *testing.T, rng *rand.Rand, s *sum) {
 		require.InDelta(t, 0, abs(dense.ToComplex(got)-want)/size, 1e-13)
 	}
 
+	// Between different chains the image of each site of the ket, seen by the bra.
+	for i := range n {
+		m := NewPlanner(o).Image(i, left[i].Structure, right[i+1].Structure, ket[i].Structure)
+		got := block.Dot(bra[i], m.Run(left[i], right[i+1], ket[i], &ws, pool))
+		require.InDelta(t, 0, abs(dense.ToComplex(got)-want)/size, 1e-13, "image of site %d", i)
+	}
+
 	// The projected Hamiltonian between equal chains: <phi|H|psi> with phi differing from psi on the projected sites only.
 	for i := range n {
 		left[i] = LeftEdge(o)
