@@ -16,7 +16,8 @@
 // particle do not leave the search in the product state. Then clean sweeps follow, cut by singular values. A stage (one bond
 // dimension) ends when sweeping on would gain less than the wish, or much less than the truncation costs; the next has a
 // larger bond, until the error estimate is below the wanted precision and two stages agree, or a cap is met.
-// Options.Schedule puts sweeps of one's own in the place of all that.
+// Options.Schedule puts sweeps of one's own in the place of all that: also of single sites, whose bonds stay as they are or are expanded by what the
+// Hamiltonian reaches outside of both sides (Gleis, Li, von Delft 2023).
 //
 // Between updates an environment stands for each site only on the side away from the centre; slabs are used again. So a search holds
 // the state and its environments once, besides the workspace of the widest bond. A cap on memory is kept by forecasting the blocks of the
@@ -70,6 +71,8 @@
 // # Papers
 //
 //   - S. R. White, Phys. Rev. Lett. 69, 2863 (1992); Phys. Rev. B 48, 10345 (1993): the method, two sites at a time.
+//   - A. Gleis, J.-W. Li, J. von Delft, Phys. Rev. Lett. 130, 246402 (2023): controlled bond expansion.
+//   - N. Halko, P.-G. Martinsson, J. A. Tropp, SIAM Rev. 53, 217 (2011): the random probe of the expansion.
 //   - S. R. White, Phys. Rev. B 72, 180403 (2005): the perturbation of the density matrix.
 //   - U. Schollwoeck, Ann. Phys. 326, 96 (2011): matrix-product states, environments, the projected Hamiltonian.
 package dmrg

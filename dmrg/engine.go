@@ -55,8 +55,11 @@ type setting struct {
 	vectors      int     // Krylov vectors a bond
 	tolerance    float64 // residual of the eigenvector
 	least        float64 // gain of energy by which another Krylov vector is worth its product; 0: any
-	kind         kind    // of the updates
+	update       Update  // of the bonds
 }
+
+// clean is whether a sweep measures what truncation costs: both sites of a bond are optimized, and nothing but the truncation disturbs them.
+func (s setting) clean() bool { return s.update == TwoSites && s.perturbation == 0 }
 
 // outcome is what one sweep reports.
 type outcome struct {
@@ -220,7 +223,8 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 	}
 	e.reseed(i, right)
 	update := e.update
-	if s.kind != twoSite {
+	// The overlaps with lower states know nothing of an expanded bond.
+	if s.update == OneSite || s.update == Expanding && len(e.lower) == 0 {
 		update = e.updateOne
 	}
 	energy, discarded, change, err := update(i, right, s)

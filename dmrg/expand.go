@@ -64,11 +64,11 @@ func (e *engine[T]) outside(t, q *block.Tensor[T], last bool) {
 	minus := dense.FromFloat[T](-1)
 	for range 2 {
 		if last {
-			overlap := e.product(adjoint, t, []int{0, 1}, []int{0, 1})
-			t.Axpy(minus, e.product(q, overlap, []int{2}, []int{0}))
+			overlap := e.contract(adjoint, t, []int{0, 1}, []int{0, 1})
+			t.Axpy(minus, e.contract(q, overlap, []int{2}, []int{0}))
 		} else {
-			overlap := e.product(t, adjoint, []int{1, 2}, []int{1, 2})
-			t.Axpy(minus, e.product(overlap, q, []int{1}, []int{0}))
+			overlap := e.contract(t, adjoint, []int{1, 2}, []int{1, 2})
+			t.Axpy(minus, e.contract(overlap, q, []int{1}, []int{0}))
 		}
 	}
 }

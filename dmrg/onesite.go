@@ -5,15 +5,6 @@ import (
 	"rundle/mps/block"
 )
 
-// kind is how a sweep updates a bond.
-type kind int
-
-const (
-	twoSite   kind = iota // both sites at once, cut by singular values or by the perturbed density matrix (White 1992, 2005)
-	oneSite               // one site, the bond as it is, the centre moved by QR
-	expanding             // one site, its bond expanded before (Gleis, Li, von Delft 2023) and cut by singular values
-)
-
 // updateOne optimizes one site of bond i, the left one when going right, and moves the centre to the other. Like update it leaves all as it was on an
 // error.
 func (e *engine[T]) updateOne(i int, right bool, s setting) (energy, discarded, change float64, err error) {
@@ -21,7 +12,7 @@ func (e *engine[T]) updateOne(i int, right bool, s setting) (energy, discarded, 
 	if err != nil {
 		return 0, 0, 0, e.at(i, err)
 	}
-	if s.kind == expanding {
+	if s.update == Expanding {
 		if err := e.expand(w, s); err != nil {
 			return 0, 0, 0, e.at(i, err)
 		}
@@ -66,7 +57,7 @@ func (e *engine[T]) hand(w *oneWindow[T], theta *block.Tensor[T], s setting) (a,
 	}
 	var u, v *block.Tensor[T]
 	switch {
-	case s.kind == expanding:
+	case s.update == Expanding:
 		var spec block.Spectrum
 		if u, spec, v, err = block.SVD(theta, rows, block.Cut{Bond: s.bond, Weight: s.weight}, e.brief); err != nil {
 			return nil, nil, 0, err
@@ -83,21 +74,13 @@ func (e *engine[T]) hand(w *oneWindow[T], theta *block.Tensor[T], s setting) (a,
 		u, v = block.LQ(theta, rows)
 	}
 	if w.toRight {
-		a, b = u, e.product(v, w.next, []int{1}, []int{0})
+		a, b = u, e.contract(v, w.next, []int{1}, []int{0})
 		b.Scale(dense.FromFloat[T](1 / b.Norm()))
 	} else {
-		a, b = e.product(w.next, u, []int{2}, []int{0}), v
+		a, b = e.contract(w.next, u, []int{2}, []int{0}), v
 		a.Scale(dense.FromFloat[T](1 / a.Norm()))
 	}
 	return a, b, discarded, nil
-}
-
-// product contracts on the threads of the engine.
-func (e *engine[T]) product(a, b *block.Tensor[T], axesA, axesB []int) *block.Tensor[T] {
-	p := block.PlanContract(a.Structure, b.Structure, axesA, axesB)
-	out := block.New[T](p.Out)
-	block.RunContract(p, out.Data, a.Data, b.Data, nil, e.pool)
-	return out
 }
 
 // move puts the tensors of bond i in place and moves the centre across, with the environment that it leaves behind.

@@ -57,7 +57,7 @@ func testOneSiteSweeps[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sect
 		e.onBond = func(p Position) {
 			require.InDelta(t, energyOf(t, e), dense.Real(mpo.Expectation(e.psi, e.op, nil)), 1e-11, "bond %d: environments", p.Bond)
 			require.InDelta(t, 1, e.psi.Norm(), 1e-12)
-			if s.kind == oneSite {
+			if s.update == OneSite {
 				require.LessOrEqual(t, p.Energy, before+1e-11, "bond %d", p.Bond)
 				before = p.Energy
 			}
@@ -74,11 +74,11 @@ func testOneSiteSweeps[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sect
 		}
 		return last
 	}
-	s := setting{bond: 6, weight: 1e-28, vectors: 12, tolerance: 1e-11, kind: expanding}
+	s := setting{bond: 6, weight: 1e-28, vectors: 12, tolerance: 1e-11, update: Expanding}
 	rough := energies(s, 3)
-	s.kind = oneSite
+	s.update = OneSite
 	require.LessOrEqual(t, energies(s, 2), rough+1e-11)
-	s.bond, s.kind = enough, expanding
+	s.bond, s.update = enough, Expanding
 	require.InDelta(t, want.energy, energies(s, 8), 1e-10)
 }
 

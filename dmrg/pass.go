@@ -5,13 +5,24 @@ import (
 	"math"
 )
 
-// Pass is one sweep of a schedule that the user writes: right and left again, two sites at a time, every bond once each way.
+// Pass is one sweep of a schedule that the user writes: right and left again, every bond once each way.
 type Pass struct {
 	Bond         int     // cap on the bond dimension
 	Vectors      int     // Krylov vectors of each bond, and as many products with the Hamiltonian, unless they exhaust the space of the start; 0: 4
 	Weight       float64 // largest weight that a truncation may discard; 0: only what is exactly zero
-	Perturbation float64 // weight of the perturbation of the density matrix; 0: none, a clean sweep
+	Perturbation float64 // weight of the perturbation of the density matrix, of two sites; 0: none
+	Gain         float64 // energy that a Krylov vector must have gained for another one to follow; 0: any
+	Update       Update  // of a bond; 0: TwoSites, a clean sweep where nothing is perturbed
 }
+
+// Update is what a sweep does at a bond.
+type Update int
+
+const (
+	TwoSites  Update = iota // both sites at once, cut by singular values or by the perturbed density matrix (White 1992, 2005)
+	OneSite                 // one site, the bond as it is, the centre moved by QR
+	Expanding               // one site, its bond expanded before (Gleis, Li, von Delft 2023) and cut by singular values
+)
 
 // passVectors is the default of Pass.Vectors.
 const passVectors = 4
@@ -33,6 +44,12 @@ func (o Options) checkSchedule() error {
 			return bad("Weight", p.Weight, "a weight from 0 to less than 1")
 		case !(p.Perturbation >= 0 && p.Perturbation < 1):
 			return bad("Perturbation", p.Perturbation, "a weight from 0 to less than 1")
+		case !(p.Gain >= 0) || math.IsInf(p.Gain, 0):
+			return bad("Gain", p.Gain, "a positive energy, or 0 for none")
+		case p.Update < TwoSites || p.Update > Expanding:
+			return bad("Update", int(p.Update), "TwoSites, OneSite or Expanding")
+		case p.Update != TwoSites && p.Perturbation > 0:
+			return bad("Perturbation", p.Perturbation, "0, for the density matrix of two sites alone is perturbed")
 		}
 	}
 	return nil
@@ -40,7 +57,8 @@ func (o Options) checkSchedule() error {
 
 // setting of a pass. The tolerance is one that rounding alone can meet.
 func (p Pass) setting() setting {
-	s := setting{bond: p.Bond, weight: p.Weight, perturbation: p.Perturbation, vectors: p.Vectors, tolerance: math.SmallestNonzeroFloat64}
+	s := setting{bond: p.Bond, weight: p.Weight, perturbation: p.Perturbation, vectors: p.Vectors,
+		tolerance: math.SmallestNonzeroFloat64, least: p.Gain, update: p.Update}
 	if s.vectors == 0 {
 		s.vectors = passVectors
 	}
@@ -55,8 +73,8 @@ func (s *search[T]) follow() (Verdict, string, error) {
 		if s.journal.look("bond", func() int { return s.affordable(1, p.Bond) }) < p.Bond {
 			return MemoryCap, fmt.Sprintf("pass %d of the schedule, bond dimension %d, would need about %.3g MiB", i, p.Bond, s.expected(p.Bond)/(1<<20)), nil
 		}
-		clean := p.Perturbation == 0
-		begins := i == 0 || passes[i-1].Perturbation > 0 || passes[i-1].Bond != p.Bond
+		clean := p.setting().clean()
+		begins := i == 0 || !passes[i-1].setting().clean() || passes[i-1].Bond != p.Bond
 		if clean && begins {
 			s.stages = append(s.stages, settledStage{bond: p.Bond})
 		}
@@ -67,7 +85,7 @@ func (s *search[T]) follow() (Verdict, string, error) {
 		if verdict != unfinished || err != nil {
 			return verdict, reason, err
 		}
-		ends := i == len(passes)-1 || passes[i+1].Perturbation > 0 || passes[i+1].Bond != p.Bond
+		ends := i == len(passes)-1 || !passes[i+1].setting().clean() || passes[i+1].Bond != p.Bond
 		if clean && ends {
 			if err := s.report(p.Bond); err != nil {
 				return unfinished, "", err

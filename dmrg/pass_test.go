@@ -73,6 +73,10 @@ func TestScheduleRefusals(t *testing.T) {
 		{Pass{Bond: 4, Weight: 1}, "Weight = 1"},
 		{Pass{Bond: 4, Weight: math.NaN()}, "Weight = NaN"},
 		{Pass{Bond: 4, Perturbation: math.Inf(1)}, "Perturbation = +Inf"},
+		{Pass{Bond: 4, Gain: math.Inf(1)}, "Gain = +Inf"},
+		{Pass{Bond: 4, Gain: -1}, "Gain = -1"},
+		{Pass{Bond: 4, Update: 3}, "Update = 3"},
+		{Pass{Bond: 4, Update: OneSite, Perturbation: 1e-3}, "density matrix of two sites"},
 	} {
 		_, err := Ground(context.Background(), heisenberg(t, 4), ladder.Sector{"Sz": 0}, Options{Bond: 10, Schedule: []Pass{{Bond: 4}, row.pass}})
 		require.ErrorContains(t, err, "dmrg: option Schedule, pass 1: ")

@@ -13,16 +13,18 @@ import (
 // Figures of the automatic schedule. They set the pace, not the answer: a stage ends by the energies it reached.
 const (
 	firstBond         = 24
-	stageGrowth       = 1.6  // factor between stages
-	leastGrowth       = 8    // states more at the least
+	leastGrowth       = 8    // states that a stage has more than the one before, at the least
 	maxCleanStage     = 12   // clean sweeps of a stage whose bond is full
 	maxCleanWhole     = 60   // clean sweeps of a stage that truncates next to nothing: only sweeping gains more
 	maxStages         = 40   // of a search whose bond is not full
-	firstPerturbation = 1e-3 // weight of the perturbation in the first sweep of a stage
+	firstPerturbation = 1e-3 // weight of the perturbation in the first sweep
+	laterPerturbation = 1e-4 // the same, on the way to a larger bond
 	checkPerturbation = 1e-6 // the same, where the stage before left the bond unfilled: to see that no sector was missed
 	perturbationDecay = 0.1
 	stateRounding     = 1e-12 // change of a tensor that is rounding
-	vectorsEarly      = 10
+	firstSweeps       = 3
+	vectorsEarly      = 6 // of the first sweeps
+	vectorsOpening    = 3 // on the way to a larger bond
 	vectorsLate       = 5
 	vectorsWhole      = 16 // where nothing is truncated the middle bonds hold the whole problem
 )
@@ -129,8 +131,7 @@ func (s *search[T]) ended(err error) (Verdict, string, error) {
 
 // grow raises the bond dimension within the caps; where none is left it says which, after a second stage.
 func (s *search[T]) grow(bond *int, est estimate) (Verdict, string) {
-	wish := max(*bond+leastGrowth, int(stageGrowth*float64(*bond)))
-	next := min(s.opt.Bond, wish)
+	next := s.nextBond(*bond)
 	able := s.journal.look("bond", func() int { return s.affordable(*bond, next) })
 	// A little more is not worth a stage, unless the cap allows no more.
 	if able < next && able < *bond+min(leastGrowth, next-*bond) {
@@ -198,23 +199,10 @@ func (s *search[T]) open(bond int) (Verdict, string, error) {
 	if s.opt.Opening == Unperturbed || s.engine.psi.Len() == 1 {
 		return unfinished, "", nil
 	}
-	set := s.clean(bond)
-	count := 2
-	set.perturbation = firstPerturbation
-	first := len(s.stages) == 0
-	if first {
-		count, set.vectors = 4, vectorsEarly
-	} else if last := &s.stages[len(s.stages)-1]; last.largest < last.bond {
-		count, set.perturbation = 1, checkPerturbation
-	}
-	for range count {
-		if first {
-			set.noise = 0.1 * math.Sqrt(set.perturbation)
-		}
+	for _, set := range s.opening(bond) {
 		if v, r, err := s.sweep(set); v != unfinished || err != nil {
 			return v, r, err
 		}
-		set.perturbation *= perturbationDecay
 	}
 	return unfinished, "", nil
 }
@@ -276,7 +264,7 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 		return unfinished, "", err
 	}
 	s.narrow = max(s.narrow, out.narrow)
-	if n := len(s.stages); n > 0 && set.perturbation == 0 {
+	if n := len(s.stages); n > 0 && set.clean() {
 		st := &s.stages[n-1]
 		st.energies = append(st.energies, out.energy)
 		st.discarded, st.largest, st.rest, st.gain, st.change = out.total, out.largest, out.rest, out.gain, out.change

@@ -43,7 +43,7 @@ func TestLoneBoson(t *testing.T) {
 		requireHonest(t, r, levels[0])
 	}
 	h, levels := loneBoson(t, 20, 1.1)
-	blind := ground1(t, h, ladder.Sector{"N": 1}, Options{Precision: 1e-5, Unprobed: true})
+	blind := ground1(t, h, ladder.Sector{"N": 1}, Options{Precision: 1e-5, Opening: Unperturbed, Unprobed: true})
 	require.Greater(t, blind.Energy, levels[0]+1e-4, "the test would not see a probe that does nothing")
 }
 

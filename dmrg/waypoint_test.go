@@ -87,7 +87,7 @@ func interruptedModels(t *testing.T) map[string]func(Options) (*Result, error) {
 		"merged rungs": ground(flux, ladder.Sector{"N": 4}, Options{Precision: 1e-5}),
 		"complex":      ground(flux, ladder.Sector{"N": 4}, Options{Precision: 1e-5, Complex: true}),
 		"memory cap":   ground(heisenberg(t, 20), ladder.Sector{"Sz": 0}, Options{Precision: 1e-9, Memory: 1 << 18}),
-		"schedule": ground(heisenberg(t, 12), ladder.Sector{"Sz": 0}, Options{Schedule: []Pass{{Bond: 8, Perturbation: 1e-3}, {Bond: 8}, {Bond: 16},
+		"schedule": ground(heisenberg(t, 12), ladder.Sector{"Sz": 0}, Options{Schedule: []Pass{{Bond: 8, Perturbation: 1e-3}, {Bond: 8}, {Bond: 12, Update: Expanding}, {Bond: 12, Update: OneSite}, {Bond: 16},
 			{Bond: 16}}}),
 	}
 }
