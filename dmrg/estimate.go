@@ -88,13 +88,18 @@ func estimateError(stages []settledStage, scale float64, bonds int) estimate {
 	return estimate{limit: last.energy() - distance, err: err, rounding: rounding, above: distance + err}
 }
 
+// seenGap is the smallest gap that the last two stages saw; +Inf where they saw none.
+func seenGap(stages []settledStage) float64 {
+	narrow := 0.0
+	for i := max(0, len(stages)-2); i < len(stages); i++ {
+		narrow = max(narrow, stages[i].narrow)
+	}
+	return 1 / narrow
+}
+
 // gapAbove is about the gap above the state, or less: an eigenvector with the residual r errs by r²/gap in energy (Temple 1928).
 func gapAbove(stages []settledStage, scale float64) float64 {
-	gap := widestGap * scale
-	for i := max(0, len(stages)-2); i < len(stages); i++ {
-		gap = min(gap, gapShare/stages[i].narrow)
-	}
-	return gap
+	return min(widestGap*scale, gapShare*seenGap(stages))
 }
 
 // roundingOf is about the rounding error of an energy.

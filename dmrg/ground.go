@@ -142,6 +142,9 @@ func (s *search[T]) result(verdict Verdict, reason string, ended bool) (*Result,
 	r := &Result{Verdict: verdict, Reason: reason, Sweeps: s.sweeps, Stages: s.reports, OperatorBonds: e.op.BondDims(),
 		LargestBond: e.psi.MaxBond(), Energy: math.NaN(), EnergyLimit: est.limit - s.mixing, EnergyError: est.err + s.mixing,
 		Variance: math.NaN(), VarianceRounding: math.NaN(), TwoSiteVariance: math.NaN()}
+	if gap := seenGap(s.stages); !math.IsInf(gap, 1) {
+		r.Gap = gap
+	}
 	if n := len(s.sweeps); n > 0 {
 		r.DiscardedWeight = s.sweeps[n-1].Discarded
 	}

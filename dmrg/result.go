@@ -54,6 +54,7 @@ type Result struct {
 	Variance         float64            // <(H - E)^2> of State; NaN where it would have cost more than a fair part of the search
 	VarianceRounding float64            // rounding error of Variance
 	TwoSiteVariance  float64            // the part of Variance that changes of two neighbouring sites see, all of it where no term is longer; NaN where the search did not end between sweeps
+	Gap              float64            // smallest distance to a next level that the Krylov spaces of the bonds told, an upper bound on the gap above State in its sector; 0: none did
 	DiscardedWeight  float64            // largest of a bond in the last whole sweep
 	LargestBond      int                // of State
 	Sweeps           []Sweep            // whole ones

@@ -142,7 +142,7 @@ func (s source) inner(target string) string {
 	from, to := layer(s.pkg()), layer(target)
 	switch {
 	case slices.Contains(testOnly, target):
-		if s.isTest() {
+		if s.isTest() || slices.Contains(judges, s.pkg()) {
 			return ""
 		}
 		return "only test files may"

@@ -5,6 +5,7 @@ package arch
 // A trailing "/..." takes in the packages below.
 var layers = [][]string{
 	{"examples/...", "internal/bench/...", "internal/acceptance"},
+	{"internal/calibration"},
 	{"cmd/rundle"},
 	{"internal/report"},
 	{"internal/survey"},
@@ -23,12 +24,15 @@ var layers = [][]string{
 	{"internal/krylov"},
 	{"internal/dense"},
 	{"internal/dense/openblas"},
-	{"internal/fit", "internal/npz", "internal/atomicfile", "internal/task"},
+	{"internal/fit", "internal/errorbar", "internal/npz", "internal/atomicfile", "internal/task"},
 	{"internal/arch", "internal/exact", "."},
 }
 
-// testOnly may be imported by test files alone, from any layer.
-var testOnly = []string{"internal/exact"}
+// testOnly may be imported by test files alone, from any layer, and by judges, which measure the program and are no part of it.
+var (
+	testOnly = []string{"internal/exact"}
+	judges   = []string{"internal/calibration"}
+)
 
 // core packages depend on the standard library and on coreModules; the numeric
 // core starts no goroutine but through internal/task.

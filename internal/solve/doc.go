@@ -32,13 +32,9 @@
 //
 // # Error bars of observations
 //
-// Between the settled bond dimensions the discarded weight w falls, and an expectation value v approaches its limit about linearly
-// in the truncation error of the state, sqrt(w). With the values v0 and v1 at the last two settled bond dimensions the distance
-// to the limit is then |v1 - v0| r/(1 - r) with r = sqrt(w1/w0). The error quoted is this distance, with r kept within [1/2, 19/20]
-// and |v1 - v0| at least 0.3 of its root mean square over all places of the formula, so that no place gains from an accident; plus what the
-// eigensolver left undone, |A| r/(2 J), with |A| a bound on the norm of the formula, r the largest residual of the last sweep and J the largest
-// coupling, which stands for the gap; plus rounding.
-//
-// Where there is no second bond dimension, the error is 2 |A| (sqrt(w) + sqrt(e/J) + r/J) with e the error of the energy: a state that lies e above
-// the ground state, which is alone below a gap of J, differs from it by sqrt(e/J) at most (Eckart 1930).
+// An expectation value is judged by how it changed since the bond dimension settled before, by how far the energy may lie above the exact one
+// and by what the eigensolver left, the last two over the gap that the search saw; see internal/errorbar. Where there is no second bond dimension, the error
+// is 2 |A| (sqrt(w) + sqrt(e/J) + r/J) with |A| a bound on the norm of the formula, w the discarded weight, e the error of the energy, r the residual
+// and J the largest coupling: a state that lies e above the ground state, which is alone below a gap of J, differs from it by sqrt(e/J) at
+// most (Eckart 1930).
 package solve

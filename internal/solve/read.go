@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"path/filepath"
 
+	"rundle/internal/errorbar"
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
 	"rundle/mps"
@@ -74,10 +75,10 @@ func reread(ctx context.Context, s *runfolder.State, psi *mps.State, m *modelfil
 		}
 		return refused(fmt.Errorf("%s: %w", m.File, err))
 	}
-	q := quality{weight: s.DiscardedWeight, energy: s.EnergyError / largestCoefficient(m.Hamiltonian.Poly)}
+	q := errorbar.Quality{Weight: s.DiscardedWeight, Energy: s.EnergyError / largestCoefficient(m.Hamiltonian.Poly)}
 	bars := make([][]float64, len(all))
 	for i := range all {
-		bars[i] = loneBars(all[i], q)
+		bars[i] = errorbar.Lone(all[i].norms, q)
 	}
 	s.Observations = observations(all, bars)
 	s.Entanglement, err = entangled(psi, m.Observe)

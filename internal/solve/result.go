@@ -5,6 +5,7 @@ import (
 	"math"
 
 	"rundle/dmrg"
+	"rundle/internal/errorbar"
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
 	"rundle/mpo/ladder"
@@ -105,14 +106,15 @@ func (r *run) observations(ctx context.Context, found *dmrg.Result, before *mps.
 	if err != nil {
 		return nil, err
 	}
-	q := quality{weight: found.DiscardedWeight, energy: energyError / largestCoefficient(r.model.Hamiltonian.Poly)}
+	scale := largestCoefficient(r.model.Hamiltonian.Poly)
+	q := errorbar.Quality{Weight: found.DiscardedWeight, Energy: (energyError + max(0, found.Energy-found.EnergyLimit)) / scale, Gap: found.Gap / scale}
 	if n := len(found.Sweeps); n > 0 {
-		q.residual = found.Sweeps[n-1].Residual / largestCoefficient(r.model.Hamiltonian.Poly)
+		q.Residual = found.Sweeps[n-1].Residual / scale
 	}
 	bars := make([][]float64, len(now))
 	if before == nil {
 		for i := range now {
-			bars[i] = loneBars(now[i], q)
+			bars[i] = errorbar.Lone(now[i].norms, q)
 		}
 		return observations(now, bars), nil
 	}
@@ -125,7 +127,7 @@ func (r *run) observations(ctx context.Context, found *dmrg.Result, before *mps.
 		return nil, err
 	}
 	for i := range now {
-		bars[i] = spreadBars(now[i], earlier[i].values, q, discarded)
+		bars[i] = errorbar.Values.Spread(now[i].values, earlier[i].values, now[i].norms, q, discarded)
 	}
 	return observations(now, bars), nil
 }
