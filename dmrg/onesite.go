@@ -18,6 +18,7 @@ func (e *engine[T]) updateOne(i int, right bool, s setting) (energy, discarded, 
 		}
 	}
 	h := e.plan.Project(w.site, 1, w.left, w.right, w.center.Structure)
+	defer h.Release()
 	theta := w.center.Clone()
 	if energy, err = e.lowest(h, theta, s); err != nil {
 		return 0, 0, 0, e.at(i, err)
