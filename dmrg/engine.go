@@ -23,6 +23,7 @@ type engine[T dense.Scalar] struct {
 	plan     *mpo.Planner[T]
 	psi      *mps.Chain[T]
 	envs     *environments[T]
+	memory   int64            // cap on the bytes held; 0: none
 	lower    []*lowerState[T] // states to stay orthogonal to
 	scratch  block.Scratch[T] // of their overlaps
 	pool     *task.Pool
@@ -94,7 +95,7 @@ func newEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settl
 // standingEngine goes on with psi as it is, which must have a centre.
 func standingEngine[T dense.Scalar](op *mpo.Operator[T], psi *mps.Chain[T], opt settled, halt func() error) *engine[T] {
 	e := &engine[T]{op: op, plan: mpo.NewPlanner(op), psi: psi, pool: task.New(opt.Threads), halt: halt, unit: opt.unit,
-		seed: opt.Seed, pcg: rand.NewPCG(opt.Seed, noiseStream), envs: newEnvironments[T](psi.Len())}
+		seed: opt.Seed, pcg: rand.NewPCG(opt.Seed, noiseStream), envs: newEnvironments[T](psi.Len(), opt.depot), memory: opt.Memory}
 	e.rng = rand.New(e.pcg)
 	e.brief = e.pool.Until(func() bool { return halt() != nil })
 	return e
@@ -127,7 +128,7 @@ func (e *engine[T]) prepare() error {
 		if err := e.halt(); err != nil {
 			return err
 		}
-		if err := e.growRight(i); err != nil {
+		if err := e.beside(i-1, false, e.psi.MaxBond(), func() error { return e.growRight(i) }); err != nil {
 			return err
 		}
 	}
@@ -135,7 +136,7 @@ func (e *engine[T]) prepare() error {
 		if err := e.halt(); err != nil {
 			return err
 		}
-		if err := e.growLeft(i); err != nil {
+		if err := e.beside(i, true, e.psi.MaxBond(), func() error { return e.growLeft(i) }); err != nil {
 			return err
 		}
 	}
@@ -227,7 +228,11 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 	if s.update == OneSite || s.update == Expanding && len(e.lower) == 0 {
 		update = e.updateOne
 	}
-	energy, discarded, change, err := update(i, right, s)
+	var energy, discarded, change float64
+	err := e.beside(i, right, s.bond, func() (err error) {
+		energy, discarded, change, err = update(i, right, s)
+		return err
+	})
 	if err != nil {
 		return err
 	}

@@ -24,6 +24,7 @@ func Ground(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, op
 	if err != nil {
 		return nil, err
 	}
+	defer p.opt.depot.remove()
 	if p.rewritten != nil {
 		return ground(p, p.rewritten.state)
 	}

@@ -62,6 +62,7 @@ func Lowest(ctx context.Context, h *ladder.Hamiltonian, sector ladder.Sector, k 
 	if err != nil {
 		return nil, err
 	}
+	defer p.opt.depot.remove()
 	if k > 1 {
 		p.opt.Precision *= lowerShare // the rest is for what lower states leave
 	}

@@ -15,7 +15,8 @@ type Options struct {
 	Bond                int             // cap on the bond dimension; 0: 4096
 	Sweeps              int             // cap on the number of sweeps; 0: 200
 	Time                time.Duration   // cap on the wall time; 0: none
-	Memory              int64           // cap on the bytes of state, environments and workspace; 0: none
+	Memory              int64           // cap on the bytes of state, environments and workspace, kept by moving environments to disk; 0: none
+	Scratch             string          // folder for environments that do not fit Memory; \"\": that of temporary files
 	Threads             int             // workers; 0: GOMAXPROCS
 	Seed                uint64          // of the small noise in the first sweeps; results are the same for the same seed
 	Charges             []string        // conserved charges to use; nil: the choice that cuts blocks most
@@ -47,6 +48,7 @@ type settled struct {
 	Options
 	weight float64 // weight that a truncation may discard for the wanted precision
 	strict bool    // the user named a precision of observables
+	depot  *depot  // nil without a cap on memory
 	unit   float64 // of energy: a power of two near the largest coupling if squares of that are no good numbers, else 1
 }
 
@@ -111,6 +113,9 @@ func (o Options) settle(scale float64) settled {
 	// Observables err as the square root of the discarded weight, energies as the weight itself.
 	s.weight = 1e-2 * min(s.Precision/scale, s.ObservablePrecision*s.ObservablePrecision)
 	s.weight = max(leastWeight, min(largestWeight, s.weight))
+	if s.Memory > 0 {
+		s.depot = &depot{parent: s.Scratch}
+	}
 	s.unit = 1
 	if scale > 1/plain || scale < plain {
 		s.unit = math.Ldexp(1, math.Ilogb(scale))

@@ -71,7 +71,7 @@ func (s *search[T]) follow() (Verdict, string, error) {
 	passes := s.opt.Schedule
 	for i, p := range passes {
 		if s.journal.look("bond", func() int { return s.affordable(1, p.Bond) }) < p.Bond {
-			return MemoryCap, fmt.Sprintf("pass %d of the schedule, bond dimension %d, would need about %.3g MiB", i, p.Bond, s.expected(p.Bond)/(1<<20)), nil
+			return MemoryCap, fmt.Sprintf("pass %d of the schedule, bond dimension %d, would need about %.3g MiB", i, p.Bond, s.expected(p.Bond).least()/(1<<20)), nil
 		}
 		clean := p.setting().clean()
 		begins := i == 0 || !passes[i-1].setting().clean() || passes[i-1].Bond != p.Bond

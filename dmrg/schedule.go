@@ -144,7 +144,7 @@ func (s *search[T]) grow(bond *int, est estimate) (Verdict, string) {
 	if next == *bond {
 		return BondCap, fmt.Sprintf("bond dimension %d reached with an error of %.1e; allow a larger bond", *bond, est.err)
 	}
-	return MemoryCap, fmt.Sprintf("bond dimension %d fits the memory with an error of %.1e; %d would need about %.3g MiB", *bond, est.err, next, s.expected(next)/(1<<20))
+	return MemoryCap, fmt.Sprintf("bond dimension %d fits the memory with an error of %.1e; %d would need about %.3g MiB", *bond, est.err, next, s.expected(next).least()/(1<<20))
 }
 
 // estimate is the error estimate after the last stage.

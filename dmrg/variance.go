@@ -31,7 +31,7 @@ func (s *search[T]) varianceIsCheap() bool {
 	if dense.IsComplex[T]() {
 		size = 16
 	}
-	return e.growth*widest+compress <= max(varianceShare*e.flops, varianceBlink) && size*elements <= max(s.present(), varianceLittle)
+	return e.growth*widest+compress <= max(varianceShare*e.flops, varianceBlink) && size*elements <= max(s.present().whole(), varianceLittle)
 }
 
 // twoSiteVariance is that of mpo.TwoSiteVariance, from the environments that stand after a whole sweep; NaN where they do not. It takes about as

@@ -117,12 +117,16 @@ func arithmeticLine(e *solve.Explanation) string {
 // forecastRate is the speed, in operations a second, that the forecast of times assumes.
 const forecastRate = 10e9
 
+// diskRate is the speed, in bytes a second, that the forecast of the time to save assumes.
+const diskRate = 200e6
+
 func forecastTable(all []solve.Forecast) string {
 	var rows [][]string
 	for _, f := range all {
-		rows = append(rows, []string{fmt.Sprint(f.Bond), memory(f.Memory), operations(f.Flops), duration(f.Flops / forecastRate)})
+		rows = append(rows, []string{fmt.Sprint(f.Bond), memory(f.State), memory(f.Environments), operations(f.Flops), duration(f.Flops / forecastRate), duration(f.State / diskRate)})
 	}
-	return grid([]string{"bond dimension", "memory", "a sweep", "at 10 Gflop/s"}, rows, "bond dimension", "memory", "a sweep", "at 10 Gflop/s")
+	columns := []string{"bond dimension", "state", "environments", "a sweep", "at 10 Gflop/s", "to save at 200 MB/s"}
+	return grid(columns, rows, columns...)
 }
 
 func observedTable(all []solve.ObservedFacts) string {

@@ -1,13 +1,18 @@
 package main
 
 import (
+	"cmp"
 	"context"
 	"path/filepath"
+	"runtime/debug"
 
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
 	"rundle/internal/solve"
 )
+
+// collectorLeast is the memory of the program beside what a cap speaks of.
+const collectorLeast = 64 << 20
 
 type solveCommand struct {
 	File   string `arg:"" help:"Model file (TOML)."`
@@ -37,6 +42,10 @@ func (k solveCommand) run(c *console) (int, error) {
 	}
 	for _, w := range m.Hamiltonian.Warnings() {
 		c.say("warning: %s", w)
+	}
+	if cap := cmp.Or(opt.Memory, m.Solve.Memory); cap > 0 {
+		// The collector has to keep up: what is free already must not stand in the way of the cap.
+		debug.SetMemoryLimit(cap + cap/10 + collectorLeast)
 	}
 	ctx, release := untilSignal(context.Background(), c.stderr)
 	defer release()

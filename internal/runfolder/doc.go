@@ -10,6 +10,7 @@
 //	status.json    what goes on now, for a look from elsewhere
 //	state-K.npz    the states, K counting from 0
 //	checkpoint/    what is needed to go on
+//	scratch/       while a run lasts: what a cap on memory sends to disk
 //
 // Every file but the log is written to a new file, synced and renamed, so that
 // a reader never sees half of one. Log lines are appended whole; a line cut

@@ -20,6 +20,7 @@ const (
 	LogFile        = "log.jsonl"
 	StatusFile     = "status.json"
 	CheckpointName = "checkpoint"
+	scratchName    = "scratch"
 	lockFile       = ".lock"
 )
 
@@ -56,6 +57,7 @@ type Folder struct {
 	lock     *atomicfile.Lock
 	started  time.Time
 	log      *os.File
+	taken    bool // the scratch folder is ours
 }
 
 // Default returns the run folder of a model file: its name with .run for
@@ -103,7 +105,8 @@ func (f *Folder) take() error {
 	if f.standing == Finished {
 		return nil
 	}
-	if err := atomicfile.RemoveLeftovers(f.dir); err != nil {
+	f.taken = true
+	if err := errors.Join(atomicfile.RemoveLeftovers(f.dir), os.RemoveAll(f.ScratchPath())); err != nil {
 		return unusable(f.dir, err)
 	}
 	// The hash goes first: a folder with a model but no hash could not be told
@@ -126,8 +129,11 @@ func (f *Folder) Close() error {
 		errs = append(errs, f.log.Close())
 		f.log = nil
 	}
+	if f.taken {
+		errs = append(errs, os.RemoveAll(f.ScratchPath()))
+	}
 	errs = append(errs, release(f.lock))
-	f.lock = nil
+	f.lock, f.taken = nil, false
 	return errors.Join(errs...)
 }
 
@@ -158,6 +164,10 @@ func (f *Folder) Checkpoint() (string, error) {
 	}
 	return dir, nil
 }
+
+// ScratchPath returns the path of the folder for what a run cannot hold in memory, which the run makes. What a killed run left there is
+// gone once the folder is opened.
+func (f *Folder) ScratchPath() string { return f.path(scratchName) }
 
 // DropCheckpoint removes the checkpoint, once the results are written.
 func (f *Folder) DropCheckpoint() error {

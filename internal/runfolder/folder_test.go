@@ -239,3 +239,24 @@ func TestInUse(t *testing.T) {
 	require.NoError(t, f.Close(), "closing twice does no harm")
 	open(t, dir, model, Options{})
 }
+
+// TestScratch: what a killed run left goes when the folder is opened; that of a run at work stays, whoever asks.
+func TestScratch(t *testing.T) {
+	dir := filepath.Join(t.TempDir(), "a.run")
+	f := open(t, dir, model, Options{})
+	file := filepath.Join(f.ScratchPath(), "x")
+	fill := func() {
+		require.NoError(t, os.MkdirAll(f.ScratchPath(), 0o777))
+		require.NoError(t, os.WriteFile(file, nil, 0o666))
+	}
+	fill()
+	_, err := Open(dir, model, Options{})
+	require.ErrorContains(t, err, "in use")
+	require.FileExists(t, file)
+	require.NoError(t, f.Close())
+	require.NoDirExists(t, f.ScratchPath())
+	fill()
+	f = open(t, dir, model, Options{})
+	require.NoDirExists(t, f.ScratchPath())
+	require.NoError(t, f.Close())
+}

@@ -187,10 +187,13 @@ bond = 700
 	chiral := forecastOf("0.5*(exp(0.3i) S^+[a,j] S^-[a,j+1] + exp(0.7i) S^+[a,j] S^-[a,j+2] + h.c.) + S^z[a,j] S^z[a,j+1]")
 	assert.Greater(t, chiral[1].Memory, 2*plain[1].Memory)
 	assert.Greater(t, chiral[1].Flops, 4*plain[1].Flops)
-	// Dense blocks, without charges: state and environments of D operator states are L (2 + 2 D) chi^2 numbers, about.
+	// Dense blocks, without charges: state and environments of D operator states are L (2 + D) chi^2 numbers, about.
 	field := forecastOf("S[a,j].S[a,j+1] + 0.3*S^x[a,j] + 0.2*S^z[a,j]")
-	full := 40 * 300 * 300 * 8 * (2.0 + 2*5)
+	// The bonds of eight sites at each end are narrower.
+	full := 40 * 300 * 300 * 8 * (2.0 + 5)
 	assert.InEpsilon(t, full, field[1].Memory, 0.45)
+	assert.InEpsilon(t, 40*300*300*8*2.0, field[1].State, 0.45)
+	assert.Equal(t, field[1].Memory, field[1].State+field[1].Environments)
 }
 
 func TestExplainUnreachable(t *testing.T) {

@@ -11,9 +11,11 @@ import (
 
 // Forecast is what a bond dimension will cost, about.
 type Forecast struct {
-	Bond   int     `json:"bond"`
-	Memory float64 `json:"memory_bytes"`    // of state and environments
-	Flops  float64 `json:"flops_per_sweep"` // right and left, bond dimension settled
+	Bond         int     `json:"bond"`
+	Memory       float64 `json:"memory_bytes"`      // of state and environments
+	State        float64 `json:"state_bytes"`       // of it the state: what a checkpoint writes
+	Environments float64 `json:"environment_bytes"` // of it the environments: what goes to disk under a cap on memory, but for a few
+	Flops        float64 `json:"flops_per_sweep"`   // right and left, bond dimension settled
 }
 
 // forecastBonds are the bond dimensions looked at.
@@ -54,8 +56,10 @@ func forecast[T dense.Scalar](op *mpo.Operator[T], total block.Charge, largest i
 			element, flop = 16, 8
 		}
 		for i := range op.Phys {
-			f.Memory += element * (siteSize(op, bonds, i) + 2*environmentSize(op, bonds, i))
+			f.State += element * siteSize(op, bonds, i)
+			f.Environments += element * environmentSize(op, bonds, i) // left of the site or right of it, never both
 		}
+		f.Memory = f.State + f.Environments
 		for i := range len(op.Phys) - 1 {
 			f.Flops += 2 * flop * updateWork(op, bonds, i)
 		}

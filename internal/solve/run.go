@@ -168,7 +168,7 @@ func (r *run) options(w *watch, start *mps.State, at *dmrg.Waypoint) dmrg.Option
 	o := dmrg.Options{
 		Precision: r.precision(), ObservablePrecision: s.ObservablePrecision, Bond: s.Bond, Sweeps: s.Sweeps, Time: s.Time,
 		Memory: r.memory(), Threads: r.opt.Threads, Seed: s.Seed, Charges: s.Charges, Start: start,
-		From: at, WaypointEvery: r.opt.CheckpointEvery,
+		From: at, WaypointEvery: r.opt.CheckpointEvery, Scratch: r.folder.ScratchPath(),
 	}
 	w.hook(&o)
 	return o
