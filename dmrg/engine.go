@@ -264,6 +264,7 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 	}
 	theta := block.Contract(e.psi.Sites[i], e.psi.Sites[i+1], []int{2}, []int{0})
 	h := e.plan.Project(i, 2, left, beyond, theta.Structure)
+	defer h.Release()
 	if s.noise > 0 {
 		e.shake(theta, s.noise)
 	}
