@@ -15,6 +15,6 @@ func TestAllBars(t *testing.T) {
 	require.LessOrEqual(t, total.Energy.Ratio, 15.0)
 	require.GreaterOrEqual(t, total.Entropy.Covered, 0.9)
 	require.LessOrEqual(t, total.Entropy.Ratio, 15.0)
-	require.GreaterOrEqual(t, total.Local.Covered, 0.9)
-	require.LessOrEqual(t, total.Local.Ratio, 25.0)
+	require.GreaterOrEqual(t, total.Local.Covered, 0.95)
+	require.LessOrEqual(t, total.Local.Ratio, 90.0)
 }
