@@ -39,6 +39,9 @@ func newLevels[T dense.Scalar](p *problem, op *mpo.Operator[T], total block.Char
 func (l *levels[T]) next(start *mps.Chain[T], limit float64) (*Result, error) {
 	s := newSearch[T](l.from)
 	s.limit = limit
+	if len(l.found) > 0 {
+		s.opt.weight = max(leastWeight, s.opt.weight*orthogonalWeight)
+	}
 	s.engine = newEngine(l.op, start, s.opt, l.from.halt)
 	s.engine.avoid(l.chains())
 	return l.run(s)
@@ -72,6 +75,10 @@ func (l *levels[T]) run(s *search[T]) (*Result, error) {
 	l.starts, l.cleared = append(l.starts, s.beyond...), s.cleared
 	return r, err
 }
+
+// orthogonalWeight is the part of the weight that truncations of a level above others may discard: what they discard comes back as an overlap with the
+// levels below, which each update takes out again at a cost of its own.
+const orthogonalWeight = 1e-4
 
 func (l *levels[T]) chains() []*mps.Chain[T] {
 	all := make([]*mps.Chain[T], len(l.found))

@@ -11,8 +11,10 @@ import (
 	"github.com/stretchr/testify/require"
 
 	"rundle/internal/exact"
+	"rundle/mpo"
 	"rundle/mpo/ladder"
 	"rundle/mps"
+	"rundle/mps/block"
 )
 
 // freeLevels returns the k lowest energies of n free fermions with the given single-particle levels, by all choices of the lowest modes.
@@ -85,7 +87,7 @@ func requireLevels(t testing.TB, s *Spectrum, want []float64, k int) {
 	if n := len(s.Levels); s.Whole && n < len(want) {
 		last := s.Levels[n-1]
 		require.Greater(t, want[n], last.EnergyLimit-last.EnergyError, "a level is missing")
-		require.Greater(t, want[n]-want[n-1], 1e-7, "the last multiplet is not whole")
+		require.Greater(t, want[n]-want[n-1], 1e-9, "the last multiplet is not whole")
 	}
 	count := 0
 	for _, m := range s.Multiplets {
@@ -256,5 +258,67 @@ func TestLowestIsRepeatable(t *testing.T) {
 	for i, l := range all[0].Levels {
 		require.Equal(t, l.EnergyLimit, all[1].Levels[i].EnergyLimit)
 		require.Equal(t, l.EnergyError, all[1].Levels[i].EnergyError)
+	}
+}
+
+// TestEndModes: a dimerized chain with weak end links holds a fermion at either end, in levels that split exponentially little in its length (Su, Schrieffer,
+// Heeger 1979): by less than the precision here. The pair comes whole, its splitting is bounded, and the states are those of the levels, not of the ends.
+func TestEndModes(t *testing.T) {
+	const n = 16
+	q := exact.NewQuadratic(n)
+	var formulas []string
+	for j := range n - 1 {
+		x := -1.0
+		if j%2 == 0 {
+			x = -0.1
+		}
+		q.Hop(j+1, j, complex(x, 0))
+		formulas = append(formulas, fmt.Sprintf("%g c^+[a,%d] c[a,%d] + h.c.", x, j+1, j))
+	}
+	single, err := q.Levels()
+	require.NoError(t, err)
+	want := freeLevels(single, n/2, 6)
+	split := want[1] - want[0]
+	require.Less(t, split, 1e-7)
+	require.Greater(t, split, 1e-9)
+	h := hamiltonian(t, n, ladder.Open, one(ladder.Fermion()), formulas...)
+	for _, precision := range []float64{1e-3, 1e-10} {
+		s, err := Lowest(context.Background(), h, ladder.Sector{"N": n / 2}, 1, Options{Precision: precision})
+		require.NoError(t, err)
+		requireLevels(t, s, want, 1)
+		if precision < split {
+			require.Len(t, s.Levels, 1, "the splitting is resolved")
+			continue
+		}
+		require.Len(t, s.Levels, 2, "the pair comes whole")
+		t.Logf("split by %.2e, at most %.2e", s.Multiplets[0].Splitting, s.Multiplets[0].SplittingBound)
+	}
+}
+
+// TestBundle begins from two states that mix the lowest levels, and one that is far from any: it finds them in order.
+func TestBundle(t *testing.T) {
+	h, levels := loneBoson(t, 12, 0.7)
+	p, err := newProblem(h, ladder.Sector{"N": 1}, Options{Complex: true})
+	require.NoError(t, err)
+	p.halt = func() error { return nil }
+	op, err := mpo.Build[complex128](p.strings, mpo.Options{})
+	require.NoError(t, err)
+	starts, err := otherStarts[complex128](p, block.Charge{1}, 3, 1)
+	require.NoError(t, err)
+	q := newBundleSearch(op, starts, p.opt, p.scale, p.halt)
+	require.NoError(t, q.prepare())
+	for range 2 {
+		require.NoError(t, q.stage(16))
+	}
+	for k := range 3 {
+		est := q.estimate(k)
+		require.InDelta(t, levels[k], est.limit, est.err+1e-9, "level %d", k)
+	}
+	for i, a := range q.chains() {
+		for j, b := range q.chains() {
+			o := mps.Overlap(a, b, nil)
+			require.InDelta(t, map[bool]float64{true: 1}[i == j], real(o), 1e-9)
+			require.InDelta(t, 0, imag(o), 1e-9)
+		}
 	}
 }
