@@ -55,6 +55,8 @@
 // Where states lie close together they are found as a bundle: several centre tensors on common isometries, cut by the mean of their density matrices
 // (White 1993). Probes are bundles too, for it is the distance to the levels beyond the bundle that sets its pace.
 //
+// [Neighbours] finds the ground states of several sectors, each from the nearest one found, by single-site steps of the charges.
+//
 // Precision is absolute, in the units of the Hamiltonian; a precision below the rounding error of the energy ends in the verdict Suspect.
 //
 // # Ownership and hooks

@@ -12,6 +12,7 @@ const (
 	unknownFactor  = 1.6  // where the last stage told nothing
 	largestFactor  = 4.0
 	walkFactor     = 2.0 // between the sweeps on the way
+	warmSweeps     = 2   // that open the first stage of a start near the state looked for
 )
 
 // nextBond is the bond dimension at which the gain should come down to the precision, by the power law through the last two stages, within bounds.
@@ -39,8 +40,12 @@ func (s *search[T]) opening(bond int) (sweeps []setting) {
 	set := s.clean(bond)
 	if len(s.stages) == 0 {
 		set.vectors, set.perturbation = vectorsEarly, firstPerturbation
-		for range firstSweeps {
-			set.noise = 0.1 * math.Sqrt(set.perturbation)
+		count, noise := firstSweeps, 0.1
+		if s.warm {
+			count, noise = warmSweeps, 0
+		}
+		for range count {
+			set.noise = noise * math.Sqrt(set.perturbation)
 			sweeps = append(sweeps, set)
 			set.perturbation *= perturbationDecay
 		}

@@ -47,6 +47,7 @@ type search[T dense.Scalar] struct {
 
 	beyond  []*mps.Chain[T] // states of other starts, or left for lower ones
 	limit   float64         // a search that can end only above it ends at once; +Inf: none
+	warm    bool            // the start is near the state looked for
 	assists int             // helps that a slow search got
 	escapes int             // lower states found from other starts
 	mixing  float64         // energy that a mixture with them would gain
