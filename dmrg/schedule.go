@@ -39,6 +39,7 @@ type search[T dense.Scalar] struct {
 
 	journal      journal // what follows, and what the schedule does next, is a function of it
 	nextPause    time.Time
+	fresh        bool    // the last sweep was done, not read in the journal
 	stagesBefore int     // settled when the waypoint to go on from was saved
 	narrow       float64 // largest inverse gap since the bond dimension was last raised
 	stages       []settledStage
@@ -213,7 +214,7 @@ func (s *search[T]) report(bond int) error {
 	last := &s.stages[len(s.stages)-1]
 	report := Stage{Bond: bond, Energy: last.energy(), Discarded: s.sweeps[len(s.sweeps)-1].Discarded}
 	s.reports = append(s.reports, report)
-	if s.opt.OnStage == nil || !s.journal.live() {
+	if s.opt.OnStage == nil || !s.fresh {
 		return nil
 	}
 	var err error
@@ -259,7 +260,7 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	if len(s.sweeps) >= s.opt.Sweeps {
 		return SweepCap, fmt.Sprintf("%d sweeps done; allow more sweeps", len(s.sweeps)), nil
 	}
-	live := s.journal.live()
+	s.fresh = s.journal.live()
 	out, err := learn(&s.journal, kindSweep, set, func() (outcome, error) { return s.engine.sweep(set) })
 	if err != nil {
 		return unfinished, "", err
@@ -274,7 +275,7 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	w := Sweep{Number: len(s.sweeps) + 1, Bond: set.bond, Perturbation: set.perturbation, Energy: out.energy, Discarded: out.discarded,
 		Residual: out.residual, LargestBond: out.largest, Products: out.products, Flops: out.flops, Seconds: out.seconds}
 	s.sweeps = append(s.sweeps, w)
-	if live && s.opt.OnSweep != nil {
+	if s.fresh && s.opt.OnSweep != nil {
 		s.opt.OnSweep(w)
 	}
 	return unfinished, "", nil

@@ -89,6 +89,8 @@ func interruptedModels(t *testing.T) map[string]func(Options) (*Result, error) {
 		"memory cap":   ground(heisenberg(t, 20), ladder.Sector{"Sz": 0}, Options{Precision: 1e-9, Memory: 1 << 18}),
 		"schedule": ground(heisenberg(t, 12), ladder.Sector{"Sz": 0}, Options{Schedule: []Pass{{Bond: 8, Perturbation: 1e-3}, {Bond: 8}, {Bond: 12, Update: Expanding}, {Bond: 12, Update: OneSite}, {Bond: 16},
 			{Bond: 16}}}),
+		"one site": ground(heisenberg(t, 12), ladder.Sector{"Sz": 0}, Options{Schedule: []Pass{{Bond: 8, Perturbation: 1e-3}, {Bond: 8, Update: Expanding},
+			{Bond: 16, Update: Expanding}, {Bond: 16, Update: OneSite}}}),
 	}
 }
 
@@ -128,7 +130,8 @@ func TestWaypointsLeadToTheSameBits(t *testing.T) {
 				}
 			}
 			// The end of a search is a waypoint too.
-			r, err := ground(Options{From: saved(t, whole.Waypoint)})
+			r, err := ground(Options{From: saved(t, whole.Waypoint), OnSweep: func(Sweep) { t.Error("a sweep is told again") },
+				OnStage: func(Stage) { t.Error("a stage is told again") }})
 			require.NoError(t, err)
 			requireSameBits(t, whole, r, "from the end")
 		})
