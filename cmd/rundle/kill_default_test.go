@@ -4,5 +4,5 @@ package main
 
 const (
 	killCount = 5
-	killRungs = 8
+	killRungs = 12
 )

@@ -139,9 +139,12 @@ func (l *life) finish(undisturbed []runfolder.State) {
 	require.Equal(l.t, undisturbed, states(l.t, l.run), "an interrupted run ends with the same bits")
 	log, err := runfolder.ReadLog(l.run)
 	require.NoError(l.t, err)
-	require.Len(l.t, log, undisturbed[0].Sweeps)
+	whole, err := runfolder.ReadLog(filepath.Join(filepath.Dir(l.run), "whole.run"))
+	require.NoError(l.t, err)
+	require.Len(l.t, log, len(whole))
 	for i, line := range log {
-		require.Equal(l.t, i+1, line.Sweep)
+		require.Equal(l.t, whole[i].Sweep, line.Sweep)
+		require.Equal(l.t, whole[i].Energy, line.Energy)
 	}
 	require.NoDirExists(l.t, filepath.Join(l.run, runfolder.CheckpointName))
 }
