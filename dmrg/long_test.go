@@ -28,3 +28,7 @@ func TestTooManyTotals(t *testing.T) {
 }
 
 func TestLevelsOfMoreRandomLadders(t *testing.T) { testLevelsOfRandomLadders(t, 24) }
+
+func TestLargerTrapsFromMoreStarts(t *testing.T) { testLargerTraps(t, 12) }
+
+func TestTrapsFromAllStarts(t *testing.T) { testTraps(t, 3) }

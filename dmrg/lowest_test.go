@@ -44,7 +44,7 @@ func TestLevelsOfFreeFermions(t *testing.T) {
 		boundary ladder.Boundary
 		k        int
 	}{
-		{"chain", 14, 7, ladder.Open, 4},
+		{"chain", 12, 6, ladder.Open, 4},
 		{"ring with open shells", 12, 4, ladder.Periodic, 4},
 		{"whole small sector", 4, 2, ladder.Open, 6},
 		{"more than the sector holds", 4, 1, ladder.Open, 9},
@@ -100,7 +100,7 @@ func requireLevels(t testing.TB, s *Spectrum, want []float64, k int) {
 }
 
 // TestLevelsOfRandomLadders diagonalizes ladders of random couplings.
-func TestLevelsOfRandomLadders(t *testing.T) { testLevelsOfRandomLadders(t, 3) }
+func TestLevelsOfRandomLadders(t *testing.T) { testLevelsOfRandomLadders(t, 2) }
 
 func testLevelsOfRandomLadders(t *testing.T, cases int) {
 	rng := rand.New(rand.NewPCG(71, 72))
