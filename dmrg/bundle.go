@@ -35,11 +35,12 @@ func newBundle[T dense.Scalar](op *mpo.Operator[T], states []*mps.Chain[T], opt 
 			psi = c
 		}
 	}
+	var ws block.Workspace[T]
 	for i := psi.Len() - 1; i > 1; i-- {
-		l, q := block.LQ(psi.Sites[i], 1)
+		l, q, _ := block.LQ(psi.Sites[i], 1, &ws, nil) // without a stop it does not fail
 		psi.Sites[i], psi.Sites[i-1] = q, block.Contract(psi.Sites[i-1], l, []int{2}, []int{0})
 	}
-	l, q := block.LQ(psi.Sites[1], 1)
+	l, q, _ := block.LQ(psi.Sites[1], 1, &ws, nil)
 	psi.Sites[1] = q
 	for k, c := range b.centers {
 		b.centers[k] = block.Contract(c, l, []int{2}, []int{0})
@@ -248,9 +249,10 @@ func hermitian[T dense.Scalar](n int, a []T) []T {
 
 // cut splits the states by the mean of their density matrices, perturbed where the setting says so.
 func (b *bundle[T]) cut(h *mpo.Projected[T], thetas []*block.Tensor[T], right bool, s setting) (iso *block.Tensor[T], centers []*block.Tensor[T], discarded float64, err error) {
+	b.cutting.reset()
 	each := make([][]side[T], len(thetas))
 	for k, theta := range thetas {
-		each[k] = densities(theta, right)
+		each[k] = b.densities(theta, right)
 	}
 	sides := slices.Clone(each[0])
 	for _, other := range each[1:] {
@@ -282,7 +284,7 @@ func (b *bundle[T]) cut(h *mpo.Projected[T], thetas []*block.Tensor[T], right bo
 			}
 		}
 		var center *block.Tensor[T]
-		iso, center = assemble(theta, sides, right)
+		iso, center = b.assemble(theta, sides, right)
 		if kept := center.Norm(); kept > 0 {
 			discarded += max(0, 1-kept*kept) / float64(len(thetas))
 			center.Scale(dense.FromFloat[T](1 / kept))

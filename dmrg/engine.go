@@ -25,7 +25,10 @@ type engine[T dense.Scalar] struct {
 	envs     *environments[T]
 	memory   int64            // cap on the bytes held; 0: none
 	lower    []*lowerState[T] // states to stay orthogonal to
-	scratch  block.Scratch[T] // of their overlaps
+	scratch  block.Scratch[T] // of their overlaps and of contractions
+	factors  block.Workspace[T]
+	cutting  cutting[T]
+	lent     [2][]T
 	pool     *task.Pool
 	seed     uint64
 	pcg      *rand.PCG // seeded anew for each update
@@ -262,18 +265,21 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 	if err != nil {
 		return 0, 0, 0, e.at(i, err)
 	}
-	theta := block.Contract(e.psi.Sites[i], e.psi.Sites[i+1], []int{2}, []int{0})
+	a, b := e.psi.Sites[i], e.psi.Sites[i+1]
+	p := block.PlanContract(a.Structure, b.Structure, []int{2}, []int{0})
+	theta := e.lend(0, p.Out)
+	block.RunContract(p, theta.Data, a.Data, b.Data, &e.scratch, e.pool)
 	h := e.plan.Project(i, 2, left, beyond, theta.Structure)
 	defer h.Release()
 	if s.noise > 0 {
 		e.shake(theta, s.noise)
 	}
-	before := theta.Clone()
+	before := e.lend(1, p.Out)
+	copy(before.Data, theta.Data)
 	if energy, err = e.lowest(h, theta, s); err != nil {
 		return 0, 0, 0, e.at(i, err)
 	}
 	change = distance(before, theta)
-	var a, b *block.Tensor[T]
 	if s.perturbation > 0 {
 		a, b, discarded, err = e.splitPerturbed(h, theta, right, s)
 	} else {
@@ -283,6 +289,14 @@ func (e *engine[T]) update(i int, right bool, s setting) (energy, discarded, cha
 		return 0, 0, 0, e.at(i, err)
 	}
 	return energy, discarded, change, e.move(i, right, a, b)
+}
+
+// lend returns tensor k of the two that an update works on, its elements arbitrary; they are lent again for the next update.
+func (e *engine[T]) lend(k int, s *block.Structure) *block.Tensor[T] {
+	if cap(e.lent[k]) < s.Size {
+		e.lent[k] = make([]T, s.Size)
+	}
+	return &block.Tensor[T]{Structure: s, Data: e.lent[k][:s.Size]}
 }
 
 // at names the bond of a failure.
@@ -399,7 +413,7 @@ func (e *engine[T]) randomize(t *block.Tensor[T]) {
 
 // split cuts theta by singular values; the centre goes to the right or the left tensor, normalized.
 func (e *engine[T]) split(theta *block.Tensor[T], right bool, s setting) (a, b *block.Tensor[T], discarded float64, err error) {
-	u, spec, v, err := block.SVD(theta, 2, block.Cut{Bond: s.bond, Weight: s.weight}, e.brief)
+	u, spec, v, err := block.SVD(theta, 2, block.Cut{Bond: s.bond, Weight: s.weight}, &e.factors, e.brief)
 	if err != nil {
 		return nil, nil, 0, err
 	}

@@ -115,7 +115,7 @@ func testSplitPerturbed[T dense.Scalar](t *testing.T, h *ladder.Hamiltonian, sec
 				joined := block.Contract(a, b, []int{2}, []int{0})
 				require.InDelta(t, 1-discarded, dense.Abs(block.Dot(joined, theta))*dense.Abs(block.Dot(joined, theta)), 1e-11)
 				if perturbation < 1e-10 && (bond == 1 || bond == 1000) { // in between, starved charges take seats
-					_, s, _, err := block.SVD(theta, 2, block.Cut{Bond: bond}, nil)
+					_, s, _, err := block.SVD(theta, 2, block.Cut{Bond: bond}, nil, nil)
 					require.NoError(t, err)
 					require.InDelta(t, s.Discarded, discarded, 1e-9)
 				}

@@ -24,7 +24,10 @@ func (e *engine[T]) expand(w *oneWindow[T], s setting) error {
 	if room <= 0 {
 		return nil
 	}
-	kept := w.kept()
+	kept, err := e.kept(w)
+	if err != nil {
+		return err
+	}
 	probe := e.probeOf(w, kept, room)
 	if probe == nil {
 		return nil
@@ -47,14 +50,14 @@ func (w *oneWindow[T]) mid() int {
 
 func (w *oneWindow[T]) far() int { return 2 - w.mid() }
 
-// kept is an isometry onto the states that the centre's side holds.
-func (w *oneWindow[T]) kept() (q *block.Tensor[T]) {
+// kept is an isometry onto the states that the centre's side of the window holds.
+func (e *engine[T]) kept(w *oneWindow[T]) (q *block.Tensor[T], err error) {
 	if w.toRight {
-		q, _ = block.QR(w.center, 2)
+		q, _, err = block.QR(w.center, 2, &e.factors, e.brief)
 	} else {
-		_, q = block.LQ(w.center, 1)
+		_, q, err = block.LQ(w.center, 1, &e.factors, e.brief)
 	}
-	return q
+	return q, err
 }
 
 // outside takes the part of t along the isometry q out, twice for the sake of rounding. toRight: q has the bond as its last axis and t its states as its first two; else the bond is the
@@ -156,21 +159,21 @@ func (e *engine[T]) reached(w *oneWindow[T], probe *block.Tensor[T], room int) (
 // strongest finds the leading singular vectors of the image, and rids them of what rounding left along the next site.
 func (e *engine[T]) strongest(w *oneWindow[T], image *block.Tensor[T], cut block.Cut) (*block.Tensor[T], error) {
 	if w.toRight {
-		_, _, v, err := block.SVD(image, 1, cut, e.brief)
+		_, _, v, err := block.SVD(image, 1, cut, &e.factors, e.brief)
 		if err != nil {
 			return nil, err
 		}
 		e.outside(v, w.next, false)
-		_, v = block.LQ(v, 1)
-		return v, nil
+		_, v, err = block.LQ(v, 1, &e.factors, e.brief)
+		return v, err
 	}
-	u, _, _, err := block.SVD(image, 2, cut, e.brief)
+	u, _, _, err := block.SVD(image, 2, cut, &e.factors, e.brief)
 	if err != nil {
 		return nil, err
 	}
 	e.outside(u, w.next, true)
-	u, _ = block.QR(u, 2)
-	return u, nil
+	u, _, err = block.QR(u, 2, &e.factors, e.brief)
+	return u, err
 }
 
 // join appends the fresh states to the bond: those of the next site after its own, zeros to the centre.

@@ -60,7 +60,8 @@ func (e *engine[T]) hand(w *oneWindow[T], theta *block.Tensor[T], s setting) (a,
 	switch {
 	case s.update == Expanding:
 		var spec block.Spectrum
-		if u, spec, v, err = block.SVD(theta, rows, block.Cut{Bond: s.bond, Weight: s.weight}, e.brief); err != nil {
+		u, spec, v, err = block.SVD(theta, rows, block.Cut{Bond: s.bond, Weight: s.weight}, &e.factors, e.brief)
+		if err != nil {
 			return nil, nil, 0, err
 		}
 		discarded = spec.Discarded
@@ -70,9 +71,12 @@ func (e *engine[T]) hand(w *oneWindow[T], theta *block.Tensor[T], s setting) (a,
 			block.ScaleBond(u, 1, spec.Values)
 		}
 	case w.toRight:
-		u, v = block.QR(theta, rows)
+		u, v, err = block.QR(theta, rows, &e.factors, e.brief)
 	default:
-		u, v = block.LQ(theta, rows)
+		u, v, err = block.LQ(theta, rows, &e.factors, e.brief)
+	}
+	if err != nil {
+		return nil, nil, 0, err
 	}
 	if w.toRight {
 		a, b = u, e.contract(v, w.next, []int{1}, []int{0})

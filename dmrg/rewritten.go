@@ -180,7 +180,10 @@ func (w *mergedWay) state(c *mps.Chain[float64], pool *task.Pool) (*mps.Chain[co
 	var sites []*block.Tensor[complex128]
 	for k, t := range from.Sites { // t is the centre: what is to its right is an isometry from the right
 		if k > 0 {
-			q, r := block.QR(sites[len(sites)-1], 2)
+			q, r, err := block.QR(sites[len(sites)-1], 2, nil, pool)
+			if err != nil {
+				return nil, err
+			}
 			sites[len(sites)-1] = q
 			t = block.Contract(r, t, []int{1}, []int{0})
 		}
@@ -213,7 +216,7 @@ func (w *mergedWay) split(k int, t *block.Tensor[complex128], pool *task.Pool) (
 	if len(axes) == 1 {
 		return []*block.Tensor[complex128]{block.Permute(t, 0, 2, 1)}, nil
 	}
-	u, values, v, err := block.SVD(block.Permute(t, 0, 2, 3, 1), 2, block.Cut{Weight: wayBack}, pool)
+	u, values, v, err := block.SVD(block.Permute(t, 0, 2, 3, 1), 2, block.Cut{Weight: wayBack}, nil, pool)
 	if err != nil {
 		return nil, err
 	}

@@ -51,8 +51,12 @@ func TwoSiteVarianceFrom[T dense.Scalar](psi *mps.Chain[T], plan *Planner[T], ri
 	if err != nil {
 		return 0, 0, err
 	}
+	var factors block.Workspace[T]
 	for i := range n {
-		q, c := block.QR(centre, 2)
+		q, c, err := block.QR(centre, 2, &factors, pool)
+		if err != nil {
+			return 0, 0, err
+		}
 		y, count := plan.applied(i, left, here, centre, ws, pool)
 		flops += count
 		leave(y, q)

@@ -27,12 +27,13 @@ func (c *Chain[T]) MoveCenter(to int, pool *task.Pool) {
 		c.Canonicalize(to, pool)
 		return
 	}
+	var ws block.Workspace[T]
 	for c.Center < to {
-		c.stepRight(c.Center, pool)
+		c.stepRight(c.Center, &ws, pool)
 		c.Center++
 	}
 	for c.Center > to {
-		c.stepLeft(c.Center, pool)
+		c.stepLeft(c.Center, &ws, pool)
 		c.Center--
 	}
 }
@@ -46,12 +47,13 @@ func (c *Chain[T]) mustSite(what string, i int) {
 // gather canonicalizes a chain of unknown centre, up to a factor 2^exponent that is left out: tensors far from norm one
 // could overflow on the way to a result that does not.
 func (c *Chain[T]) gather(center int, pool *task.Pool) (exponent int) {
+	var ws block.Workspace[T]
 	for i := 0; i < center; i++ {
-		c.stepRight(i, pool)
+		c.stepRight(i, &ws, pool)
 		exponent += balance(c.Sites[i+1])
 	}
 	for i := c.Len() - 1; i > center; i-- {
-		c.stepLeft(i, pool)
+		c.stepLeft(i, &ws, pool)
 		exponent += balance(c.Sites[i-1])
 	}
 	c.Center = center
@@ -59,15 +61,28 @@ func (c *Chain[T]) gather(center int, pool *task.Pool) (exponent int) {
 }
 
 // stepRight makes site i an isometry from the left and passes the rest on.
-func (c *Chain[T]) stepRight(i int, pool *task.Pool) {
-	q, r := block.QR(c.Sites[i], 2)
+func (c *Chain[T]) stepRight(i int, ws *block.Workspace[T], pool *task.Pool) {
+	q, r := qr(c.Sites[i], ws, pool)
 	c.Sites[i], c.Sites[i+1] = q, multiply(r, c.Sites[i+1], []int{1}, []int{0}, nil, pool)
 }
 
 // stepLeft makes site i an isometry from the right and passes the rest on.
-func (c *Chain[T]) stepLeft(i int, pool *task.Pool) {
-	l, q := block.LQ(c.Sites[i], 1)
+func (c *Chain[T]) stepLeft(i int, ws *block.Workspace[T], pool *task.Pool) {
+	l, q, err := block.LQ(c.Sites[i], 1, ws, pool.Until(nil))
+	if err != nil {
+		panic(err) // as in qr
+	}
 	c.Sites[i-1], c.Sites[i] = multiply(c.Sites[i-1], l, []int{2}, []int{0}, nil, pool), q
+}
+
+// qr factors a site with its right bond on the right. What moves a centre returns no error: it does not ask the stop of the pool, the only
+// reason to fail.
+func qr[T dense.Scalar](t *block.Tensor[T], ws *block.Workspace[T], pool *task.Pool) (q, r *block.Tensor[T]) {
+	q, r, err := block.QR(t, 2, ws, pool.Until(nil))
+	if err != nil {
+		panic(err)
+	}
+	return q, r
 }
 
 // balance divides t by a power of two, without rounding, so that its norm lies in [1/2, 1), and returns the exponent. Zero and what is not
@@ -103,8 +118,9 @@ func (c *Chain[T]) Norm() float64 {
 		return c.Sites[c.Center].Norm()
 	}
 	t, exponent := c.Sites[0], 0
+	var ws block.Workspace[T]
 	for i := 1; i < c.Len(); i++ {
-		_, r := block.QR(t, 2)
+		_, r := qr(t, &ws, nil)
 		t = multiply(r, c.Sites[i], []int{1}, []int{0}, nil, nil)
 		exponent += balance(t)
 	}

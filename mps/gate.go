@@ -16,7 +16,7 @@ func (c *Chain[T]) ApplyPair(i int, gate *block.Tensor[T], cut block.Cut, pool *
 	c.MoveCenter(i, pool)
 	theta := multiply(c.Sites[i], c.Sites[i+1], []int{2}, []int{0}, nil, pool)
 	theta = block.Permute(multiply(gate, theta, []int{2, 3}, []int{1, 2}, nil, pool), 2, 0, 1, 3)
-	u, s, v, err := block.SVD(theta, 2, cut, pool)
+	u, s, v, err := block.SVD(theta, 2, cut, nil, pool)
 	if err != nil {
 		return 0, fmt.Errorf("mps: cut %d: %w", i, err)
 	}

@@ -16,8 +16,8 @@ func (c *Chain[T]) Schmidt(b int, pool *task.Pool) (block.Spectrum, error) {
 		panic(fmt.Sprintf("mps: Schmidt values of cut %d of %v", b, c))
 	}
 	v, exponent := c.canonicalView(b, pool)
-	_, r := block.QR(v.Sites[b], 2)
-	return spectrum(r, b, exponent, pool)
+	_, r := qr(v.Sites[b], nil, pool)
+	return spectrum(r, b, exponent, nil, pool)
 }
 
 // Spectra returns the Schmidt values of all Len()-1 cuts in one pass; see Schmidt.
@@ -25,10 +25,11 @@ func (c *Chain[T]) Spectra(pool *task.Pool) ([]block.Spectrum, error) {
 	v, exponent := c.canonicalView(0, pool)
 	all := make([]block.Spectrum, c.Len()-1)
 	t := v.Sites[0]
+	var ws block.Workspace[T]
 	for b := range all {
-		_, r := block.QR(t, 2)
+		_, r := qr(t, &ws, pool)
 		var err error
-		if all[b], err = spectrum(r, b, exponent, pool); err != nil {
+		if all[b], err = spectrum(r, b, exponent, &ws, pool); err != nil {
 			return nil, err
 		}
 		t = multiply(r, v.Sites[b+1], []int{1}, []int{0}, nil, pool)
@@ -47,8 +48,8 @@ func (c *Chain[T]) canonicalView(center int, pool *task.Pool) (v *Chain[T], expo
 }
 
 // spectrum decomposes the factor r (bond In, bond Out) that stands at cut b.
-func spectrum[T dense.Scalar](r *block.Tensor[T], b, exponent int, pool *task.Pool) (block.Spectrum, error) {
-	_, s, _, err := block.SVD(r, 1, block.Cut{}, pool)
+func spectrum[T dense.Scalar](r *block.Tensor[T], b, exponent int, ws *block.Workspace[T], pool *task.Pool) (block.Spectrum, error) {
+	_, s, _, err := block.SVD(r, 1, block.Cut{}, ws, pool)
 	if err != nil {
 		return block.Spectrum{}, fmt.Errorf("mps: cut %d: %w", b, err)
 	}

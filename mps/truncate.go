@@ -17,11 +17,12 @@ import (
 func (c *Chain[T]) Truncate(cut block.Cut, pool *task.Pool) (discarded float64, err error) {
 	last := c.Len() - 1
 	v, exponent := c.canonicalView(last, pool)
+	var ws block.Workspace[T]
 	for i := last; i > 0; i-- {
 		here := cut
 		// What is left of the weight is shared evenly among the bonds that are left.
 		here.Weight = max(0, cut.Weight-discarded) / float64(i)
-		u, s, right, err := block.SVD(v.Sites[i], 1, here, pool)
+		u, s, right, err := block.SVD(v.Sites[i], 1, here, &ws, pool)
 		if err != nil {
 			return 0, fmt.Errorf("mps: cut %d: %w", i-1, err)
 		}

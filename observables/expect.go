@@ -83,6 +83,7 @@ func (f *forest[T]) walk(ctx context.Context, chain *mps.Chain[T], out []complex
 	}
 	unit := complex(1/(norm*norm), 0)
 	center := c.Sites[0]
+	var factors block.Workspace[T]
 	for site := range c.Sites {
 		values, err := w.step(site, c.Sites[site], center)
 		if err != nil {
@@ -92,7 +93,9 @@ func (f *forest[T]) walk(ctx context.Context, chain *mps.Chain[T], out []complex
 			out[v.result] += v.value * unit
 		}
 		if site+1 < c.Len() {
-			center = moved(center, c.Sites[site+1], w.pool)
+			if center, err = moved(center, c.Sites[site+1], &factors, w.pool); err != nil {
+				return err
+			}
 		}
 	}
 	return nil
@@ -106,10 +109,13 @@ func centred[T dense.Scalar](c *mps.Chain[T], pool *task.Pool) *mps.Chain[T] {
 }
 
 // moved is the centre of the next site.
-func moved[T dense.Scalar](center, next *block.Tensor[T], pool *task.Pool) *block.Tensor[T] {
-	_, r := block.QR(center, 2)
+func moved[T dense.Scalar](center, next *block.Tensor[T], ws *block.Workspace[T], pool *task.Pool) (*block.Tensor[T], error) {
+	_, r, err := block.QR(center, 2, ws, pool)
+	if err != nil {
+		return nil, err
+	}
 	p := block.PlanContract(r.Structure, next.Structure, []int{1}, []int{0})
 	out := block.New[T](p.Out)
 	block.RunContract(p, out.Data, r.Data, next.Data, nil, pool)
-	return out
+	return out, nil
 }

@@ -48,13 +48,17 @@ func occupations[T dense.Scalar](ctx context.Context, chain *mps.Chain[T]) ([][]
 		return nil, errZero
 	}
 	out := make([][]float64, c.Len())
+	var factors block.Workspace[T]
 	for site := range out {
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
 		out[site] = weights(center)
 		if site+1 < c.Len() {
-			center = moved(center, c.Sites[site+1], pool)
+			var err error
+			if center, err = moved(center, c.Sites[site+1], &factors, pool); err != nil {
+				return nil, err
+			}
 		}
 	}
 	return out, nil

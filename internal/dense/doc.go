@@ -15,7 +15,7 @@
 // that does not converge, is a *NumericalError where a result could not be trusted (SVD, Eigen); products and QR hand such numbers
 // on instead. Matrices of extreme magnitude (1e160, 1e-160) are scaled by powers of two inside.
 //
-// Stopping. A factorization asks the Stop of its workspace or object, a question instead of a flag so that nobody has to watch the clock
+// Stopping. A factorization asks the Stop of its workspace, a question instead of a flag so that nobody has to watch the clock
 // or a context elsewhere, between panels, merges and blocks of reflections: every 50 ms or more often at n = 2000, every 100 ms if complex
 // (BenchmarkStop). It then ends in ErrStopped.
 //

@@ -13,10 +13,9 @@ const eigenRoutine = "Hermitian eigenvalues"
 // The way: blocked Householder reduction to a real tridiagonal, also for complex A (Dongarra, Sorensen, Hammarling 1989); divide and
 // conquer on that; the reflections are applied only to the vectors that are asked for.
 type Hermitian[T Scalar] struct {
-	Stop func() bool // as that of a Workspace
+	Work *Workspace[T] // as that of an SVD
 
 	hermitian[T]
-	w Workspace[T]
 }
 
 // hermitian is a Hermitian whose scratch memory is somebody else's.
@@ -30,8 +29,8 @@ type hermitian[T Scalar] struct {
 // Factor decomposes the n×n matrix whose upper triangle a holds (of the diagonal the real part counts). a is not modified. The error
 // is a *NumericalError, A holds NaN or Inf, or the iteration does not converge (never seen), or ErrStopped.
 func (f *Hermitian[T]) Factor(n int, a []T, lda int) error {
-	f.w.Stop = f.Stop
-	return f.factor(n, a, lda, &f.w)
+	f.Work = orNew(f.Work)
+	return f.factor(n, a, lda, f.Work)
 }
 
 // Values returns the eigenvalues, ascending. The slice belongs to f and is valid until the next Factor.
@@ -44,8 +43,8 @@ func (f *Hermitian[T]) Largest(keep int, v []T, ldv int) error {
 		panic(fmt.Sprintf("dense: %d eigenvectors asked of a %d×%d matrix", keep, f.n, f.n))
 	}
 	matrix("V", f.n, keep, ldv, len(v))
-	f.w.Stop = f.Stop
-	return f.vectors(f.n-1, -1, keep, v, ldv, &f.w)
+	f.Work = orNew(f.Work)
+	return f.vectors(f.n-1, -1, keep, v, ldv, f.Work)
 }
 
 // Eigen computes the eigenvalues, ascending, of the n×n Hermitian matrix A and writes the eigenvectors to the columns of v. It reads

@@ -21,18 +21,17 @@ type stoppable[T Scalar] struct {
 func stoppables[T Scalar](m, n int) []stoppable[T] {
 	a, square := random[T](m*n), random[T](m*m)
 	k := min(m, n)
-	var svd SVD[T]
-	var h Hermitian[T]
 	var w Workspace[T]
+	svd, h := SVD[T]{Work: &w}, Hermitian[T]{Work: &w}
 	two := func(x, y []T, err error) ([]T, error) {
-		if w.elems.used != 0 || w.reals.used != 0 || svd.w.elems.used != 0 || h.w.elems.used != 0 {
+		if w.elems.used != 0 || w.reals.used != 0 {
 			return nil, errors.New("scratch memory was not given back")
 		}
 		return append(x, y...), err
 	}
 	return []stoppable[T]{
 		{"SVD", func(stop func() bool) ([]T, error) {
-			svd.Stop = stop
+			w.Stop = stop
 			if err := svd.Factor(m, n, a, n); err != nil {
 				return nil, err
 			}
@@ -40,7 +39,7 @@ func stoppables[T Scalar](m, n int) []stoppable[T] {
 			return two(u, vh, svd.Vectors(k, u, k, vh, n))
 		}},
 		{"Hermitian", func(stop func() bool) ([]T, error) {
-			h.Stop = stop
+			w.Stop = stop
 			if err := h.Factor(m, square, m); err != nil {
 				return nil, err
 			}

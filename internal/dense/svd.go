@@ -15,7 +15,7 @@ const tallRatio = 1.6
 // also for complex A (Dongarra, Sorensen, Hammarling 1989); divide and conquer on B; Q and P are applied only to the vectors that are
 // asked for.
 type SVD[T Scalar] struct {
-	Stop func() bool // as that of a Workspace
+	Work *Workspace[T] // scratch memory, which objects that take turns may share, and its Stop; nil: some of its own
 
 	m, n   int  // A
 	wide   bool // m < n: the fields below are those of A^H
@@ -30,7 +30,6 @@ type SVD[T Scalar] struct {
 	left, right reflectors[T] // Q and P
 	f           []T           // netlib's copy of A
 	u, vh       []T
-	w           Workspace[T]
 }
 
 // Factor decomposes the m×n matrix A, which is not modified. The error is a *NumericalError, A holds NaN or Inf, or the iteration
@@ -50,8 +49,8 @@ func (f *SVD[T]) Factor(m, n int, a []T, lda int) error {
 		return err
 	}
 	s := safeScale(top)
-	f.w.Stop = f.Stop
-	f.direct = useNetlib() && !f.w.stopped() && f.factorNetlib(s, a, lda)
+	f.Work = orNew(f.Work)
+	f.direct = useNetlib() && !f.Work.stopped() && f.factorNetlib(s, a, lda)
 	if !f.direct {
 		if err := f.factorGo(s, a, lda); err != nil {
 			f.m, f.n, f.cols, f.values = 0, 0, 0, f.values[:0]
@@ -75,9 +74,9 @@ func (f *SVD[T]) factorNetlib(s float64, a []T, lda int) bool {
 
 func (f *SVD[T]) factorGo(s float64, a []T, lda int) error {
 	rows, cols := max(f.m, f.n), f.cols
-	defer f.w.release(f.w.mark())
+	defer f.Work.release(f.Work.mark())
 	f.tall = float64(rows) > tallRatio*float64(cols)
-	x := f.w.elems.take(rows * cols)
+	x := f.Work.elems.take(rows * cols)
 	if f.wide != f.tall {
 		adjoint(f.m, f.n, a, lda, x, f.m)
 	} else {
@@ -89,18 +88,18 @@ func (f *SVD[T]) factorGo(s float64, a []T, lda int) error {
 	f.rows = rows
 	if f.tall {
 		// x is the adjoint, cols×rows: its L is the adjoint of R.
-		l := f.w.elems.take(cols * cols)
-		if !f.outer.factor(cols, rows, x, l, cols, &f.w) {
+		l := f.Work.elems.take(cols * cols)
+		if !f.outer.factor(cols, rows, x, l, cols, f.Work) {
 			return ErrStopped
 		}
 		f.rows, x = cols, x[:cols*cols]
 		adjoint(cols, cols, l, cols, x, cols)
 	}
-	d, e := f.w.reals.take(cols), f.w.reals.take(cols)
-	if !bidiagonalize(f.rows, cols, x, d, e, &f.left, &f.right, &f.w) {
+	d, e := f.Work.reals.take(cols), f.Work.reals.take(cols)
+	if !bidiagonalize(f.rows, cols, x, d, e, &f.left, &f.right, f.Work) {
 		return ErrStopped
 	}
-	if !f.b.factor(d, e, f.w.Stop) {
+	if !f.b.factor(d, e, f.Work.Stop) {
 		if f.b.m.halted {
 			return ErrStopped
 		}
@@ -124,7 +123,7 @@ func (f *SVD[T]) Vectors(keep int, u []T, ldu int, vh []T, ldvh int) error {
 	if keep == 0 {
 		return nil
 	}
-	f.w.Stop, f.b.m.stop, f.b.m.halted = f.Stop, f.Stop, false
+	f.b.m.stop, f.b.m.halted = f.Work.Stop, false
 	done := true
 	switch {
 	case f.direct:
@@ -133,8 +132,8 @@ func (f *SVD[T]) Vectors(keep int, u []T, ldu int, vh []T, ldvh int) error {
 	case f.wide:
 		done = f.leftVectors(keep, vh, ldvh) && f.rightVectors(keep, u, ldu, true)
 	default:
-		defer f.w.release(f.w.mark())
-		uh := f.w.elems.take(keep * f.m)
+		defer f.Work.release(f.Work.mark())
+		uh := f.Work.elems.take(keep * f.m)
 		if done = f.leftVectors(keep, uh, f.m); done {
 			adjoint(keep, f.m, uh, f.m, u, ldu)
 			done = f.rightVectors(keep, vh, ldvh, false)
@@ -156,17 +155,17 @@ func (f *SVD[T]) leftVectors(keep int, uh []T, ldu int) bool {
 	for i := range keep {
 		clear(uh[i*ldu+f.cols : i*ldu+rows])
 	}
-	return f.left.applyAdjoint(keep, uh, ldu, &f.w) && (!f.tall || f.outer.applyAdjoint(keep, uh, ldu, &f.w))
+	return f.left.applyAdjoint(keep, uh, ldu, f.Work) && (!f.tall || f.outer.applyAdjoint(keep, uh, ldu, f.Work))
 }
 
 // rightVectors writes the conjugate transposes of the first keep right singular vectors of the tall form of A, or the vectors.
 func (f *SVD[T]) rightVectors(keep int, v []T, ldv int, columns bool) bool {
 	vh, ldvh := v, ldv
 	if columns {
-		defer f.w.release(f.w.mark())
-		vh, ldvh = f.w.elems.take(keep*f.cols), f.cols
+		defer f.Work.release(f.Work.mark())
+		vh, ldvh = f.Work.elems.take(keep*f.cols), f.cols
 	}
-	if !f.widen(keep, false, vh, ldvh) || !f.right.applyAdjoint(keep, vh, ldvh, &f.w) {
+	if !f.widen(keep, false, vh, ldvh) || !f.right.applyAdjoint(keep, vh, ldvh, f.Work) {
 		return false
 	}
 	if columns {
@@ -177,8 +176,8 @@ func (f *SVD[T]) rightVectors(keep int, v []T, ldv int, columns bool) bool {
 
 // widen writes the first keep singular vectors of B to the rows of x. It reports false if it was stopped.
 func (f *SVD[T]) widen(keep int, left bool, x []T, ldx int) bool {
-	defer f.w.release(f.w.mark())
-	y := f.w.reals.take(keep * f.cols)
+	defer f.Work.release(f.Work.mark())
+	y := f.Work.reals.take(keep * f.cols)
 	if !f.b.vectors(keep, left, y) {
 		return false
 	}

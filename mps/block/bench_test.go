@@ -100,7 +100,7 @@ func BenchmarkSVD(b *testing.B) {
 		b.Run(fmt.Sprintf("bond=%d", bond), func(b *testing.B) {
 			x := typicalTheta[float64](b, bond)
 			for b.Loop() {
-				if _, _, _, err := SVD(x, 2, Cut{Bond: bond}, nil); err != nil {
+				if _, _, _, err := SVD(x, 2, Cut{Bond: bond}, nil, nil); err != nil {
 					b.Fatal(err)
 				}
 			}

@@ -42,8 +42,9 @@
 //
 // New structures and tensors belong to the caller. Axes and structures are shared freely and never written after they are
 // built. RunContract and RunPermute write only into the slab they are given, and take what they need besides from a Scratch, which
-// recycles slabs by size; with one that has seen the plan before they allocate nothing on a single thread. The zero value of Group is the trivial group, of
-// Charge the zero charge, of Cut the cut that drops nothing but zeros, of Scratch an empty store. A nil pool means one thread. Tensor, Structure and
+// recycles slabs by size; with one that has seen the plan before they allocate nothing on a single thread. Factorizations keep their memory in
+// a Workspace and allocate their results. The zero value of Group is the trivial group, of
+// Charge the zero charge, of Cut the cut that drops nothing but zeros, of Scratch and Workspace an empty store. A nil pool means one thread. Tensor, Structure and
 // the plans have no useful zero value.
 //
 // # Panics and errors

@@ -23,7 +23,7 @@ func Example() {
 	singlet.Block(0)[0] = -math.Sqrt(0.5) // down, up: sectors are sorted by charge
 	singlet.Block(1)[0] = math.Sqrt(0.5)
 
-	u, spectrum, v, err := block.SVD(singlet, 1, block.Cut{Bond: 100}, nil)
+	u, spectrum, v, err := block.SVD(singlet, 1, block.Cut{Bond: 100}, nil, nil)
 	if err != nil {
 		fmt.Println(err)
 		return

@@ -5,6 +5,7 @@ import (
 	"slices"
 
 	"rundle/internal/dense"
+	"rundle/internal/task"
 )
 
 // MatrixPlan sees a tensor across a bipartition: one matrix for each charge that crosses the bond. Rows are combinations of the
@@ -94,6 +95,17 @@ func product(dims []int) int {
 // Find returns the index of the sector of bond charge q.
 func (p *MatrixPlan) Find(q Charge) (i int, ok bool) {
 	return slices.BinarySearchFunc(p.Sectors, q, func(m MatrixSector, q Charge) int { return m.Charge.Compare(q) })
+}
+
+// byWork returns the sectors, most work first, and the work of all: a sector's is cost*rows*columns*min(rows, columns).
+func (p *MatrixPlan) byWork(cost float64) (order []int, total float64) {
+	work := make([]float64, len(p.Sectors))
+	for i := range p.Sectors {
+		m := &p.Sectors[i]
+		work[i] = cost * float64(m.Rows) * float64(m.Cols) * float64(min(m.Rows, m.Cols))
+		total += work[i]
+	}
+	return task.ByWork(work), total
 }
 
 // Gather writes the matrix of a sector of the slab src to dst, row-major with leading dimension ld >= Cols.

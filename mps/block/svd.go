@@ -37,10 +37,10 @@ type Spectrum struct {
 // SVD factors t across the bond after its first left axes, t = u diag(s) v up to what cut drops. u has the left axes and the bond (Out)
 // and total zero; v has the bond (In) and the other axes and the total of t; both are isometries on the bond. The values are not
 // normalized anew. Charges of which nothing is kept leave the bond. A zero tensor gives ErrZero, a failed block an *SVDError.
-// Where the pool carries a stop (task.Pool.Until) large blocks ask it every few milliseconds; once it says true the error is
+// ws may be nil. Where the pool carries a stop (task.Pool.Until) large blocks ask it every few milliseconds; once it says true the error is
 // dense.ErrStopped.
-func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, pool *task.Pool) (u *Tensor[T], s Spectrum, v *Tensor[T], err error) {
-	d := decompose(t, left, pool)
+func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, ws *Workspace[T], pool *task.Pool) (u *Tensor[T], s Spectrum, v *Tensor[T], err error) {
+	d := decompose(t, left, ws, pool)
 	if err := d.failure(); err != nil {
 		return nil, Spectrum{}, nil, err
 	}
@@ -71,7 +71,7 @@ func SVD[T dense.Scalar](t *Tensor[T], left int, cut Cut, pool *task.Pool) (u *T
 // a quarter of n to full accuracy, which the spectra of ground states are not, and costs a third if it is full.
 type decomposition[T dense.Scalar] struct {
 	plan   *MatrixPlan
-	svd    []dense.SVD[T]
+	ws     *Workspace[T] // its svd[j] is that of sector order[j]
 	values [][]float64
 	errs   []error
 	order  []int // sectors, most work first
@@ -81,28 +81,23 @@ type decomposition[T dense.Scalar] struct {
 // svdCost is the work of a decomposition in units of rows*cols*min(rows, cols), an estimate for the hand-out to threads.
 const svdCost = 16
 
-func decompose[T dense.Scalar](t *Tensor[T], left int, pool *task.Pool) *decomposition[T] {
+func decompose[T dense.Scalar](t *Tensor[T], left int, ws *Workspace[T], pool *task.Pool) *decomposition[T] {
 	p := PlanMatrix(t.Structure, left)
 	n := len(p.Sectors)
-	d := &decomposition[T]{plan: p, svd: make([]dense.SVD[T], n), values: make([][]float64, n), errs: make([]error, n)}
-	work := make([]float64, n)
-	for i := range p.Sectors {
-		m := &p.Sectors[i]
-		work[i] = svdCost * float64(m.Rows) * float64(m.Cols) * float64(min(m.Rows, m.Cols))
-		d.flops += work[i]
+	d := &decomposition[T]{plan: p, ws: ws.prepare(pool), values: make([][]float64, n), errs: make([]error, n)}
+	d.order, d.flops = p.byWork(svdCost)
+	for len(d.ws.svd) < n {
+		d.ws.svd = append(d.ws.svd, dense.SVD[T]{})
 	}
-	d.order = task.ByWork(work)
-	ws := make([]Scratch[T], pool.Threads())
 	pool.Do(n, d.flops, func(worker, j int) {
 		i := d.order[j]
-		m := &p.Sectors[i]
-		a := ws[worker].Take(m.Rows * m.Cols)
+		m, w, f := &p.Sectors[i], &d.ws.workers[worker], &d.ws.svd[j]
+		a := w.take(m.Rows * m.Cols)
 		Gather(p, i, a, m.Cols, t.Data)
-		d.svd[i].Stop = pool.Stop()
-		if d.errs[i] = d.svd[i].Factor(m.Rows, m.Cols, a, m.Cols); d.errs[i] == nil {
-			d.values[i] = d.svd[i].Values()
+		f.Work = &w.dense
+		if d.errs[i] = f.Factor(m.Rows, m.Cols, a, m.Cols); d.errs[i] == nil {
+			d.values[i] = f.Values()
 		}
-		ws[worker].Give(a)
 	})
 	return d
 }
@@ -131,18 +126,17 @@ func (d *decomposition[T]) vectors(h halves, keep []int, u, v *Tensor[T], pool *
 			bond++
 		}
 	}
-	ws := make([]Scratch[T], pool.Threads())
 	pool.Do(len(keep), d.flops, func(worker, j int) {
 		i := d.order[j]
-		k, m := keep[i], &d.plan.Sectors[i]
+		k, m, w, f := keep[i], &d.plan.Sectors[i], &d.ws.workers[worker], &d.ws.svd[j]
 		if k == 0 {
 			return
 		}
-		x, y := ws[worker].Take(m.Rows*k), ws[worker].Take(k*m.Cols)
-		d.errs[i] = d.svd[i].Vectors(k, x, k, y, m.Cols)
+		x := w.take((m.Rows + m.Cols) * k)
+		x, y := x[:m.Rows*k], x[m.Rows*k:]
+		f.Work = &w.dense
+		d.errs[i] = f.Vectors(k, x, k, y, m.Cols)
 		Scatter(h.left, at[i], u.Data, x, k)
 		Scatter(h.right, at[i], v.Data, y, m.Cols)
-		ws[worker].Give(x)
-		ws[worker].Give(y)
 	})
 }
