@@ -225,6 +225,8 @@ func (e *engine[T]) step(i int, right bool, s setting, out *outcome) error {
 	if err := e.halt(); err != nil {
 		return err
 	}
+	e.pool.Hold()
+	defer e.pool.Release()
 	e.reseed(i, right)
 	update := e.update
 	// The overlaps with lower states know nothing of an expanded bond.

@@ -18,6 +18,8 @@ type blockList struct {
 	flops   float64
 	one     func() // all of it on one thread
 	two     func() // and on two
+
+	hold, release func() // of the two, as a sweep holds them from list to list
 }
 
 func (l blockList) task() task {
@@ -80,6 +82,7 @@ func newList[T dense.Scalar](routine string, cost float64, count, least, most, s
 	l.flops = cost * plan.Flops()
 	l.one = func() { runner.Run(&plan, c, a, b, one) }
 	l.two = func() { runner.Run(&plan, c, a, b, two) }
+	l.hold, l.release = two.Hold, two.Release
 	return l
 }
 
@@ -89,10 +92,13 @@ func (l blockList) measure(kernels string, seconds float64) row {
 	if err := dense.UseKernels(kernels); err != nil {
 		panic(err)
 	}
+	l.hold()
+	defer l.release()
 	l.two()
 	var times [2][]float64
 	for spent := 0.0; spent < seconds || len(times[0]) < 8; {
 		for i, run := range []func(){l.one, l.two} {
+			run() // the list before: threads are awake, as in a sweep
 			start := time.Now()
 			run()
 			t := time.Since(start).Seconds()
