@@ -131,6 +131,7 @@ func (b *bundle[T]) update(i int, right bool, s setting) (discarded float64, err
 		}
 	}
 	h := b.plan.Project(i, 2, left, beyond, thetas[0].Structure)
+	defer h.Release()
 	if err := b.solve(h, thetas, s); err != nil {
 		return 0, err
 	}

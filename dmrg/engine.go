@@ -337,6 +337,7 @@ func (e *engine[T]) single(s setting) (outcome, error) {
 	}
 	theta := e.psi.Sites[0].Clone()
 	h := e.plan.Project(0, 1, left, right, theta.Structure)
+	defer h.Release()
 	products, flops := e.products, e.flops
 	e.reseed(0, true)
 	e.shake(theta, singleNoise)
@@ -389,6 +390,7 @@ func (e *engine[T]) energy() (float64, error) {
 	}
 	theta := e.psi.Sites[c]
 	h := e.plan.Project(c, 1, left, right, theta.Structure)
+	defer h.Release()
 	out := block.New[T](theta.Structure)
 	h.Apply(out.Data, theta.Data, &e.work, e.pool)
 	norm := theta.Norm()

@@ -17,7 +17,7 @@ type Planner[T dense.Scalar] struct {
 
 	projections []*projection[T] // the last ones, of one site and of two from each site on
 	tasks       int              // of them all
-	spare       block.Scratch[T]
+	spare       [2][]T           // for the mixtures of the left and of the right
 }
 
 // pairEntries bounds the joined entries that a planner keeps: about 50 MB in real arithmetic. Beyond, pairs are joined anew for each plan,

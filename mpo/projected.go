@@ -44,7 +44,7 @@ func (p *Planner[T]) Project(first, count int, left, right *block.Tensor[T], the
 	key := projectionKey{theta, left.Structure, right.Structure, vacant, done}
 	h := &Projected[T]{Theta: theta, left: left, right: right, planner: p, first: first, plan: p.projection(first, w, key)}
 	for i, m := range []*mixtures[T]{h.plan.lefts, h.plan.rights} {
-		h.mixed[i] = p.spare.Take(m.size)
+		h.mixed[i], p.spare[i] = grow(p.spare[i], m.size), nil
 		m.fill(h.mixed[i], []*block.Tensor[T]{left, right}[i].Data)
 	}
 	return h
@@ -56,7 +56,9 @@ func (h *Projected[T]) Sites() (first, count int) { return h.first, len(h.Theta.
 // Release gives the memory of h back to its planner; h must not be used any more. Without it the collector does so.
 func (h *Projected[T]) Release() {
 	for i := range h.mixed {
-		h.planner.spare.Give(h.mixed[i])
+		if cap(h.mixed[i]) > cap(h.planner.spare[i]) {
+			h.planner.spare[i] = h.mixed[i]
+		}
 		h.mixed[i] = nil
 	}
 	h.plan = nil

@@ -87,6 +87,7 @@ func TwoSiteVarianceFrom[T dense.Scalar](psi *mps.Chain[T], plan *Planner[T], ri
 // applied returns the projected operator on x, a tensor of one site or of two from site i on, and the operations of one application.
 func (p *Planner[T]) applied(i int, left, right, x *block.Tensor[T], ws *Workspace[T], pool *task.Pool) (*block.Tensor[T], float64) {
 	h := p.Project(i, len(x.Axes)-2, left, right, x.Structure)
+	defer h.Release()
 	y := block.New[T](x.Structure)
 	h.Apply(y.Data, x.Data, ws, pool)
 	return y, h.Flops()
