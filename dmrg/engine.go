@@ -153,7 +153,7 @@ func (e *engine[T]) growLeft(i int) error {
 		return err
 	}
 	a := e.psi.Sites[i]
-	g := e.plan.Left(i, from.Structure, a.Structure, a.Structure)
+	g := e.plan.LeftIsometry(i, from, a.Structure)
 	to := e.envs.fresh(g.Out)
 	g.Run(to, from, a, a, &e.work, e.pool)
 	e.envs.setLeft(i+1, to)
@@ -168,7 +168,7 @@ func (e *engine[T]) growRight(i int) error {
 		return err
 	}
 	a := e.psi.Sites[i]
-	g := e.plan.Right(i, from.Structure, a.Structure, a.Structure)
+	g := e.plan.RightIsometry(i, from, a.Structure)
 	to := e.envs.fresh(g.Out)
 	g.Run(to, from, a, a, &e.work, e.pool)
 	e.envs.setRight(i-1, to)

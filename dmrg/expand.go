@@ -229,7 +229,7 @@ func (e *engine[T]) regrow(w *oneWindow[T]) error {
 		if err != nil {
 			return err
 		}
-		g := e.plan.Right(w.bond+1, from.Structure, w.next.Structure, w.next.Structure)
+		g := e.plan.RightIsometry(w.bond+1, from, w.next.Structure)
 		w.right = block.New[T](g.Out)
 		g.Run(w.right, from, w.next, w.next, &e.work, e.pool)
 		e.count(g.Flops())
@@ -239,7 +239,7 @@ func (e *engine[T]) regrow(w *oneWindow[T]) error {
 	if err != nil {
 		return err
 	}
-	g := e.plan.Left(w.bond, from.Structure, w.next.Structure, w.next.Structure)
+	g := e.plan.LeftIsometry(w.bond, from, w.next.Structure)
 	w.left = block.New[T](g.Out)
 	g.Run(w.left, from, w.next, w.next, &e.work, e.pool)
 	e.count(g.Flops())

@@ -28,5 +28,12 @@ func TestApplyDoesNotAllocate(t *testing.T) {
 		apply := func() { h.Apply(out.Data, theta.Data, &ws, nil) }
 		apply()
 		require.Zero(t, testing.AllocsPerRun(10, apply), name)
+
+		a := psi.Sites[2]
+		g := NewPlanner(o).RightIsometry(2, right, a.Structure)
+		grown := block.New[complex128](g.Out)
+		step := func() { g.Run(grown, right, a, a, &ws, nil) }
+		step()
+		require.Zero(t, testing.AllocsPerRun(10, step), name)
 	}
 }

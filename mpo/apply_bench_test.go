@@ -178,3 +178,47 @@ func (s *stage[T]) project(b *testing.B, kept bool) {
 		s.planner.Project(s.first, 2, s.left, s.right, s.theta.Structure).Release()
 	}
 }
+
+// BenchmarkGrow reports the rate of the growth of an environment across a canonical site.
+func BenchmarkGrow(b *testing.B) {
+	for _, m := range benchModels() {
+		for _, left := range []bool{true, false} {
+			b.Run(fmt.Sprintf("model=%s/bond=%d/left=%v", m.name, m.bond, left), func(b *testing.B) {
+				switch s := m.stage(b).(type) {
+				case *stage[float64]:
+					s.grow(b, left)
+				case *stage[complex128]:
+					s.grow(b, left)
+				}
+			})
+		}
+	}
+}
+
+func (s *stage[T]) grow(b *testing.B, left bool) {
+	var ws Workspace[T]
+	p, env, i := s.planner, s.left, s.first
+	if !left {
+		env, i = s.right, i+1
+	}
+	axes := []block.Axis{s.bonds[i], p.op.Phys[i], s.bonds[i+1].Reversed()}
+	a := block.Random[T](block.NewStructure(p.op.Group, axes, block.Charge{}), rand.New(rand.NewPCG(1, 2)))
+	plan := func() *Growth[T] {
+		if left {
+			return p.LeftIsometry(i, env, a.Structure)
+		}
+		return p.RightIsometry(i, env, a.Structure)
+	}
+	g := plan()
+	out := block.New[T](g.Out)
+	g.Run(out, env, a, a, &ws, nil)
+	for b.Loop() {
+		plan().Run(out, env, a, a, &ws, nil)
+	}
+	flops := g.Flops()
+	if dense.IsComplex[T]() {
+		flops *= 4
+	}
+	b.ReportMetric(flops/1e6, "Mflop")
+	b.ReportMetric(flops*float64(b.N)/b.Elapsed().Seconds()/1e9, "GF/s")
+}

@@ -86,8 +86,22 @@ func (p *network[T]) closed() int {
 // Workspace holds what plans need while they run. The zero value is ready; it grows and is reused.
 // It is not for concurrent use.
 type Workspace[T dense.Scalar] struct {
-	x, y []T // the two slabs between the passes of a network
-	run  projectionRun[T]
+	x, y   []T   // the two slabs between the passes of a network
+	space  [][]T // of the bands, by worker
+	mixed  []T   // of a growth
+	run    projectionRun[T]
+	growth growthRun[T]
+}
+
+// spaces returns n elements for each thread.
+func (ws *Workspace[T]) spaces(threads, n int) [][]T {
+	for len(ws.space) < threads {
+		ws.space = append(ws.space, nil)
+	}
+	for i := range threads {
+		ws.space[i] = grow(ws.space[i], n)
+	}
+	return ws.space
 }
 
 func grow[T any](s []T, n int) []T {

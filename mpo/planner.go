@@ -16,6 +16,7 @@ type Planner[T dense.Scalar] struct {
 	kept  int          // entries of pairs
 
 	projections []*projection[T] // the last ones, of one site and of two from each site on
+	growths     []*Growth[T]     // the last ones of each site by side, and by whether there is an identity
 	tasks       int              // of them all
 	spare       [2][]T           // for the mixtures of the left and of the right
 }
@@ -28,7 +29,7 @@ const pairEntries = 1 << 20
 func NewPlanner[T dense.Scalar](o *Operator[T]) *Planner[T] {
 	n := o.Len()
 	return &Planner[T]{op: o, sites: make([]*window[T], n), pairs: make([]*window[T], n), begun: make([]*window[T], n), ended: make([]*window[T], n),
-		projections: make([]*projection[T], 2*n)}
+		projections: make([]*projection[T], 2*n), growths: make([]*Growth[T], 4*n)}
 }
 
 // site returns the window of one site.

@@ -85,16 +85,11 @@ func (h *Projected[T]) Apply(dst, src []T, ws *Workspace[T], pool *task.Pool) {
 	r.plan = h.plan
 	r.slabs = [operands][]T{theta: src, leftEnvironment: h.left.Data, leftMixed: h.mixed[0], rightEnvironment: h.right.Data, rightMixed: h.mixed[1]}
 	r.dst = dst
-	for len(r.scratch) < pool.Threads() {
-		r.scratch = append(r.scratch, nil)
-	}
-	for i := range pool.Threads() {
-		r.scratch[i] = grow(r.scratch[i], h.plan.scratch)
-	}
-	h.plan.clearGaps(dst)
+	r.scratch = ws.spaces(pool.Threads(), h.plan.scratch)
+	clearGaps(h.Theta, dst)
 	pool.Do(len(h.plan.chains), h.plan.chainFlops, r.onChain)
 	pool.Do(len(h.plan.bands), h.plan.bandFlops, r.onBand)
-	r.plan, r.slabs, r.dst = nil, [operands][]T{}, nil
+	r.plan, r.slabs, r.dst, r.scratch = nil, [operands][]T{}, nil, nil
 }
 
 // projectionRun carries a running plan to the tasks of the pool. The functions are bound once, so that nothing is allocated.
@@ -130,35 +125,6 @@ func (r *projectionRun[T]) chain(_, i int) {
 }
 
 func (r *projectionRun[T]) band(worker, i int) {
-	b, space := &r.plan.bands[i], r.scratch[worker]
 	slabs := r.slabs
-	slabs[between] = space
-	for j := b.first.from; j < b.first.to; j++ {
-		g := &r.plan.products[j]
-		g.run(slabs[g.fromA], slabs[g.fromB], space)
-	}
-	for j := b.feeds.from; j < b.feeds.to; j++ {
-		f := &r.plan.feeds[j]
-		if f.overwrite {
-			for k := range f.rows {
-				clear(space[f.dst+k*f.ldd:][:f.cols])
-			}
-		}
-		move(&f.moveTask, slabs[f.from], space)
-	}
-	for j := b.last.from; j < b.last.to; j++ {
-		g := &r.plan.products[j]
-		g.run(slabs[g.fromA], slabs[g.fromB], r.dst)
-	}
-	for j := b.moves.from; j < b.moves.to; j++ {
-		move(&r.plan.moves[j], space, r.dst)
-	}
-}
-
-func (g *scaledGemm[T]) run(a, b, c []T) {
-	beta := dense.FromFloat[T](1)
-	if g.overwrite {
-		beta = dense.FromFloat[T](0)
-	}
-	dense.Gemm(dense.NoTrans, dense.NoTrans, g.m, g.n, g.k, g.alpha, a[g.a:], g.lda, b[g.b:], g.ldb, beta, c[g.c:], g.ldc)
+	r.plan.run(&r.plan.bands[i], &slabs, r.scratch[worker], r.dst)
 }

@@ -68,16 +68,32 @@ func testBetweenCanonical[T dense.Scalar](t *testing.T, rng *rand.Rand, s *sum) 
 	}
 }
 
-// around returns the environments of count sites from i on.
+// around returns the environments of count sites from i on, of which the centre of psi is one.
 func around[T dense.Scalar](o *Operator[T], psi *mps.Chain[T], i, count int, ws *Workspace[T]) (left, right *block.Tensor[T]) {
+	p := NewPlanner(o)
 	left, right = LeftEdge(o), RightEdge(o, psi.Charge(), psi.Charge())
 	for k := range i {
-		left = GrowLeft(o, k, left, psi.Sites[k], psi.Sites[k], ws, nil)
+		left = canonicalStep(p, k, true, left, psi.Sites[k], ws)
 	}
 	for k := o.Len() - 1; k >= i+count; k-- {
-		right = GrowRight(o, k, right, psi.Sites[k], psi.Sites[k], ws, nil)
+		right = canonicalStep(p, k, false, right, psi.Sites[k], ws)
 	}
 	return left, right
+}
+
+// canonicalStep grows an environment across a canonical site.
+func canonicalStep[T dense.Scalar](p *Planner[T], site int, left bool, env, a *block.Tensor[T], ws *Workspace[T]) *block.Tensor[T] {
+	plan := p.RightIsometry
+	if left {
+		plan = p.LeftIsometry
+	}
+	g := plan(site, env, a.Structure)
+	out := block.New[T](g.Out)
+	for i := range out.Data {
+		out.Data[i] = 7 // must not be read
+	}
+	g.Run(out, env, a, a, ws, task.New(2))
+	return out
 }
 
 // requireGeneral compares what pr made of theta with plans that use fewer identities or none.

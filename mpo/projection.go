@@ -16,6 +16,7 @@ const (
 	rightEnvironment
 	rightMixed
 	between // the space of a band
+	braSite
 	operands
 )
 
@@ -26,6 +27,7 @@ type scaledGemm[T dense.Scalar] struct {
 	a, b, c       int
 	m, n, k       int
 	lda, ldb, ldc int
+	opA, opB      dense.Op
 	alpha         T
 }
 
@@ -48,16 +50,56 @@ type feedTask[T dense.Scalar] struct {
 // x into the result. All bands follow all chains.
 type band struct{ first, feeds, last, moves span }
 
+// lists hold the tasks of a plan, in the order of their use.
+type lists[T dense.Scalar] struct {
+	products []scaledGemm[T]
+	moves    []moveTask[T]
+	feeds    []feedTask[T]
+}
+
+func (l *lists[T]) tasks() int { return len(l.products) + len(l.moves) + len(l.feeds) }
+
+// run runs a band with its space.
+func (l *lists[T]) run(b *band, slabs *[operands][]T, space, dst []T) {
+	slabs[between] = space
+	for j := b.first.from; j < b.first.to; j++ {
+		g := &l.products[j]
+		g.run(slabs[g.fromA], slabs[g.fromB], space)
+	}
+	for j := b.feeds.from; j < b.feeds.to; j++ {
+		f := &l.feeds[j]
+		if f.overwrite {
+			for k := range f.rows {
+				clear(space[f.dst+k*f.ldd:][:f.cols])
+			}
+		}
+		move(&f.moveTask, slabs[f.from], space)
+	}
+	for j := b.last.from; j < b.last.to; j++ {
+		g := &l.products[j]
+		g.run(slabs[g.fromA], slabs[g.fromB], dst)
+	}
+	for j := b.moves.from; j < b.moves.to; j++ {
+		move(&l.moves[j], space, dst)
+	}
+}
+
+func (g *scaledGemm[T]) run(a, b, c []T) {
+	beta := dense.FromFloat[T](1)
+	if g.overwrite {
+		beta = dense.FromFloat[T](0)
+	}
+	dense.Gemm(g.opA, g.opB, g.m, g.n, g.k, g.alpha, a[g.a:], g.lda, b[g.b:], g.ldb, beta, c[g.c:], g.ldc)
+}
+
 // projection is the plan of a projected Hamiltonian. Each part of the result has one writer at a time, and what it adds comes in a fixed order.
 type projection[T dense.Scalar] struct {
 	key           projectionKey
 	lefts, rights *mixtures[T]
-	products      []scaledGemm[T]
-	moves         []moveTask[T]
-	feeds         []feedTask[T]
-	chains        []projectionChain
-	bands         []band
-	scratch       int // elements of the space of a band
+	lists[T]
+	chains  []projectionChain
+	bands   []band
+	scratch int // elements of the space of a band
 
 	flops, chainFlops, bandFlops float64
 }
@@ -94,7 +136,7 @@ func (p *Planner[T]) projection(first int, w *window[T], key projectionKey) *pro
 const planTasks = 1 << 20
 
 func (p *projection[T]) tasks() int {
-	return len(p.products) + len(p.moves) + len(p.feeds) + len(p.chains)
+	return p.lists.tasks() + len(p.chains)
 }
 
 // scheme returns the scheme of a window, the last one made if it fits.
@@ -126,7 +168,6 @@ type drawing[T dense.Scalar] struct {
 	work              []float64    // of the chains
 	bandWork          []float64
 	feedsOf           [][]feed[T] // by y
-	xAt               []int       // of the band at hand: columns before each x, by x and right sector; -1: not there
 }
 
 func (p *Planner[T]) draw(w *window[T], key projectionKey) *projection[T] {
@@ -300,10 +341,10 @@ func (d *drawing[T]) finish() {
 }
 
 // clearGaps zeroes what lies between the blocks of a slab.
-func (p *projection[T]) clearGaps(dst []T) {
+func clearGaps[T dense.Scalar](s *block.Structure, dst []T) {
 	end := 0
-	for i := range p.key.theta.Blocks {
-		b := &p.key.theta.Blocks[i]
+	for i := range s.Blocks {
+		b := &s.Blocks[i]
 		clear(dst[end:b.Offset])
 		end = b.Offset + b.Len
 	}

@@ -91,7 +91,7 @@ func newScheme[T dense.Scalar](w *window[T], vacant, done place) *scheme[T] {
 			}
 		}
 	}
-	mixed := covered(ends, x, func(f *fullEntry[T]) corner { return corner{f.left, f.in} })
+	mixed := covered(ends, x, fromLeft[T])
 	lefts := newMixer[T]()
 	for i, f := range ends {
 		if mixed[i] {
@@ -101,7 +101,7 @@ func newScheme[T dense.Scalar](w *window[T], vacant, done place) *scheme[T] {
 		n := numbered(x, &s.xs, corner{f.left, f.in})
 		s.finish = append(s.finish, local[T]{f.out, place{n, 0}, f.value})
 	}
-	mixed = covered(begins, y, func(f *fullEntry[T]) corner { return corner{f.right, f.out} })
+	mixed = covered(begins, y, fromRight[T])
 	rights := newMixer[T]()
 	for i, f := range begins {
 		if mixed[i] {
@@ -112,6 +112,13 @@ func newScheme[T dense.Scalar](w *window[T], vacant, done place) *scheme[T] {
 	}
 	s.settle(w, lefts, rights, locals)
 	return s
+}
+
+func fromLeft[T dense.Scalar](f *fullEntry[T]) (n corner, far place) {
+	return corner{f.left, f.in}, f.right
+}
+func fromRight[T dense.Scalar](f *fullEntry[T]) (n corner, far place) {
+	return corner{f.right, f.out}, f.left
 }
 
 // numbered returns the place of a corner in a list, and appends it if it is new.
@@ -125,21 +132,20 @@ func numbered(known map[corner]int, list *[]corner, n corner) int {
 	return i
 }
 
-// covered tells for each entry whether it goes into the mixture of its states; otherwise its corner, as at gives it, must be there. Nodes that are
-// known already serve for nothing.
-func covered[T dense.Scalar](entries []fullEntry[T], known map[corner]int, at func(*fullEntry[T]) corner) []bool {
-	type pair struct{ out, in place }
-	pairs, nodes := make(map[pair]int), make(map[corner]int)
+// covered tells for each entry whether it goes into the mixture of its states and its far index; otherwise its corner, as at gives both, must be
+// there. Nodes that are known already serve for nothing.
+func covered[T dense.Scalar](entries []fullEntry[T], known map[corner]int, at func(*fullEntry[T]) (n corner, far place)) []bool {
+	pairs, nodes := make(map[[3]place]int), make(map[corner]int)
 	var adjacent [][]int32
 	edges := make([][2]int, len(entries))
 	for i := range entries {
 		f := &entries[i]
-		n := at(f)
+		n, far := at(f)
 		if _, ok := known[n]; ok {
 			edges[i] = [2]int{-1, -1}
 			continue
 		}
-		p := pair{f.out, f.in}
+		p := [3]place{f.out, f.in, far}
 		if _, ok := pairs[p]; !ok {
 			pairs[p] = len(adjacent)
 			adjacent = append(adjacent, nil)

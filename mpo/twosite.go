@@ -29,7 +29,7 @@ func TwoSiteVariance[T dense.Scalar](psi *mps.Chain[T], h *Operator[T], pool *ta
 	var ws Workspace[T]
 	for i := n - 1; i > 0; i-- {
 		a := psi.Sites[i]
-		g := plan.Right(i, right[i].Structure, a.Structure, a.Structure)
+		g := plan.RightIsometry(i, right[i], a.Structure)
 		right[i-1] = block.New[T](g.Out)
 		g.Run(right[i-1], right[i], a, a, &ws, pool)
 		flops += g.Flops()
@@ -75,7 +75,7 @@ func TwoSiteVarianceFrom[T dense.Scalar](psi *mps.Chain[T], plan *Planner[T], ri
 		leaveRight(y, next)
 		variance += square(y)
 
-		g := plan.Left(i, left.Structure, q.Structure, q.Structure)
+		g := plan.LeftIsometry(i, left, q.Structure)
 		grown := block.New[T](g.Out)
 		g.Run(grown, left, q, q, ws, pool)
 		flops += g.Flops()

@@ -17,8 +17,9 @@ type window[T dense.Scalar] struct {
 	links  []link
 	local  []localEntry[T]
 
-	tables  [faces][][]link // see by
-	schemes [4]*scheme[T]   // by which environments are the identity
+	tables  [faces][][]link     // see by
+	schemes [4]*scheme[T]       // by which environments are the identity
+	growths [4]*growthScheme[T] // by side, and whether there is an identity
 }
 
 // stateGroup is a sector of the states of a window.
