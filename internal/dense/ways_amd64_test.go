@@ -67,7 +67,7 @@ func set[V any](t *testing.T, p *V, to V) {
 	t.Cleanup(func() { *p = saved })
 }
 
-// TestPack compares the packed panels with the loops of their description, for every width and depth, in both directions.
+// TestPack compares the packed panels with the loops of their description, for every width and depth, in both directions, from rows near to each other and far apart.
 func TestPack(t *testing.T) {
 	for name, tiling := range allTilings() {
 		t.Run(name, func(t *testing.T) {
@@ -75,15 +75,18 @@ func TestPack(t *testing.T) {
 			for n := 1; n <= 2*tiling.vectors*tiling.lanes+1; n++ {
 				for k := 1; k <= 19; k++ {
 					for _, transposed := range []bool{false, true} {
-						checkPack(t, tiling, per, n, k, transposed)
+						checkPack(t, tiling, per, n, k, 3*per, transposed)
 					}
+				}
+				for _, k := range []int{15, 16, 17, 33} { // rows a page apart
+					checkPack(t, tiling, per, n, k, 512, false)
 				}
 			}
 		})
 	}
 }
 
-func checkPack(t *testing.T, g *tiling, per, n, k int, transposed bool) {
+func checkPack(t *testing.T, g *tiling, per, n, k, pad int, transposed bool) {
 	t.Helper()
 	rng := rand.New(rand.NewPCG(uint64(n), uint64(k)))
 	rows, cols := k, n
@@ -92,7 +95,7 @@ func checkPack(t *testing.T, g *tiling, per, n, k int, transposed bool) {
 	}
 	entries := make([]float64, rows*cols*per)
 	Random(rng, entries)
-	b := input(rows, cols*per, 3*per, 3, entries)
+	b := input(rows, cols*per, pad, 3, entries)
 	vectors := (n + g.lanes - 1) / g.lanes
 	out := newPadded[float64](1, vectors*g.lanes*per*k, 0, 5, -777.25)
 	rowB, colB := 8*b.ld, g.size
