@@ -38,7 +38,7 @@ func (p *Planner[T]) Image(site int, left, right, ket *block.Structure) *Image[T
 // fromLeft goes by rows (l', s') of y and columns (w, r).
 func (m *Image[T]) fromLeft(w *window[T], left, right, ket *block.Structure, x, y *slab) {
 	t := asKet(ket)
-	source := newLeftSource(&m.net, w, left, t, x)
+	source := newLeftSource(&m.net, w, nowhere, left, t, x)
 	nw := len(w.wr.Sectors)
 	down := steps(w.group, m.Out.Axes[2], -1, w.wr, t.right())
 	for i := range m.Out.Blocks {
@@ -62,7 +62,7 @@ func (m *Image[T]) fromLeft(w *window[T], left, right, ket *block.Structure, x, 
 // fromRight goes by rows (a, l) of y and columns (s', r').
 func (m *Image[T]) fromRight(w *window[T], left, right, ket *block.Structure, x, y *slab) {
 	t := asKet(ket)
-	source := newRightSource(&m.net, w, right, t, x)
+	source := newRightSource(&m.net, w, nowhere, right, t, x)
 	na := len(w.wl.Sectors)
 	down := steps(w.group, right.Axes[2], -1, w.wr, t.right())
 	from := steps(w.group, m.Out.Axes[0], -1, w.wl, t.left())

@@ -13,7 +13,8 @@ import (
 type Perturbation[T dense.Scalar] struct {
 	Blocks []PerturbationBlock
 
-	net    network[T]
+	net    network[T]    // of it the first pass
+	moves  []feedTask[T] // from x, or from theta where the environment is the identity
 	left   bool
 	spans  []span // of the moves, by block
 	order  []int  // blocks, most work first
@@ -35,13 +36,13 @@ type Segment struct{ Outer, Site, Start, Dim int }
 
 type span struct{ from, to int }
 
-// Densities computes the matrix of each block for the slab theta: element (x, y) is the sum of m_x conj(m_y) over the open indices of what was
+// Densities computes the matrix of each block for the slab src of theta: element (x, y) is the sum of m_x conj(m_y) over the open indices of what was
 // reached, m, in units of the energy unit: couplings whose squares are no numbers need one of their size. Workers hold one m at a time.
-func (p *Perturbation[T]) Densities(h *Projected[T], theta []T, unit float64, ws *Workspace[T], pool *task.Pool) [][]T {
+func (p *Perturbation[T]) Densities(h *Projected[T], src []T, unit float64, ws *Workspace[T], pool *task.Pool) [][]T {
 	ws.x = grow(ws.x, p.net.xSize)
-	a, b := h.left.Data, theta
+	a, b := h.left.Data, src
 	if !p.left {
-		a, b = theta, h.right.Data
+		a, b = src, h.right.Data
 	}
 	pool.Do(len(p.net.first), p.net.firstFlops, func(_, i int) { multiply(&p.net.first[i], a, b, ws.x) })
 	reached, rho := make([][]T, pool.Threads()), make([][]T, len(p.Blocks))
@@ -54,7 +55,12 @@ func (p *Perturbation[T]) Densities(h *Projected[T], theta []T, unit float64, ws
 		m := reached[worker][:k.Rows*k.cols]
 		clear(m)
 		for q := p.spans[i].from; q < p.spans[i].to; q++ {
-			move(&p.net.moves[q], ws.x, m)
+			f := &p.moves[q]
+			if f.from == theta {
+				move(&f.moveTask, src, m)
+			} else {
+				move(&f.moveTask, ws.x, m)
+			}
 		}
 		if unit != 1 {
 			dense.Scale(dense.FromFloat[T](1/unit), m)
@@ -85,7 +91,7 @@ type draft[T dense.Scalar] struct {
 	rows   [][2]int        // block and first row, by outer sector * sites + site sector
 	others int             // sectors of the other site
 	cols   []int           // first column, by (block * sectors of the MPO bond + w) * others + other site sector; the bond of theta follows
-	moves  [][]moveTask[T] // by block
+	moves  [][]feedTask[T] // by block
 }
 
 // newDraft lists the pairs of an outer bond sector and a site sector by the charge of the bond between the sites: outer + site on the
@@ -111,7 +117,7 @@ func newDraft[T dense.Scalar](g block.Group, mid block.Axis, th *block.Structure
 			}
 		}
 	}
-	d.moves = make([][]moveTask[T], len(d.blocks))
+	d.moves = make([][]feedTask[T], len(d.blocks))
 	for i := range d.blocks {
 		d.addColumns(g, &d.blocks[i], mid, other, far, sign)
 	}
@@ -155,9 +161,9 @@ func (d *draft[T]) finish(p *Perturbation[T], x slab) {
 		if len(d.moves[i]) == 0 {
 			continue
 		}
-		from := len(p.net.moves)
-		p.net.moves = append(p.net.moves, d.moves[i]...)
-		p.Blocks, p.spans = append(p.Blocks, b), append(p.spans, span{from, len(p.net.moves)})
+		from := len(p.moves)
+		p.moves = append(p.moves, d.moves[i]...)
+		p.Blocks, p.spans = append(p.Blocks, b), append(p.spans, span{from, len(p.moves)})
 		p.widest = max(p.widest, b.Rows*b.cols)
 		cost := 2 * float64(b.Rows) * float64(b.Rows) * float64(b.cols)
 		work = append(work, cost)
@@ -171,8 +177,8 @@ func (d *draft[T]) finish(p *Perturbation[T], x slab) {
 func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 	p := &Perturbation[T]{left: true}
 	var x slab
-	w, th := h.planner.crossing(h.first, true), h.Theta
-	source := newLeftSource(&p.net, w, h.left.Structure, asKet(th), &x)
+	w, th, skip := h.planner.crossing(h.first, true), h.Theta, h.plan.key.vacant
+	source := newLeftSource(&p.net, w, skip, h.left.Structure, asKet(th), &x)
 	na, nm := len(w.wl.Sectors), len(w.wr.Sectors)
 	outer := h.left.Axes[0]
 	d := newDraft[T](w.group, w.wr, th, outer, true)
@@ -182,18 +188,26 @@ func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 		l, s1, s2 := tb.Sectors[0], tb.Sectors[1], tb.Sectors[2]
 		d1, cols := tb.Shape[1], tb.Shape[2]*tb.Shape[3]
 		for a := range na {
-			src := source.at[t*na+a]
-			if src < 0 {
+			src, lp := source.at[t*na+a], up[l*na+a]
+			if lp < 0 {
 				continue
 			}
-			lp := up[l*na+a]
-			m, lds := outer.Sectors[lp].Dim, w.wl.Sectors[a].Dim*d1*cols
+			m, wide := outer.Sectors[lp].Dim, source.pack.wide[a]
 			for _, k := range links[a*len(w.states)+s1] {
 				row := d.rows[lp*d.sites+k.out]
 				col, ld := d.cols[(row[0]*nm+k.right)*d.others+s2], d.blocks[row[0]].cols
 				for _, e := range w.local[k.from:k.to] {
-					d.moves[row[0]] = append(d.moves[row[0]], moveTask[T]{src: src + (e.left*d1+e.in)*cols,
-						dst: (row[1]+e.out)*ld + col + e.right*cols, rows: m, cols: cols, lds: lds, ldd: w.states[k.out].dim * ld, value: e.value})
+					f := feedTask[T]{from: between, moveTask: moveTask[T]{dst: (row[1]+e.out)*ld + col + e.right*cols,
+						rows: m, cols: cols, ldd: w.states[k.out].dim * ld, value: e.value}}
+					switch {
+					case skip == place{a, e.left}:
+						f.from, f.src, f.lds = theta, tb.Offset+e.in*cols, d1*cols
+					case src < 0:
+						continue
+					default:
+						f.src, f.lds = src+(source.pack.at[a][e.left]*d1+e.in)*cols, wide*d1*cols
+					}
+					d.moves[row[0]] = append(d.moves[row[0]], f)
 				}
 			}
 		}
@@ -206,10 +220,10 @@ func (h *Projected[T]) perturbLeft() *Perturbation[T] {
 func (h *Projected[T]) perturbRight() *Perturbation[T] {
 	p := &Perturbation[T]{}
 	var x slab
-	w, th := h.planner.crossing(h.first, false), h.Theta
+	w, th, skip := h.planner.crossing(h.first, false), h.Theta, h.plan.key.done
 	nc, nm := len(w.wr.Sectors), len(w.wl.Sectors)
 	outer := h.right.Axes[2]
-	source := newRightSource(&p.net, w, h.right.Structure, asKet(th), &x)
+	source := newRightSource(&p.net, w, skip, h.right.Structure, asKet(th), &x)
 	d := newDraft[T](w.group, w.wl, th, outer, false)
 	links := w.by(rightIn)
 	for t := range th.Blocks {
@@ -217,18 +231,26 @@ func (h *Projected[T]) perturbRight() *Perturbation[T] {
 		s1, s2, r := tb.Sectors[1], tb.Sectors[2], tb.Sectors[3]
 		rows, d2 := tb.Shape[0]*tb.Shape[1], tb.Shape[2]
 		for c := range nc {
-			src := source.at[t*nc+c]
-			if src < 0 {
+			src, rp := source.at[t*nc+c], source.up[r*nc+c]
+			if rp < 0 {
 				continue
 			}
-			rp, many := source.up[r*nc+c], w.wr.Sectors[c].Dim
-			n := outer.Sectors[rp].Dim
+			n, wide := outer.Sectors[rp].Dim, source.pack.wide[c]
 			for _, k := range links[c*len(w.states)+s2] {
 				row := d.rows[rp*d.sites+k.out]
 				col, ld := d.cols[(row[0]*nm+k.left)*d.others+s1], d.blocks[row[0]].Rows
 				for _, e := range w.local[k.from:k.to] {
-					d.moves[row[0]] = append(d.moves[row[0]], moveTask[T]{src: src + (e.in*many+e.right)*n,
-						dst: (col+e.left*rows)*ld + row[1] + e.out*n, rows: rows, cols: n, lds: d2 * many * n, ldd: ld, value: e.value})
+					f := feedTask[T]{from: between, moveTask: moveTask[T]{dst: (col+e.left*rows)*ld + row[1] + e.out*n,
+						rows: rows, cols: n, ldd: ld, value: e.value}}
+					switch {
+					case skip == place{c, e.right}:
+						f.from, f.src, f.lds = theta, tb.Offset+e.in*n, d2*n
+					case src < 0:
+						continue
+					default:
+						f.src, f.lds = src+(e.in*wide+source.pack.at[c][e.right])*n, d2*wide*n
+					}
+					d.moves[row[0]] = append(d.moves[row[0]], f)
 				}
 			}
 		}

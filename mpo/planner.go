@@ -124,33 +124,84 @@ func (k ket) find(l int, s stateGroup, r int) (int, bool) {
 	return k.Find(l, s.at[0], s.at[1], r)
 }
 
+// packing places the indices of an MPO bond that a pass 1 makes among those of their sector.
+type packing struct {
+	at   [][]int // by sector and index; -1: nothing asks for it
+	wide []int   // indices by sector
+}
+
+// packed takes what the entries of w ask of its bond on the left or on the right, but for the index at skip.
+func packed[T dense.Scalar](w *window[T], left bool, skip place) packing {
+	bond := w.wr
+	if left {
+		bond = w.wl
+	}
+	p := packing{make([][]int, len(bond.Sectors)), make([]int, len(bond.Sectors))}
+	for i, s := range bond.Sectors {
+		p.at[i] = make([]int, s.Dim)
+	}
+	for _, k := range w.links {
+		for _, e := range w.local[k.from:k.to] {
+			at := place{k.right, e.right}
+			if left {
+				at = place{k.left, e.left}
+			}
+			if at != skip {
+				p.at[at.sector][at.inner] = 1
+			}
+		}
+	}
+	for i, list := range p.at {
+		for k, asked := range list {
+			list[k] = -1
+			if asked == 1 {
+				list[k] = p.wide[i]
+				p.wide[i]++
+			}
+		}
+	}
+	return p
+}
+
 // leftSource is pass 1 with the environment on the left: env(l', a, l) · t(l, s, r) for each block of t and each sector a of the MPO bond,
-// rows (l', a), columns (s, r), in the slab x.
+// rows (l', a) with the indices a that are asked for, columns (s, r), in the slab x.
 type leftSource[T dense.Scalar] struct {
 	w    *window[T]
 	t    ket
 	env  *block.Structure
+	pack packing
 	at   []int // place in x, by block of t and a; -1: no such product
 	down []int // sector of l with the charge l' - a
 }
 
-func newLeftSource[T dense.Scalar](net *network[T], w *window[T], env *block.Structure, t ket, x *slab) *leftSource[T] {
+func newLeftSource[T dense.Scalar](net *network[T], w *window[T], skip place, env *block.Structure, t ket, x *slab) *leftSource[T] {
 	na := len(w.wl.Sectors)
 	up := steps(w.group, t.left(), +1, w.wl, env.Axes[0])
-	p := &leftSource[T]{w: w, t: t, env: env, at: make([]int, len(t.Blocks)*na), down: steps(w.group, env.Axes[0], -1, w.wl, t.left())}
+	p := &leftSource[T]{w: w, t: t, env: env, pack: packed(w, true, skip), at: make([]int, len(t.Blocks)*na), down: steps(w.group, env.Axes[0], -1, w.wl, t.left())}
 	for i := range t.Blocks {
 		l, _, _ := t.at(i)
 		k, d, n := t.shape(i)
 		for a := range na {
 			p.at[i*na+a] = -1
 			e, ok := env.Find(up[l*na+a], a, l)
-			if !ok {
+			wide := p.pack.wide[a]
+			if !ok || wide == 0 {
 				continue
 			}
 			eb := &env.Blocks[e]
-			m := eb.Shape[0] * eb.Shape[1]
-			p.at[i*na+a] = x.take(m * d * n)
-			net.first = append(net.first, gemmTask{a: eb.Offset, b: t.Blocks[i].Offset, c: p.at[i*na+a], m: m, n: d * n, k: k, lda: k, ldb: d * n, ldc: d * n})
+			m := eb.Shape[0]
+			at := x.take(m * wide * d * n)
+			p.at[i*na+a] = at
+			if wide == eb.Shape[1] {
+				net.first = append(net.first, gemmTask{a: eb.Offset, b: t.Blocks[i].Offset, c: at, m: m * wide, n: d * n, k: k, lda: k, ldb: d * n, ldc: d * n})
+				continue
+			}
+			for inner, j := range p.pack.at[a] {
+				if j >= 0 {
+					net.first = append(net.first, gemmTask{a: eb.Offset + inner*k, b: t.Blocks[i].Offset, c: at + j*d*n,
+						m: m, n: d * n, k: k, lda: eb.Shape[1] * k, ldb: d * n, ldc: wide * d * n})
+				}
+			}
 		}
 	}
 	return p
@@ -172,9 +223,9 @@ func (p *leftSource[T]) moves(net *network[T], lp, w, out, r int) bool {
 			continue
 		}
 		src, ds := p.at[t*na+k.left], p.w.states[k.in].dim
-		lds := p.w.wl.Sectors[k.left].Dim * ds * n
+		lds := p.pack.wide[k.left] * ds * n
 		for _, e := range p.w.local[k.from:k.to] {
-			net.moves = append(net.moves, moveTask[T]{src: src + (e.left*ds+e.in)*n, dst: (e.out*nw + e.right) * n,
+			net.moves = append(net.moves, moveTask[T]{src: src + (p.pack.at[k.left][e.left]*ds+e.in)*n, dst: (e.out*nw + e.right) * n,
 				rows: m, cols: n, lds: lds, ldd: d * nw * n, value: e.value})
 		}
 	}
@@ -182,18 +233,19 @@ func (p *leftSource[T]) moves(net *network[T], lp, w, out, r int) bool {
 }
 
 // rightSource is pass 1 with the environment on the right: t(l, s, r) · env(w, r, r') for each block of t and each sector w of the MPO bond,
-// rows (l, s), columns (w, r'), in the slab x.
+// rows (l, s), columns (w, r') with the indices w that are asked for, in the slab x.
 type rightSource[T dense.Scalar] struct {
-	w   *window[T]
-	t   ket
-	env *block.Structure
-	at  []int // place in x, by block of t and w; -1: no such product
-	up  []int // sector of r' with the charge r + w
+	w    *window[T]
+	t    ket
+	env  *block.Structure
+	pack packing
+	at   []int // place in x, by block of t and w; -1: no such product
+	up   []int // sector of r' with the charge r + w
 }
 
-func newRightSource[T dense.Scalar](net *network[T], w *window[T], env *block.Structure, t ket, x *slab) *rightSource[T] {
+func newRightSource[T dense.Scalar](net *network[T], w *window[T], skip place, env *block.Structure, t ket, x *slab) *rightSource[T] {
 	nw := len(w.wr.Sectors)
-	p := &rightSource[T]{w: w, t: t, env: env, at: make([]int, len(t.Blocks)*nw), up: steps(w.group, t.right(), +1, w.wr, env.Axes[2])}
+	p := &rightSource[T]{w: w, t: t, env: env, pack: packed(w, false, skip), at: make([]int, len(t.Blocks)*nw), up: steps(w.group, t.right(), +1, w.wr, env.Axes[2])}
 	for i := range t.Blocks {
 		_, _, r := t.at(i)
 		m, d, k := t.shape(i)
@@ -201,16 +253,19 @@ func newRightSource[T dense.Scalar](net *network[T], w *window[T], env *block.St
 		for v := range nw {
 			p.at[i*nw+v] = -1
 			e, ok := env.Find(v, r, p.up[r*nw+v])
-			if !ok {
+			wide := p.pack.wide[v]
+			if !ok || wide == 0 {
 				continue
 			}
 			eb := &env.Blocks[e]
-			wide, n := eb.Shape[0], eb.Shape[2]
+			n := eb.Shape[2]
 			at := x.take(rows * wide * n)
 			p.at[i*nw+v] = at
-			for j := range wide {
-				net.first = append(net.first, gemmTask{a: t.Blocks[i].Offset, b: eb.Offset + j*k*n, c: at + j*n,
-					m: rows, n: n, k: k, lda: k, ldb: n, ldc: wide * n})
+			for inner, j := range p.pack.at[v] {
+				if j >= 0 {
+					net.first = append(net.first, gemmTask{a: t.Blocks[i].Offset, b: eb.Offset + inner*k*n, c: at + j*n,
+						m: rows, n: n, k: k, lda: k, ldb: n, ldc: wide * n})
+				}
 			}
 		}
 	}
@@ -231,10 +286,10 @@ func (p *rightSource[T]) moves(net *network[T], down []int, a, out, l, rp int) b
 		if !ok || p.at[t*nw+k.right] < 0 {
 			continue
 		}
-		src, wide := p.at[t*nw+k.right], p.w.wr.Sectors[k.right].Dim
+		src, wide := p.at[t*nw+k.right], p.pack.wide[k.right]
 		lds := p.w.states[k.in].dim * wide * n
 		for _, e := range p.w.local[k.from:k.to] {
-			net.moves = append(net.moves, moveTask[T]{src: src + (e.in*wide+e.right)*n, dst: (e.left*m*d + e.out) * n,
+			net.moves = append(net.moves, moveTask[T]{src: src + (e.in*wide+p.pack.at[k.right][e.right])*n, dst: (e.left*m*d + e.out) * n,
 				rows: m, cols: n, lds: lds, ldd: d * n, value: e.value})
 		}
 	}

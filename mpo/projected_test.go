@@ -64,6 +64,9 @@ func testBetweenCanonical[T dense.Scalar](t *testing.T, rng *rand.Rand, s *sum) 
 			size := dense.Norm(v) * dense.Norm(y) * (1 + biggest(h))
 			require.InDelta(t, 0, abs(braket(v, matvec(h, y))-dense.ToComplex(block.Dot(probe, out)))/size, 1e-13, "sites %d..%d", i, i+count-1)
 			requireGeneral(t, p, pr, theta, out)
+			if count == 2 {
+				testPerturbation(t, o, pr, theta, left, right, &ws)
+			}
 		}
 	}
 }
