@@ -11,7 +11,7 @@ import (
 
 // A Sweep is a line of log.jsonl.
 type Sweep struct {
-	State           int     `json:"state"`
+	State           int     `json:"state"` // level searched for, in the order of the search
 	Sector          Numbers `json:"sector,omitempty"`
 	Stage           int     `json:"stage"`
 	Sweep           int     `json:"sweep"`

@@ -67,6 +67,7 @@ func (a *ascent) onLevel(r *dmrg.Result) {
 	}
 	a.sweeps[r], a.marks = len(r.Sweeps), nil
 	a.earlier += len(r.Sweeps)
+	a.level++
 	a.fail(a.keep(r.State))
 }
 

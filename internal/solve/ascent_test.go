@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"os"
 	"path/filepath"
 	"slices"
 	"strings"
@@ -76,6 +77,11 @@ func TestSeveralStates(t *testing.T) {
 	again, _, err := Read(context.Background(), dir, ReadOptions{})
 	require.NoError(t, err)
 	assert.Len(t, again.States, len(r.States))
+	text, err := os.ReadFile(filepath.Join(dir, runfolder.LogFile))
+	require.NoError(t, err)
+	for k := range r.States {
+		assert.Contains(t, string(text), fmt.Sprintf(`"state":%d,`, k), "sweeps of level %d in the log", k)
+	}
 }
 
 // TestSeveralStatesGoOn: a run that is stopped between levels, or within one, goes on from the states it had.

@@ -20,6 +20,7 @@ type watch struct {
 	before float64 // seconds spent by earlier runs
 	begin  time.Time
 	now    Progress
+	level  int // searched for, in the order of the search
 	stages int
 	told   time.Time
 }
@@ -63,7 +64,7 @@ func (w *watch) onBond(p dmrg.Position) {
 func (w *watch) onSweep(s dmrg.Sweep) {
 	w.check.Sweeps = s.Number
 	w.now.Energy, w.now.Bond, w.now.LargestBond, w.now.Discarded = s.Energy, s.Bond, s.LargestBond, s.Discarded
-	w.fail(w.folder.Log(runfolder.Sweep{Stage: w.stages, Sweep: s.Number, Energy: s.Energy, DiscardedWeight: s.Discarded,
+	w.fail(w.folder.Log(runfolder.Sweep{State: w.level, Stage: w.stages, Sweep: s.Number, Energy: s.Energy, DiscardedWeight: s.Discarded,
 		LargestBond: s.LargestBond, Seconds: s.Seconds}))
 	if time.Since(w.told) >= statusEvery {
 		w.told = time.Now()

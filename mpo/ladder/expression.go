@@ -30,6 +30,9 @@ type frame struct {
 	used   int
 	steps  int // of sums and products, all places together
 
+	halves int    // places left out though a summand has its sites there
+	half   string // the first
+
 	// Filled when a ring may count something twice.
 	track   bool
 	wrapped bool

@@ -68,6 +68,10 @@ func TestWarnings(t *testing.T) {
 		{"around a tube", tube, Term{Formula: "n[l,j] n[l+1,j]", Each: Each{"l": "legs"}}, nil},
 		{"twice around a tube", tube, Term{Name: "V", Formula: "n[l,j] n[l+d,j]", Each: Each{"l": "legs", "d": "1..2"}},
 			[]string{`term "V" counts 3 sets of sites twice on the ring, first at (j = 0, d = 1, l = c) and (j = 0, d = 2, l = a)` + advice}},
+		{"half a place", must(t, 4, Open, Leg("a", Fermion()), Leg("b", Fermion())),
+			Term{Name: "all", Formula: "-c^+[a,j+1] c[a,j] - (c^+[a,j] c[b,j] + h.c.) + h.c."},
+			[]string{`term "all" leaves out 1 place where only some of its summands have all their sites, first j = 3; if those are meant, write the summands as terms of their own`}},
+		{"a number besides", must(t, 4, Open, Leg("a", Fermion())), Term{Formula: "n[a,j+1] n[a,j] - 0.25"}, nil},
 		{"nowhere", ring, Term{Name: "gone", Formula: "n[a,j]", Where: "j > rungs"}, []string{`term "gone" has no place on this ladder`}},
 	} {
 		t.Run(c.name, func(t *testing.T) {

@@ -106,12 +106,26 @@ func (t *compiled) place(f *frame, visit func(v value) error) error {
 	}
 	v, err := t.body.eval(f)
 	if err == errAbsent {
+		t.missed(f)
 		return nil
 	}
 	if err != nil {
 		return t.at.wrap(err)
 	}
 	return visit(v)
+}
+
+// missed notes a place that a summand alone would have had.
+func (t *compiled) missed(f *frame) {
+	for _, part := range t.parts {
+		f.used = 0
+		if v, err := part.eval(f); err == nil && v.ops != nil {
+			if f.halves++; f.halves == 1 {
+				f.half = placeName(t.indices(f))
+			}
+			return
+		}
+	}
 }
 
 // indices returns the assignment that f stands at.
@@ -173,7 +187,7 @@ func (s *Scope) sum(t Term) (*Polynomial, []string, error) {
 	if bad, ok := p.finite(); !ok {
 		return nil, nil, c.at.fail("check the numbers in it", "a coefficient is not a finite number: %s", bad)
 	}
-	return p, c.warnings(places, &rings), nil
+	return p, c.warnings(places, f, &rings), nil
 }
 
 func (b *Builder) full(at origin) error { return at.wrap(b.list.full()) }
@@ -265,11 +279,15 @@ func mix(h, x uint64) uint64 {
 	return h ^ h>>29
 }
 
-func (t *compiled) warnings(places int, r *ringPairs) []string {
+func (t *compiled) warnings(places int, f *frame, r *ringPairs) []string {
 	var w []string
 	name := fmt.Sprintf("term %q", t.term.title())
 	if places == 0 {
 		w = append(w, name+" has no place on this ladder")
+	}
+	if places > 0 && f.halves > 0 {
+		w = append(w, fmt.Sprintf("%s leaves out %s where only some of its summands have all their sites, first %s; if those are meant, write the summands as terms of their own",
+			name, plural(f.halves, "place"), f.half))
 	}
 	if r.count > 0 {
 		w = append(w, fmt.Sprintf("%s counts %s twice on the ring, first at %s; end a long range r at rungs/2, on an even ring with where = \"2*r < rungs or j < r\"",

@@ -45,6 +45,7 @@ type compiled struct {
 	term    Term
 	at      origin
 	body    expr
+	parts   []expr // the summands of body, where there are several
 	where   condition
 	domains []domain
 	slots   int
@@ -73,6 +74,15 @@ func (s *Scope) compile(t Term) (*compiled, error) {
 	if out.body, err = c.compile(body); err != nil {
 		return nil, err
 	}
+	if list := summands(body); len(list) > 1 {
+		for _, n := range list {
+			part, err := c.compile(n)
+			if err != nil {
+				return nil, err
+			}
+			out.parts = append(out.parts, part)
+		}
+	}
 	if where != nil {
 		c.source, c.condition = whereSource, true
 		if out.where, err = c.conditionOf(where); err != nil {
@@ -86,6 +96,21 @@ func (s *Scope) compile(t Term) (*compiled, error) {
 	}
 	out.slots = c.slots
 	return out, nil
+}
+
+// summands lists what a formula adds up, its Hermitian conjugate left out.
+func summands(n formula.Node) []formula.Node {
+	switch x := n.(type) {
+	case *formula.Conj:
+		return summands(x.X)
+	case *formula.Unary:
+		return summands(x.X)
+	case *formula.Binary:
+		if x.Op == '+' || x.Op == '-' {
+			return append(summands(x.X), summands(x.Y)...)
+		}
+	}
+	return []formula.Node{n}
 }
 
 func mentions(n formula.Node, name string) bool {
