@@ -12,7 +12,7 @@ type footprint struct {
 	sites        float64 // site tensors
 	environments float64 // one a site
 	largest      float64 // environment
-	work         float64 // Krylov vectors and the slabs of the projected Hamiltonian, at the widest bond
+	work         float64 // Krylov vectors and the slabs of a perturbation, at the widest bond
 }
 
 // whole is what is held where memory has no cap; least what must be in memory: of the environments those of an update, the one that it
@@ -41,7 +41,8 @@ func footprintOf[T dense.Scalar](op *mpo.Operator[T], bonds []block.Axis) (f foo
 	return f
 }
 
-// workspaces is what the update of bond i holds, in two-site tensors.
+// workspaces is what the update of bond i holds, in two-site tensors; a perturbed one, at most. Others hold mixtures of
+// environment matrices instead, which are less.
 func workspaces[T dense.Scalar](op *mpo.Operator[T], i int) int {
 	return vectorsWhole + thetas + op.Bonds[i].Dim() + op.Bonds[i+2].Dim()
 }
