@@ -30,12 +30,12 @@ func TestEstimate(t *testing.T) {
 		{"drift halves by assumption", []settledStage{stage(0, -9.5, -10)}, -10, 0.5},
 		{"drift by its own ratio", []settledStage{stage(0, -9.1, -9.7, -10)}, -10, 0.3},
 		{"slow drift", []settledStage{stage(0, -9.1, -9.6, -10)}, -10, 1.6},
-		{"two stages: a line through both", []settledStage{stage(8e-3, -9.9916, -9.9916), stage(1e-3, -10, -10)}, -10.0012, 0.00036},
-		{"the last one settles alone", []settledStage{stage(8e-3, -9.9916, -9.9916), stage(1e-3, -10, -10), stage(1e-4, -10.005)}, -10.0012, 0.00036},
-		{"the bond stays: a line through the one before", []settledStage{stage(8e-3, -9.9916, -9.9916), stage(1.01e-3, -10, -10), stage(1e-3, -10, -10)}, -10.0012, 0.00036},
-		{"too close for a line", []settledStage{stage(1.1e-3, -9.99, -9.99), stage(1e-3, -10, -10)}, -10.00125, 0.001},
-		{"no slope downward", []settledStage{stage(2e-3, -10.1, -10.1), stage(1e-3, -10, -10)}, -10.001, 0.0003},
-		{"a slope too steep", []settledStage{stage(2e-3, -9, -9), stage(1e-3, -10, -10)}, -10.002, 0.0006},
+		{"two stages: a line through both", []settledStage{stage(8e-3, -9.9916, -9.9916), stage(1e-3, -10, -10)}, -10.0012, 0.0003},
+		{"the last one settles alone", []settledStage{stage(8e-3, -9.9916, -9.9916), stage(1e-3, -10, -10), stage(1e-4, -10.005)}, -10.0012, 0.0003},
+		{"the bond stays: a line through the one before", []settledStage{stage(8e-3, -9.9916, -9.9916), stage(1.01e-3, -10, -10), stage(1e-3, -10, -10)}, -10.0012, 0.0003},
+		{"too close for a line", []settledStage{stage(1.1e-3, -9.99, -9.99), stage(1e-3, -10, -10)}, -10.00125, guessedError * 1e-3},
+		{"no slope downward", []settledStage{stage(2e-3, -10.1, -10.1), stage(1e-3, -10, -10)}, -10.001, 0.00025},
+		{"a slope too steep", []settledStage{stage(2e-3, -9, -9), stage(1e-3, -10, -10)}, -10.002, 0.0005},
 	} {
 		t.Run(row.name, func(t *testing.T) {
 			est := estimateError(row.stages, scale, bonds)

@@ -43,18 +43,19 @@ func median(x []float64) float64 {
 	return (x[(n-1)/2] + x[n/2]) / 2
 }
 
-// Scores are those of the three kinds of bars.
-type Scores struct{ Energy, Local, Entropy Score }
+// Scores are those of the kinds of bars.
+type Scores struct{ Energy, Local, Far, Entropy Score }
 
-// Scores judges the searches of a model. Values and entropies are judged against one.
+// Scores judges the searches of a model. Values, correlations and entropies are judged against one.
 func (r *Record) Scores() Scores {
-	var energy, local, entropy []Bar
+	var energy, local, far, entropy []Bar
 	for _, c := range r.Cases {
 		energy = append(energy, c.Energy)
 		local = append(local, c.Local...)
+		far = append(far, c.Far...)
 		entropy = append(entropy, c.Entropy...)
 	}
-	return Scores{score(energy, r.Size), score(local, 1), score(entropy, 1)}
+	return Scores{score(energy, r.Size), score(local, 1), score(far, 1), score(entropy, 1)}
 }
 
 // Total averages the coverage over the models that have bars of a kind, and takes the median of their ratios.
@@ -81,6 +82,7 @@ func Total(records []Record, keep func(*Record) bool) (models int, total Scores)
 	}
 	gather(func(s *Scores) *Score { return &s.Energy })
 	gather(func(s *Scores) *Score { return &s.Local })
+	gather(func(s *Scores) *Score { return &s.Far })
 	gather(func(s *Scores) *Score { return &s.Entropy })
 	return len(all), total
 }

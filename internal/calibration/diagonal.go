@@ -36,6 +36,11 @@ func diagonalized(l lattice, terms []exact.Term, local []string, numbers []exact
 		}
 		a.Local = append(a.Local, b.Expect(ground.Vector, t))
 	}
+	if first, second, norm := l.far(); norm > 0 {
+		for _, j := range l.farSites() {
+			a.Far = append(a.Far, b.Expect(ground.Vector, exact.T(1, first, l.at(0, l.origin()), second, j)))
+		}
+	}
 	a.Entropies, err = b.Entropies(ground.Vector)
 	return a, err
 }

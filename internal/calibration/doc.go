@@ -9,6 +9,6 @@
 // it misses: energies, values at every site, entropies at every cut. Coverage and the ratio of quoted to true are taken for each
 // model first, so that no model counts for more than another by being stopped more often or having more sites.
 //
-// The models fall into two halves by a hash of their names. The constants of the estimates (dmrg/estimate.go, internal/errorbar) are set on the
-// one that [Model.Tunes]; the figures that count are those of the other.
+// The models fall into halves by a hash of their names ([Model.Half]). The constants of the estimates (dmrg/estimate.go, internal/errorbar) are set on the
+// tuning half; the figures that count are those of the test half, and of the models held back until the constants stood.
 package calibration

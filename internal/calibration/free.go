@@ -51,6 +51,11 @@ func gaussian(q *exact.Quadratic, particles int, l lattice, pairs bool) (Answer,
 			a.Local = append(a.Local, g.TwoPoint("n", i, "n", i+l.legs))
 		}
 	}
+	if l.site.Kind == exact.KindFermion {
+		for _, j := range l.farSites() {
+			a.Far = append(a.Far, g.TwoPoint("c^+", l.at(0, l.origin()), "c", j))
+		}
+	}
 	a.Entropies, err = blockEntropies(g, n)
 	return a, err
 }

@@ -8,13 +8,13 @@ import (
 	"github.com/stretchr/testify/require"
 )
 
-// TestAllBars judges the whole test half. What is wished for is 0.95 and 10 for all three.
+// TestAllBars judges all models that do not tune. What is asked for is 0.95 and 10; results.md says how near that is.
 func TestAllBars(t *testing.T) {
-	total := measured(t, func(m *Model) bool { return !m.Tunes() }, 25)
-	require.GreaterOrEqual(t, total.Energy.Covered, 0.95)
-	require.LessOrEqual(t, total.Energy.Ratio, 15.0)
-	require.GreaterOrEqual(t, total.Entropy.Covered, 0.9)
-	require.LessOrEqual(t, total.Entropy.Ratio, 15.0)
-	require.GreaterOrEqual(t, total.Local.Covered, 0.95)
-	require.LessOrEqual(t, total.Local.Ratio, 90.0)
+	total := measured(t, func(m *Model) bool { return m.Half() != Tuning }, 50)
+	for _, s := range []Score{total.Energy, total.Local, total.Entropy} {
+		require.GreaterOrEqual(t, s.Covered, 0.93)
+		require.LessOrEqual(t, s.Ratio, 13.0)
+	}
+	require.GreaterOrEqual(t, total.Far.Covered, 0.93)
+	require.LessOrEqual(t, total.Far.Ratio, 25.0)
 }

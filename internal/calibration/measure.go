@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"slices"
 	"strings"
 
 	"rundle/dmrg"
@@ -29,15 +30,16 @@ type Case struct {
 	Earlier   errorbar.Quality // at the settled bond dimension before, as far as it counts
 	Energy    Bar
 	Local     []Bar // by site
+	Far       []Bar // by distance
 	Entropy   []Bar // by cut
 }
 
 // Record is a model with all its searches.
 type Record struct {
-	Name, Source string
-	Hard, Tunes  bool
-	Size         float64 // of the energy
-	Cases        []Case
+	Name, Source, Half string
+	Hard               bool
+	Size               float64 // of the energy
+	Cases              []Case
 }
 
 // Precisions are the wishes that a model is searched for, as far as its Finest; the caps are met at the last.
@@ -48,7 +50,7 @@ const cappedAt = 1e-9
 
 // Measure searches a model at all its stops, on one thread.
 func (m *Model) Measure(ctx context.Context) (Record, error) {
-	r := Record{Name: m.Name, Source: m.Source, Hard: m.Hard, Tunes: m.Tunes()}
+	r := Record{Name: m.Name, Source: m.Source, Half: m.Half(), Hard: m.Hard}
 	want, err := m.Answer()
 	if err != nil {
 		return r, err
@@ -85,12 +87,20 @@ type moment struct {
 	weight    float64
 	energy    float64
 	local     []complex128
-	entropies []float64
+	far       []complex128
+	entropies []complex128
 }
 
 func (m *Model) look(s *mps.State, sweep int, weight, energy float64) (moment, error) {
-	local, err := locals(s, m.Local)
-	return moment{sweep, weight, energy, local, entanglement.Cuts(s).Entropy}, err
+	now := moment{sweep: sweep, weight: weight, energy: energy}
+	for _, e := range entanglement.Cuts(s).Entropy {
+		now.entropies = append(now.entropies, complex(e, 0))
+	}
+	var err error
+	if now.local, err = locals(s, m.Local); err == nil && len(m.Local) > 0 {
+		now.far, err = correlations(s, m.lattice)
+	}
+	return now, err
 }
 
 // search runs one case.
@@ -124,10 +134,11 @@ func (m *Model) search(ctx context.Context, h *ladder.Hamiltonian, want Answer, 
 	}
 	scale := m.largest()
 	c.Quality = qualityOf(r, scale)
+	c.Quality.Sites = m.lattice.sites()
 	if n := len(settled); n > 0 {
 		c.Earlier = errorbar.Quality{Weight: settled[n-1].weight, Energy: (settled[n-1].energy - r.EnergyLimit + r.EnergyError) / scale}
 	}
-	c.compare(want, now, settled, c.Quality)
+	c.compare(m, want, now, settled, c.Quality)
 	return c, nil
 }
 
@@ -144,58 +155,57 @@ func qualityOf(r *dmrg.Result, scale float64) errorbar.Quality {
 	return errorbar.Quality{Weight: r.DiscardedWeight, Energy: (r.EnergyError + r.Energy - r.EnergyLimit) / scale, Residual: r.Sweeps[len(r.Sweeps)-1].Residual / scale, Gap: r.Gap / scale}
 }
 
-// compare quotes the errors of local values and entropies and finds the true ones.
-func (c *Case) compare(want Answer, now moment, settled []moment, q errorbar.Quality) {
-	entropies := make([]complex128, len(now.entropies))
-	for i, s := range now.entropies {
-		entropies[i] = complex(s, 0)
-	}
-	var before *moment
-	var earlier []complex128
+// compare quotes the errors of values, correlations and entropies, and finds the true ones.
+func (c *Case) compare(m *Model, want Answer, now moment, settled []moment, q errorbar.Quality) {
+	var before moment
 	if n := len(settled); n > 0 {
-		before = &settled[n-1]
-		for _, s := range before.entropies {
-			earlier = append(earlier, complex(s, 0))
-		}
+		before = settled[n-1]
 	}
-	norms := func(n int) []float64 {
-		out := make([]float64, n)
-		for i := range out {
-			out[i] = 1
+	bars := func(k errorbar.Kind, norm float64, want, now, earlier []complex128) []Bar {
+		if want == nil {
+			return nil
+		}
+		norms := slices.Repeat([]float64{norm}, len(now))
+		quoted := errorbar.Lone(norms, q)
+		if len(settled) > 0 {
+			quoted = k.Spread(now, earlier, norms, q, before.weight)
+		}
+		var out []Bar
+		for i := range want {
+			if cmplx.IsNaN(want[i]) {
+				continue
+			}
+			b := Bar{Quoted: quoted[i], True: cmplx.Abs(now[i] - want[i])}
+			if len(settled) > 0 {
+				b.Moved = cmplx.Abs(now[i] - earlier[i])
+			}
+			out = append(out, b)
 		}
 		return out
 	}
-	bars := func(k errorbar.Kind, now, earlier []complex128) []float64 {
-		if before == nil {
-			return errorbar.Lone(norms(len(now)), q)
-		}
-		return k.Spread(now, earlier, norms(len(now)), q, before.weight)
+	var entropies []complex128
+	for _, e := range want.Entropies {
+		entropies = append(entropies, complex(e, 0))
 	}
-	if want.Local != nil {
-		var values []complex128
-		if before != nil {
-			values = before.local
-		}
-		for i, quoted := range bars(errorbar.Values, now.local, values) {
-			b := Bar{Quoted: quoted, True: cmplx.Abs(now.local[i] - want.Local[i])}
-			if before != nil {
-				b.Moved = cmplx.Abs(now.local[i] - values[i])
-			}
-			c.Local = append(c.Local, b)
-		}
+	_, _, norm := m.lattice.far()
+	c.Local = bars(errorbar.Values, 1, want.Local, now.local, before.local)
+	c.Far = bars(errorbar.Correlations, norm, want.Far, now.far, before.far)
+	c.Entropy = bars(errorbar.Entropies, 1, entropies, now.entropies, before.entropies)
+}
+
+// correlations measures those of lattice.far; none gives nil.
+func correlations(s *mps.State, l lattice) ([]complex128, error) {
+	first, second, norm := l.far()
+	if norm == 0 {
+		return nil, nil
 	}
-	if want.Entropies != nil {
-		for i, quoted := range bars(errorbar.Entropies, entropies, earlier) {
-			if math.IsNaN(want.Entropies[i]) {
-				continue
-			}
-			b := Bar{Quoted: quoted, True: math.Abs(now.entropies[i] - want.Entropies[i])}
-			if before != nil {
-				b.Moved = math.Abs(now.entropies[i] - before.entropies[i])
-			}
-			c.Entropy = append(c.Entropy, b)
-		}
+	leg := legNames[:1]
+	p, err := observables.AllPairs(context.Background(), s, ladder.Term{Formula: fmt.Sprintf("%s[%s,%d]", first, leg, l.origin())},
+		ladder.Term{Formula: fmt.Sprintf("%s[%s,j]", second, leg)})
+	if err != nil {
+		return nil, err
 	}
+	return p.Values[0][l.origin()+2:], nil
 }
 
 // locals measures a product of operators on every site, or on every pair of neighbours along a leg by the first of them; none gives nil.

@@ -21,6 +21,8 @@ type Model struct {
 	Finest float64  // smallest wish that is searched for; finer ones cost too much here
 	Caps   []int    // bond dimensions at which searches are stopped
 
+	HeldBack bool // of neither half, see Half
+
 	lattice lattice
 	terms   []exact.Term // with their adjoints
 	answer  func(*Model) (Answer, error)
@@ -30,15 +32,30 @@ type Model struct {
 type Answer struct {
 	Energy    float64
 	Local     []complex128 // by site; nil: not known, or not unique
+	Far       []complex128 // correlations of Model.far; nil: the same
 	Entropies []float64    // by cut; nil: the same
 	Loose     float64      // error of the answer itself, for those from a tenfold bond
 }
 
-// Tunes tells whether the model is of the half that sets constants: an even hash (FNV-1a, 32 bits) of its name.
-func (m *Model) Tunes() bool {
+// The parts of the set.
+const (
+	Tuning   = "tuning"    // sets constants
+	Test     = "test"      // judges them
+	HeldBack = "held back" // judges them, and was written after they were set
+)
+
+// Half is the part of the set that the model belongs to. A hash of the name (FNV-1a, 32 bits) parts the halves: an even one tunes.
+func (m *Model) Half() string {
 	h := fnv.New32a()
 	h.Write([]byte(m.Name)) // never fails
-	return h.Sum32()%2 == 0
+	switch {
+	case m.HeldBack:
+		return HeldBack
+	case h.Sum32()%2 == 0:
+		return Tuning
+	default:
+		return Test
+	}
 }
 
 // Answer works out the ground state.
@@ -114,4 +131,31 @@ func ladderSite(s exact.Site) ladder.Site {
 	default:
 		return ladder.Clock(s.Param)
 	}
+}
+
+// far are the operators of a long correlation with a bound on their norm: the first on the site origin, the second on all sites of the same leg from the rung beyond the next on. There
+// are none for electrons and clocks.
+func (l lattice) far() (first, second string, norm float64) {
+	switch l.site.Kind {
+	case exact.KindFermion:
+		return "c^+", "c", 1
+	case exact.KindBoson:
+		return "b^+", "b", float64(l.site.Param)
+	case exact.KindSpin:
+		return "S^+", "S^-", float64((l.site.Param + 1) * (l.site.Param + 1) / 4)
+	default:
+		return "", "", 0
+	}
+}
+
+// origin is a rung near an end.
+func (l lattice) origin() int { return l.rungs / 5 }
+
+// farSites lists the second sites.
+func (l lattice) farSites() []int {
+	var out []int
+	for j := l.origin() + 2; j < l.rungs; j++ {
+		out = append(out, l.at(0, j))
+	}
+	return out
 }

@@ -28,7 +28,9 @@ func searched(m *Model) (Answer, error) {
 		return Answer{}, err
 	}
 	a := Answer{Energy: r.EnergyLimit, Loose: r.EnergyError, Entropies: entanglement.Cuts(r.State).Entropy}
-	a.Local, err = locals(r.State, m.Local)
+	if a.Local, err = locals(r.State, m.Local); err == nil {
+		a.Far, err = correlations(r.State, m.lattice)
+	}
 	return a, err
 }
 
@@ -55,7 +57,7 @@ func searchedModels() []Model {
 // Models lists the whole set.
 func Models() []Model {
 	var out []Model
-	for _, list := range [][]Model{freeModels(), closedModels(), betheModels(), spinModels(), diagonalizedModels(), searchedModels()} {
+	for _, list := range [][]Model{freeModels(), closedModels(), betheModels(), spinModels(), diagonalizedModels(), searchedModels(), heldBackModels()} {
 		out = append(out, list...)
 	}
 	for i := range out {

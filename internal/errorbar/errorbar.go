@@ -5,28 +5,37 @@ import (
 	"math/cmplx"
 )
 
-// Figures of the error bars, set on the tuning half of internal/calibration; the share of the residual in values is the larger one that correlations of
-// short free chains ask for (TestFreeFermions of internal/solve).
+// Figures of the error bars, set on the tuning half of internal/calibration.
 const (
-	leastRatio  = 0.03 // bounds on the ratio of the square roots of two discarded weights
+	leastRatio  = 0.06 // bounds on the ratio of the square roots of two discarded weights
 	mostRatio   = 0.8  //
 	leastSpread = 0.6  // of the root mean square of an observation's changes
+	truncates   = 3    // residual of truncation, in roots of the discarded weight
 	rounding    = 1e-13
 )
 
 // Kind is what the bars are for.
-type Kind struct{ excess, residual float64 }
+type Kind struct {
+	excess   float64 // part of the excess of energy over the gap
+	dilution float64 // the power of the number of sites that divides it
+	residual float64 // part of the residual over the gap
+	root     float64 // part of the root of the discarded weight
+}
 
 // The kinds. A truncated state is the exact one but for a part of norm² e/g at most, where it lies e above it and the next level lies g above
-// (Eckart 1930). That part is spread over the whole ladder and mostly orthogonal to what local operators reach, so that a local value sees a
-// share of it; an entropy sees it several times, by its logarithm. What the eigensolver left, of norm r/g, counts once.
+// (Eckart 1930). That part is spread over the whole ladder, though not evenly where the ladder is not, so that a local value sees a share of it; an
+// entropy sees it several times, by its logarithm. What a cut of the bond drops is orthogonal to what it keeps on both sides of
+// the cut: to first order no operator on one side sees it, but one that reaches over the cut does, and a correlation over many cuts sees them all. What the
+// eigensolver left, of norm r/g, counts once, as far as it is more than what truncating leaves at every visit: see left.
 var (
-	Values    = Kind{excess: 0.2, residual: 0.12}
-	Entropies = Kind{excess: 4, residual: 0.005}
+	Values       = Kind{excess: 1.6, dilution: 2. / 3, residual: 0.05} // of operators that reach no further than the next rung
+	Correlations = Kind{excess: 0.2, residual: 0.05, root: 0.4}        // of operators that reach further
+	Entropies    = Kind{excess: 6, residual: 0.1}
 )
 
 // Quality is what a search knows of the state it found; energies are in units of the largest coupling.
 type Quality struct {
+	Sites    int
 	Weight   float64 // discarded weight
 	Residual float64 // norm that the eigensolver left
 	Energy   float64 // by which the energy may lie above the exact one
@@ -39,7 +48,17 @@ func (k Kind) floor(q Quality) float64 {
 	if q.Gap <= 0 {
 		gap = 1
 	}
-	return k.excess*min(1, max(0, q.Energy)/gap) + k.residual*q.Residual/gap + rounding
+	share := k.excess / math.Pow(float64(max(1, q.Sites)), k.dilution)
+	return share*min(1, max(0, q.Energy)/gap) + k.residual*q.left()/gap + k.root*math.Sqrt(q.Weight) + rounding
+}
+
+// left is the residual without that of truncation. What one bond drops the next one finds missing: residuals of about
+// the root of the weight come anew in every sweep, and tell nothing of an eigensolver that stopped early.
+func (q Quality) left() float64 {
+	if q.Residual <= 0 {
+		return 0
+	}
+	return q.Residual * q.Residual / math.Hypot(q.Residual, truncates*math.Sqrt(q.Weight))
 }
 
 // Spread returns the errors of an observation, given its values now and at the settled bond dimension before, whose discarded weight was

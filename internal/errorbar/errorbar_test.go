@@ -51,6 +51,33 @@ func TestFloor(t *testing.T) {
 	}
 }
 
+// TestDilution: a value sees the less of the excess of energy the more sites share it.
+func TestDilution(t *testing.T) {
+	now := []complex128{1}
+	bar := func(sites int) float64 {
+		return Values.Spread(now, now, []float64{1}, Quality{Sites: sites, Energy: 1e-3}, 0)[0]
+	}
+	assert.InEpsilon(t, 1e-3*Values.excess, bar(1), 1e-6)
+	assert.InEpsilon(t, bar(1)/4, bar(8), 1e-6)
+	assert.Equal(t, bar(1), bar(0))
+}
+
+// TestLeft: a residual counts as far as truncation does not explain it.
+func TestLeft(t *testing.T) {
+	assert.Zero(t, Quality{Weight: 1e-8}.left())
+	assert.InEpsilon(t, 1e-5, Quality{Residual: 1e-5}.left(), 1e-12)
+	assert.InEpsilon(t, 1e-5, Quality{Residual: 1e-5, Weight: 1e-16}.left(), 1e-5)
+	assert.Less(t, Quality{Residual: 1e-5, Weight: 1e-6}.left(), 1e-7)
+}
+
+// TestReach: to first order truncation is seen by what reaches over the cut.
+func TestReach(t *testing.T) {
+	now, q := []complex128{1}, Quality{Weight: 1e-8}
+	far := Correlations.Spread(now, now, []float64{2}, q, 1e-8)[0]
+	assert.InEpsilon(t, 2*(Correlations.root*1e-4+rounding), far, 1e-9)
+	assert.InDelta(t, 0, Values.Spread(now, now, []float64{2}, q, 1e-8)[0], 3*rounding)
+}
+
 func TestLone(t *testing.T) {
 	norms := []float64{1, 3}
 	bars := Lone(norms, Quality{Weight: 1e-8, Energy: 1e-6, Residual: 1e-5})

@@ -114,11 +114,12 @@ type Entanglement struct {
 
 // A Cut lies after a site, counting from 0.
 type Cut struct {
-	AfterSite int     `json:"after_site"`
-	RungEdge  bool    `json:"rung_edge"` // no rung is cut through
-	Entropy   float64 `json:"entropy"`   // nats
-	Renyi2    float64 `json:"renyi2"`
-	Spectrum  []Level `json:"spectrum"`
+	AfterSite    int     `json:"after_site"`
+	RungEdge     bool    `json:"rung_edge"` // no rung is cut through
+	Entropy      float64 `json:"entropy"`   // nats
+	EntropyError float64 `json:"entropy_error"`
+	Renyi2       float64 `json:"renyi2"`
+	Spectrum     []Level `json:"spectrum"`
 }
 
 // A Level of the entanglement spectrum: xi = -ln(lambda^2), with the charges

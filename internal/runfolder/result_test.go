@@ -34,7 +34,7 @@ func sample() *Result {
 				"total":   {{Value: Number(4)}},
 			},
 			Entanglement: &Entanglement{Cuts: []Cut{{
-				AfterSite: 1, RungEdge: true, Entropy: 0.7, Renyi2: 0.6,
+				AfterSite: 1, RungEdge: true, Entropy: 0.7, EntropyError: 1e-6, Renyi2: 0.6,
 				Spectrum: []Level{{Xi: 0.2, Charge: Numbers{"N": 2}}},
 			}}},
 		}},

@@ -179,10 +179,10 @@ func (r *run) levels(ctx context.Context, a *ascent, found *dmrg.Spectrum) (*run
 		gap, gapError := l.Gap, l.GapError
 		s.Gap, s.GapError = &gap, &gapError
 		before := a.before[l.Result]
-		if s.Observations, err = r.observations(ctx, l.Result, before.state, before.discarded, s.EnergyError); err != nil {
+		if err := r.observations(ctx, &s, l.Result, before.state, before.discarded); err != nil {
 			return nil, err
 		}
-		if err := r.finish(ctx, &s, l.Result); err != nil {
+		if err := judgeCutoff(ctx, &s, l.Result.State, r.precision()); err != nil {
 			return nil, err
 		}
 		result.States = append(result.States, s)

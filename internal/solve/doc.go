@@ -33,7 +33,8 @@
 // # Error bars of observations
 //
 // An expectation value is judged by how it changed since the bond dimension settled before, by how far the energy may lie above the exact one
-// and by what the eigensolver left, the last two over the gap that the search saw; see internal/errorbar. Where there is no second bond dimension, the error
+// and by what the eigensolver left, the last two over the gap that the search saw; one that reaches further than the next rung also by the root of the
+// discarded weight. Entropies are judged likewise; see internal/errorbar. Where there is no second bond dimension, the error
 // is 2 |A| (sqrt(w) + sqrt(e/J) + r/J) with |A| a bound on the norm of the formula, w the discarded weight, e the error of the energy, r the residual
 // and J the largest coupling: a state that lies e above the ground state, which is alone below a gap of J, differs from it by sqrt(e/J) at
 // most (Eckart 1930).

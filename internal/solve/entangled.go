@@ -1,6 +1,8 @@
 package solve
 
 import (
+	"slices"
+
 	"rundle/entanglement"
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
@@ -30,4 +32,22 @@ func entangled(s *mps.State, list []modelfile.Observation) (*runfolder.Entanglem
 		e.Cuts[b] = c
 	}
 	return e, nil
+}
+
+func entropiesOf(e *runfolder.Entanglement) []complex128 {
+	var out []complex128
+	for _, c := range e.Cuts {
+		out = append(out, complex(c.Entropy, 0))
+	}
+	return out
+}
+
+// ones are the sizes against which entropies err.
+func ones(n int) []float64 { return slices.Repeat([]float64{1}, n) }
+
+// quote puts in the errors of the entropies.
+func quote(e *runfolder.Entanglement, bars []float64) {
+	for i := range e.Cuts {
+		e.Cuts[i].EntropyError = bars[i]
+	}
 }

@@ -18,6 +18,7 @@ type series struct {
 	at        []runfolder.At
 	values    []complex128
 	norms     []float64 // bounds on the norms of the operators
+	far       []bool    // whether they reach further than the next rung
 }
 
 // measure takes all observations of a state but the entanglement, in their order.
@@ -48,8 +49,12 @@ func measureValues(ctx context.Context, s *mps.State, o modelfile.Observation) (
 		return series{}, err
 	}
 	one := series{name: o.Name, hermitian: f.Imag == nil, values: make([]complex128, len(f.Values))}
-	if one.norms, err = normsOf(s, o.Term); err != nil {
+	places, err := placesOf(s, o.Term)
+	if err != nil {
 		return one, err
+	}
+	for _, p := range places {
+		one.norms, one.far = append(one.norms, p.norm), append(one.far, p.far())
 	}
 	for i, v := range f.Values {
 		one.at = append(one.at, placeOf(f.At[i], ""))
@@ -73,11 +78,11 @@ func measureCorrelations(ctx context.Context, s *mps.State, o modelfile.Observat
 		values = p.Connected()
 	}
 	one := series{name: o.Name, hermitian: p.Hermitian}
-	first, err := normsOf(s, o.Term)
+	first, err := placesOf(s, o.Term)
 	if err != nil {
 		return one, err
 	}
-	second, err := normsOf(s, o.Second)
+	second, err := placesOf(s, o.Second)
 	if err != nil {
 		return one, err
 	}
@@ -87,25 +92,49 @@ func measureCorrelations(ctx context.Context, s *mps.State, o modelfile.Observat
 			for name, value := range placeOf(p.AtSecond[y], "'") {
 				at[name] = value
 			}
-			one.at, one.values, one.norms = append(one.at, at), append(one.values, v), append(one.norms, first[x]*second[y])
+			both := first[x].with(second[y])
+			one.at, one.values, one.norms, one.far = append(one.at, at), append(one.values, v), append(one.norms, both.norm), append(one.far, both.far())
 		}
 	}
 	return one, nil
 }
 
-// normsOf bounds the norm of a formula at each of its places.
-func normsOf(s *mps.State, t ladder.Term) ([]float64, error) {
-	places, err := s.Scope().Places(t)
+// place is an operator at one of its places: a bound on its norm, and the rungs that it reaches over.
+type place struct {
+	norm        float64
+	first, last int
+}
+
+// far is whether it reaches further than the next rung.
+func (p place) far() bool { return p.last > p.first+1 }
+
+// with is the product of two operators.
+func (p place) with(q place) place {
+	return place{p.norm * q.norm, min(p.first, q.first), max(p.last, q.last)}
+}
+
+// placesOf describes a formula at each of its places.
+func placesOf(s *mps.State, t ladder.Term) ([]place, error) {
+	all, err := s.Scope().Places(t)
 	if err != nil {
 		return nil, err
 	}
-	norms := make([]float64, len(places))
-	for i, p := range places {
-		if norms[i], err = normBound(p.Poly, s.Frames()); err != nil {
+	places := make([]place, len(all))
+	for i, p := range all {
+		norm, err := normBound(p.Poly, s.Frames())
+		if err != nil {
 			return nil, err
 		}
+		places[i] = place{norm: norm, first: p.Poly.Ladder().Rungs(), last: -1}
+		for t := range p.Poly.NumTerms() {
+			_, factors := p.Poly.Term(t)
+			for _, f := range factors {
+				_, rung, _ := p.Poly.Ladder().SiteAt(int(f.Site))
+				places[i].first, places[i].last = min(places[i].first, rung), max(places[i].last, rung)
+			}
+		}
 	}
-	return norms, nil
+	return places, nil
 }
 
 // placeOf turns the indices of a place into those of a result.

@@ -75,12 +75,9 @@ func reread(ctx context.Context, s *runfolder.State, psi *mps.State, m *modelfil
 		}
 		return refused(fmt.Errorf("%s: %w", m.File, err))
 	}
-	q := errorbar.Quality{Weight: s.DiscardedWeight, Energy: s.EnergyError / largestCoefficient(m.Hamiltonian.Poly)}
-	bars := make([][]float64, len(all))
-	for i := range all {
-		bars[i] = errorbar.Lone(all[i].norms, q)
+	if s.Entanglement, err = entangled(psi, m.Observe); err != nil {
+		return err
 	}
-	s.Observations = observations(all, bars)
-	s.Entanglement, err = entangled(psi, m.Observe)
-	return err
+	lone(s, all, errorbar.Quality{Weight: s.DiscardedWeight, Energy: s.EnergyError / largestCoefficient(m.Hamiltonian.Poly)})
+	return nil
 }

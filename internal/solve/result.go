@@ -5,6 +5,7 @@ import (
 	"math"
 
 	"rundle/dmrg"
+	"rundle/entanglement"
 	"rundle/internal/errorbar"
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
@@ -51,10 +52,10 @@ func (r *run) state(ctx context.Context, w *watch, found *dmrg.Result) (runfolde
 	if err := ctx.Err(); err != nil {
 		return s, err
 	}
-	if s.Observations, err = r.observe(ctx, w, found, s.EnergyError); err != nil {
+	if err := r.observe(ctx, w, &s, found); err != nil {
 		return s, err
 	}
-	return s, r.finish(ctx, &s, found)
+	return s, judgeCutoff(ctx, &s, found.State, r.precision())
 }
 
 // bare describes a state with what the search knows of it.
@@ -79,55 +80,82 @@ func (r *run) bare(w *watch, found *dmrg.Result) (runfolder.State, error) {
 	return s, err
 }
 
-// finish adds entanglement and the judgement of the boson cutoff.
-func (r *run) finish(ctx context.Context, s *runfolder.State, found *dmrg.Result) (err error) {
-	if s.Entanglement, err = entangled(found.State, r.model.Observe); err != nil {
-		return err
-	}
-	return judgeCutoff(ctx, s, found.State, r.precision())
-}
-
 // observe measures the state found and, for the error bars, the one at the settled bond dimension before it.
-func (r *run) observe(ctx context.Context, w *watch, found *dmrg.Result, energyError float64) (map[string][]runfolder.Observation, error) {
+func (r *run) observe(ctx context.Context, w *watch, s *runfolder.State, found *dmrg.Result) error {
 	back := 0
 	if w.check.SettledAt == w.check.Sweeps {
 		back = 1 // the state found is the last settled one
 	}
 	before, mark, err := w.check.earlier(back)
 	if err != nil {
-		return nil, err
+		return err
 	}
-	return r.observations(ctx, found, before, mark.Discarded, energyError)
+	return r.observations(ctx, s, found, before, mark.Discarded)
 }
 
-// observations measures a state and, for the error bars, the one at the settled bond dimension before it, where there is one, that discarded so much.
-func (r *run) observations(ctx context.Context, found *dmrg.Result, before *mps.State, discarded, energyError float64) (map[string][]runfolder.Observation, error) {
+// observations measures observables and entanglement of a state and, for the error bars, of the one at the settled bond dimension before it, where there is one, that
+// discarded so much.
+func (r *run) observations(ctx context.Context, s *runfolder.State, found *dmrg.Result, before *mps.State, discarded float64) error {
 	now, err := measure(ctx, found.State, r.model.Observe)
 	if err != nil {
-		return nil, err
+		return err
 	}
-	scale := largestCoefficient(r.model.Hamiltonian.Poly)
-	q := errorbar.Quality{Weight: found.DiscardedWeight, Energy: (energyError + max(0, found.Energy-found.EnergyLimit)) / scale, Gap: found.Gap / scale}
-	if n := len(found.Sweeps); n > 0 {
-		q.Residual = found.Sweeps[n-1].Residual / scale
+	if s.Entanglement, err = entangled(found.State, r.model.Observe); err != nil {
+		return err
 	}
-	bars := make([][]float64, len(now))
+	q := r.quality(found, s.EnergyError)
 	if before == nil {
-		for i := range now {
-			bars[i] = errorbar.Lone(now[i].norms, q)
-		}
-		return observations(now, bars), nil
+		lone(s, now, q)
+		return nil
 	}
 	// Frames from a file know no ladder: those of the state found spare them learning it at every place.
 	if before, err = rebound(before, found.State.Frames(), r.model.Scope); err != nil {
-		return nil, err
+		return err
 	}
 	earlier, err := measure(ctx, before, r.model.Observe)
 	if err != nil {
-		return nil, err
+		return err
 	}
+	bars := make([][]float64, len(now))
 	for i := range now {
-		bars[i] = errorbar.Values.Spread(now[i].values, earlier[i].values, now[i].norms, q, discarded)
+		bars[i] = now[i].spread(&earlier[i], q, discarded)
 	}
-	return observations(now, bars), nil
+	s.Observations = observations(now, bars)
+	var past []complex128
+	for _, e := range entanglement.Cuts(before).Entropy {
+		past = append(past, complex(e, 0))
+	}
+	quote(s.Entanglement, errorbar.Entropies.Spread(entropiesOf(s.Entanglement), past, ones(len(past)), q, discarded))
+	return nil
+}
+
+// quality is what the search knows of the state that it found, in units of the largest coupling.
+func (r *run) quality(found *dmrg.Result, energyError float64) errorbar.Quality {
+	scale := largestCoefficient(r.model.Hamiltonian.Poly)
+	q := errorbar.Quality{Sites: r.model.Ladder.Sites(), Weight: found.DiscardedWeight, Energy: (energyError + max(0, found.Energy-found.EnergyLimit)) / scale, Gap: found.Gap / scale}
+	if n := len(found.Sweeps); n > 0 {
+		q.Residual = found.Sweeps[n-1].Residual / scale
+	}
+	return q
+}
+
+// lone quotes the errors of a state with nothing to compare it to.
+func lone(s *runfolder.State, now []series, q errorbar.Quality) {
+	bars := make([][]float64, len(now))
+	for i := range now {
+		bars[i] = errorbar.Lone(now[i].norms, q)
+	}
+	s.Observations = observations(now, bars)
+	quote(s.Entanglement, errorbar.Lone(ones(len(s.Entanglement.Cuts)), q))
+}
+
+// spread quotes the errors of a series by an earlier one.
+func (s *series) spread(earlier *series, q errorbar.Quality, discarded float64) []float64 {
+	bars := errorbar.Values.Spread(s.values, earlier.values, s.norms, q, discarded)
+	for i, bar := range errorbar.Correlations.Spread(s.values, earlier.values, s.norms, q, discarded) {
+		if s.far[i] {
+			bars[i] = bar
+		}
+	}
+	return bars
 }

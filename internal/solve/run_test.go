@@ -14,6 +14,7 @@ import (
 	"github.com/stretchr/testify/require"
 
 	"rundle/dmrg"
+	"rundle/internal/exact"
 	"rundle/internal/modelfile"
 	"rundle/internal/runfolder"
 )
@@ -112,7 +113,9 @@ func TestFreeFermions(t *testing.T) {
 			assert.Equal(t, runfolder.Real, r.Model.Arithmetic)
 			assert.Equal(t, c.l, r.Model.Sites)
 			assert.Len(t, r.Model.MPOBonds, c.l+1)
-			assert.Len(t, s.Entanglement.Cuts, c.l-1)
+			require.Len(t, s.Entanglement.Cuts, c.l-1)
+			held := entropiesHold(t, c.l, c.n, s.Entanglement)
+			assert.GreaterOrEqual(t, held, 0.8, "part of the entropies whose error bar holds")
 
 			check := func(o runfolder.Observation, want float64) {
 				all++
@@ -154,6 +157,27 @@ func TestFreeFermions(t *testing.T) {
 	assert.GreaterOrEqual(t, float64(covered), 0.95*float64(all), "of %d error bars %d cover the exact value", all, covered)
 	slices.Sort(ratios)
 	t.Logf("%d of %d error bars cover the exact value; the median error quoted is %.0f times the true one", covered, all, ratios[all/2])
+}
+
+// entropiesHold is the part of the cuts whose entropy is as near the exact one as it says, and says so to better than a per cent.
+func entropiesHold(t *testing.T, l, n int, e *runfolder.Entanglement) float64 {
+	q := exact.NewQuadratic(l)
+	for j := range l - 1 {
+		q.Hop(j+1, j, -1)
+	}
+	g, err := q.Filled(n)
+	require.NoError(t, err)
+	held := 0
+	var modes []int
+	for i, cut := range e.Cuts {
+		modes = append(modes, i)
+		want, err := g.Entropy(modes)
+		require.NoError(t, err)
+		if math.Abs(cut.Entropy-want) <= cut.EntropyError && cut.EntropyError < 0.01 {
+			held++
+		}
+	}
+	return float64(held) / float64(len(e.Cuts))
 }
 
 // TestReturned: a finished run is returned as it is.

@@ -34,6 +34,8 @@ func run(ctx context.Context, args []string, w io.Writer) error {
 	detail := flag.Bool("detail", false, "a row for every model before the summary")
 	misses := flag.Bool("misses", false, "list the searches whose energy is off by more than quoted")
 	only := flag.String("only", "", "only the models whose name matches this regular `expression`")
+	markdown := flag.Bool("markdown", false, "print results.md: what is met, the summary, a row for every model")
+	half := flag.String("half", "", "only the models of this `half`: tuning, test or held back")
 	threads := flag.Int("threads", 2, "models at a time")
 	if err := flag.Parse(args); err != nil {
 		return err
@@ -47,12 +49,12 @@ func run(ctx context.Context, args []string, w io.Writer) error {
 	}
 	var models []calibration.Model
 	for _, m := range calibration.Models() {
-		if match.MatchString(m.Name) {
+		if match.MatchString(m.Name) && (*half == "" || *half == m.Half()) {
 			models = append(models, m)
 		}
 	}
 	if len(models) == 0 {
-		return fmt.Errorf("--only %q: no model of that name", *only)
+		return fmt.Errorf("--only %q, --half %q: no such model", *only, *half)
 	}
 	records, err := measure(ctx, models, *threads)
 	if err != nil {
@@ -66,13 +68,17 @@ func run(ctx context.Context, args []string, w io.Writer) error {
 		}
 		return nil
 	}
+	if *markdown {
+		page(w, records)
+		return nil
+	}
 	if *detail {
-		detailed(w, records)
+		detailed(w, records).Render()
 	}
 	if *misses {
 		missed(w, records)
 	}
-	summary(w, records)
+	summary(w, records).Render()
 	return nil
 }
 

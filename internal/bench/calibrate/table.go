@@ -10,8 +10,8 @@ import (
 	"rundle/internal/calibration"
 )
 
-// columns of the three kinds of bars.
-var columns = table.Row{"energies held", "quoted/true", "values held", "quoted/true", "entropies held", "quoted/true"}
+// columns of the kinds of bars.
+var columns = table.Row{"energies held", "quoted/true", "values held", "quoted/true", "far held", "quoted/true", "entropies held", "quoted/true"}
 
 func newTable(w io.Writer, first ...any) table.Writer {
 	t := table.NewWriter()
@@ -23,7 +23,7 @@ func newTable(w io.Writer, first ...any) table.Writer {
 
 func cells(s calibration.Scores) table.Row {
 	var out table.Row
-	for _, k := range []calibration.Score{s.Energy, s.Local, s.Entropy} {
+	for _, k := range []calibration.Score{s.Energy, s.Local, s.Far, s.Entropy} {
 		if k.Bars == 0 {
 			out = append(out, "", "")
 			continue
@@ -41,21 +41,18 @@ func ratio(x float64) string {
 	return fmt.Sprintf("%.3g", x)
 }
 
-// detailed prints a row for every model.
-func detailed(w io.Writer, records []calibration.Record) {
+// detailed has a row for every model.
+func detailed(w io.Writer, records []calibration.Record) table.Writer {
 	t := newTable(w, "model", "answer", "hard", "half", "searches")
 	for i := range records {
 		r := &records[i]
-		hard, half := "", "test"
+		hard := ""
 		if r.Hard {
 			hard = "hard"
 		}
-		if r.Tunes {
-			half = "tuning"
-		}
-		t.AppendRow(append(table.Row{r.Name, r.Source, hard, half, len(r.Cases)}, cells(r.Scores())...))
+		t.AppendRow(append(table.Row{r.Name, r.Source, hard, r.Half, len(r.Cases)}, cells(r.Scores())...))
 	}
-	t.Render()
+	return t
 }
 
 // missed lists the searches whose energy is off by more than quoted.
@@ -70,16 +67,19 @@ func missed(w io.Writer, records []calibration.Record) {
 	}
 }
 
-// summary prints the halves, and the hard models among them.
-func summary(w io.Writer, records []calibration.Record) {
+// summary has the halves, and the hard models among them.
+func summary(w io.Writer, records []calibration.Record) table.Writer {
 	t := newTable(w, "half", "models", "searches")
 	row := func(name string, keep func(*calibration.Record) bool) {
 		models, total := calibration.Total(records, keep)
 		t.AppendRow(append(table.Row{name, models, total.Energy.Bars}, cells(total)...))
 	}
-	row("tuning", func(r *calibration.Record) bool { return r.Tunes })
-	row("test", func(r *calibration.Record) bool { return !r.Tunes })
-	row("test, hard", func(r *calibration.Record) bool { return !r.Tunes && r.Hard })
+	tunes := func(r *calibration.Record) bool { return r.Half == calibration.Tuning }
+	for _, half := range []string{calibration.Tuning, calibration.Test, calibration.HeldBack} {
+		row(half, func(r *calibration.Record) bool { return r.Half == half })
+	}
+	row("not tuning", func(r *calibration.Record) bool { return !tunes(r) })
+	row("not tuning, hard", func(r *calibration.Record) bool { return !tunes(r) && r.Hard })
 	row("all", func(*calibration.Record) bool { return true })
-	t.Render()
+	return t
 }
