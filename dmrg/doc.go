@@ -15,7 +15,8 @@
 // the Hamiltonian reaches from it (White 2005), charge by charge, so that terms that hop far, move pairs or need a third
 // particle do not leave the search in the product state. Then clean sweeps follow, cut by singular values. A stage (one bond
 // dimension) ends when sweeping on would gain less than the wish, or much less than the truncation costs; the next has a
-// larger bond, until the error estimate is below the wanted precision and two stages agree, or a cap is met.
+// larger bond, until the error estimate is below the wanted precision and two stages agree, or a cap is met. On the way from stage to stage each bond
+// dimension gets one sweep, and the energies of these tell, by the power law through the last three, where the next stage should be.
 // Options.Schedule puts sweeps of one's own in the place of all that: also of single sites, whose bonds stay as they are or are expanded by what the
 // Hamiltonian reaches outside of both sides (Gleis, Li, von Delft 2023).
 //

@@ -60,10 +60,11 @@ type setting struct {
 	tolerance    float64 // residual of the eigenvector
 	least        float64 // gain of energy by which another Krylov vector is worth its product; 0: any
 	update       Update  // of the bonds
+	passing      bool    // on the way to a larger bond dimension: no stage counts it
 }
 
 // clean is whether a sweep measures what truncation costs: both sites of a bond are optimized, and nothing but the truncation disturbs them.
-func (s setting) clean() bool { return s.update == TwoSites && s.perturbation == 0 }
+func (s setting) clean() bool { return s.update == TwoSites && s.perturbation == 0 && !s.passing }
 
 // outcome is what one sweep reports.
 type outcome struct {

@@ -15,7 +15,9 @@ type Pass struct {
 	Update       Update  // of a bond; 0: TwoSites, a clean sweep where nothing is perturbed
 }
 
-// Update is what a sweep does at a bond.
+// Update is what a sweep does at a bond. The search chooses TwoSites by itself: an Expanding sweep of the Hubbard chain at bond dimension 460 comes to the same
+// energy (5e-10 above that of 512 states) with 10.0 Gflop instead of 12.3, four Krylov vectors each, but at 192, and for bosons of four states, saves
+// nothing, and measures no gain that an error estimate could use.
 type Update int
 
 const (

@@ -49,7 +49,7 @@ func unmarshalFields(text []byte, fields []named) error {
 
 func (s *setting) fields() []named {
 	return []named{{"bond", &s.bond}, {"weight", &s.weight}, {"perturbation", &s.perturbation}, {"noise", &s.noise}, {"vectors", &s.vectors},
-		{"tolerance", &s.tolerance}, {"least", &s.least}, {"update", &s.update}}
+		{"tolerance", &s.tolerance}, {"least", &s.least}, {"update", &s.update}, {"passing", &s.passing}}
 }
 
 func (s setting) MarshalJSON() ([]byte, error)     { return marshalFields(s.fields()) }

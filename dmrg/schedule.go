@@ -21,10 +21,11 @@ const (
 	laterPerturbation = 1e-4 // the same, on the way to a larger bond
 	checkPerturbation = 1e-6 // the same, where the stage before left the bond unfilled: to see that no sector was missed
 	perturbationDecay = 0.1
+	farOff            = 10    // gain in units of the precision, of a stage that another one follows
+	passingDrift      = 0.3   // in units of the gain, of the same
 	stateRounding     = 1e-12 // change of a tensor that is rounding
-	firstSweeps       = 3
+	firstSweeps       = 2
 	vectorsEarly      = 6 // of the first sweeps
-	vectorsOpening    = 3 // on the way to a larger bond
 	vectorsLate       = 5
 	vectorsWhole      = 16 // where nothing is truncated the middle bonds hold the whole problem
 )
@@ -41,6 +42,7 @@ type search[T dense.Scalar] struct {
 	nextPause    time.Time
 	fresh        bool    // the last sweep was done, not read in the journal
 	stagesBefore int     // settled when the waypoint to go on from was saved
+	gained       float64 // by the updates of the last half sweep
 	narrow       float64 // largest inverse gap since the bond dimension was last raised
 	stages       []settledStage
 	sweeps       []Sweep
@@ -83,9 +85,9 @@ func (s *search[T]) run() (Verdict, string, error) {
 	bond := s.journal.look("first bond", func() int {
 		return s.affordable(1, min(s.opt.Bond, max(firstBond, s.engine.psi.MaxBond())))
 	})
-	for {
-		verdict, reason, err := s.stage(bond)
-		if err != nil {
+	for forward := false; ; {
+		verdict, reason, err := s.next(&bond, forward)
+		if forward = false; err != nil {
 			if verdict, reason, err = s.ended(err); err != nil {
 				return unfinished, "", err
 			}
@@ -120,7 +122,19 @@ func (s *search[T]) run() (Verdict, string, error) {
 		if verdict, reason = s.grow(&bond, est); verdict != unfinished {
 			return verdict, reason, nil
 		}
+		forward = true
 	}
+}
+
+// next settles a bond dimension; forward: one at about the larger bond dimension given, which it sets.
+func (s *search[T]) next(bond *int, forward bool) (Verdict, string, error) {
+	if !forward {
+		return s.stage(*bond)
+	}
+	if v, r, err := s.walk(bond); v != unfinished || err != nil {
+		return v, r, err
+	}
+	return s.settle(*bond)
 }
 
 // ended makes a verdict of the cap on time; other errors pass.
@@ -167,9 +181,16 @@ func (s *search[T]) settledTwice() bool {
 // stage settles one bond dimension: sweeps with decreasing perturbation, then clean sweeps.
 func (s *search[T]) stage(bond int) (Verdict, string, error) {
 	s.narrow = 0
-	if v, r, err := s.open(bond); v != unfinished || err != nil {
-		return v, r, err
+	for _, set := range s.opening(bond) {
+		if v, r, err := s.sweep(set); v != unfinished || err != nil {
+			return v, r, err
+		}
 	}
+	return s.settle(bond)
+}
+
+// settle does clean sweeps until one more would not matter.
+func (s *search[T]) settle(bond int) (Verdict, string, error) {
 	set := s.clean(bond)
 	s.stages = append(s.stages, settledStage{bond: bond})
 	st := &s.stages[len(s.stages)-1]
@@ -196,18 +217,8 @@ func (s *search[T]) clean(bond int) setting {
 	return setting{bond: bond, weight: s.opt.weight, vectors: vectorsLate, tolerance: s.tolerance()}
 }
 
-// open does the perturbed sweeps of a stage.
-func (s *search[T]) open(bond int) (Verdict, string, error) {
-	if s.opt.Opening == Unperturbed || s.engine.psi.Len() == 1 {
-		return unfinished, "", nil
-	}
-	for _, set := range s.opening(bond) {
-		if v, r, err := s.sweep(set); v != unfinished || err != nil {
-			return v, r, err
-		}
-	}
-	return unfinished, "", nil
-}
+// share is that of a bond in an energy.
+func (s *search[T]) share(energy float64) float64 { return energy / float64(s.engine.psi.Len()) }
 
 // report tells of a settled stage.
 func (s *search[T]) report(bond int) error {
@@ -226,7 +237,11 @@ func (s *search[T]) report(bond int) error {
 }
 
 // enough ends a stage when further sweeps would gain less than the precision or rounding, or much less than the truncation costs.
+// A stage far from the wish, which a larger bond follows, is left as soon as truncation costs more than sweeping on would gain.
 func (s *search[T]) enough(st *settledStage) bool {
+	if passing := st.bond < s.opt.Bond && st.gain > farOff*s.opt.Precision; passing && st.drift() < passingDrift*st.gain {
+		return true
+	}
 	return st.drift() <= max(0.1*s.opt.Precision, 0.02*st.gain, s.rounding(st)) && s.stateSettled(st)
 }
 
@@ -265,7 +280,7 @@ func (s *search[T]) sweep(set setting) (Verdict, string, error) {
 	if err != nil {
 		return unfinished, "", err
 	}
-	s.narrow = max(s.narrow, out.narrow)
+	s.narrow, s.gained = max(s.narrow, out.narrow), out.gain
 	if n := len(s.stages); n > 0 && set.clean() {
 		st := &s.stages[n-1]
 		st.energies = append(st.energies, out.energy)
