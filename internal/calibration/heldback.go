@@ -9,7 +9,8 @@ import (
 	"rundle/mpo/ladder"
 )
 
-// heldBackModels were written after the constants of the estimates, of the same kinds as the others with other sizes, couplings, fillings and disorder.
+// heldBackModels are of the same kinds as the others with other sizes, couplings, fillings and disorder. No constant may be set by what comes out for them; once one was
+// looked at to that end, write others.
 func heldBackModels() []Model {
 	var out []Model
 	for _, list := range [][]Model{heldBackFree(), heldBackChains(), heldBackSpins(), heldBackParticles()} {

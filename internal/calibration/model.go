@@ -41,7 +41,7 @@ type Answer struct {
 const (
 	Tuning   = "tuning"    // sets constants
 	Test     = "test"      // judges them
-	HeldBack = "held back" // judges them, and was written after they were set
+	HeldBack = "held back" // judges them, and was not looked at before they stood
 )
 
 // Half is the part of the set that the model belongs to. A hash of the name (FNV-1a, 32 bits) parts the halves: an even one tunes.
