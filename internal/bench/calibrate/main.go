@@ -35,6 +35,7 @@ func run(ctx context.Context, args []string, w io.Writer) error {
 	misses := flag.Bool("misses", false, "list the searches whose energy is off by more than quoted")
 	only := flag.String("only", "", "only the models whose name matches this regular `expression`")
 	markdown := flag.Bool("markdown", false, "print results.md: what is met, the summary, a row for every model")
+	from := flag.String("from", "", "do not search, read what --json has printed into this `file`")
 	half := flag.String("half", "", "only the models of this `half`: tuning, test or held back")
 	threads := flag.Int("threads", 2, "models at a time")
 	if err := flag.Parse(args); err != nil {
@@ -56,7 +57,12 @@ func run(ctx context.Context, args []string, w io.Writer) error {
 	if len(models) == 0 {
 		return fmt.Errorf("--only %q, --half %q: no such model", *only, *half)
 	}
-	records, err := measure(ctx, models, *threads)
+	var records []calibration.Record
+	if *from != "" {
+		records, err = read(*from, models)
+	} else {
+		records, err = measure(ctx, models, *threads)
+	}
 	if err != nil {
 		return err
 	}
@@ -95,3 +101,31 @@ func measure(ctx context.Context, models []calibration.Model, threads int) ([]ca
 
 // enough is more work than the pool asks for before it takes a second worker.
 const enough = 1e12
+
+// read takes the records of the models from a file.
+func read(name string, models []calibration.Model) ([]calibration.Record, error) {
+	f, err := os.Open(name)
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
+	found := map[string]calibration.Record{}
+	for d := json.NewDecoder(f); ; {
+		var r calibration.Record
+		if err := d.Decode(&r); err == io.EOF {
+			break
+		} else if err != nil {
+			return nil, fmt.Errorf("%s: %w", name, err)
+		}
+		found[r.Name] = r
+	}
+	records := make([]calibration.Record, len(models))
+	for i, m := range models {
+		r, ok := found[m.Name]
+		if !ok {
+			return nil, fmt.Errorf("%s: no record of %q; search anew", name, m.Name)
+		}
+		records[i] = r
+	}
+	return records, nil
+}

@@ -19,6 +19,9 @@ func page(w io.Writer, records []calibration.Record) {
 	fmt.Fprint(w, "# How far the error bars can be trusted\n\n")
 	for _, half := range []string{calibration.Test, calibration.HeldBack} {
 		models, total := calibration.Total(records, func(r *calibration.Record) bool { return r.Half == half })
+		if models == 0 {
+			continue
+		}
 		fmt.Fprintf(w, "%s, %d models: %s\n\n", strings.ToUpper(half[:1])+half[1:], models, judged(total))
 	}
 	fmt.Fprintf(w, `Printed by `+"`go run ./internal/bench/calibrate --markdown`"+`, each model counted once. "Held" is the part of the bars that cover the true error, averaged over the
