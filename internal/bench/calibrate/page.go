@@ -29,7 +29,7 @@ models; "quoted/true" the median over the models of the median over a model's ba
 "tuning"; the figures of the models held back were looked at when they stood. "Values" are those of one site, or of neighbours along a leg; "far" are two-point functions from one site to all beyond
 the next rung. True errors below 1e-12 of the size count as held and leave the median.
 
-What forbids better: a scan of the constants on the tuning half holds %.0f %% of its values at a median of 7 at best, and the halves differ by more than what is left. A bar is made of what a search measures (the change since the
+What forbids better: a scan of the constants on the tuning half holds %.0f %% of its values at a median of 7.2 at best, and the halves differ by more than what is left. A bar is made of what a search measures (the change since the
 bond settled before, the excess of energy, the residual, the gap seen), and how much of these an operator feels differs from model to model: quotients go from 1 to 1e5.
 Bars are too wide where the state is exact at a small bond and where weak links make the gap look narrow; too narrow for few bosons that repel strongly, for critical pairing, and
 where a cap holds the search in a wrong state. Levels split by less than the precision (end modes of the dimerized chain, 7e-10) end in a mixture.
