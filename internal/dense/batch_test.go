@@ -196,7 +196,7 @@ func TestBatchCuts(t *testing.T) {
 			}
 			covered := make([]int8, row.m*row.n)
 			for _, p := range plan.products {
-				assert.True(t, p.M >= min(row.m, cutWidth-7) && p.N >= min(row.n, cutWidth-7), "%d×%d", p.M, p.N)
+				assert.True(t, p.M >= min(row.m, cutWidth-8) && p.N >= min(row.n, cutWidth-24), "%d×%d", p.M, p.N)
 				for i := range p.M {
 					for j := range p.N {
 						covered[p.C+i*p.LDC+j]++
