@@ -48,7 +48,7 @@ func newStarter(s *ladder.Strings) *starter {
 	b := &starter{group: s.Group, reach: suffixCharges(s), keep: make([][]int, len(s.Axes))}
 	b.closing, b.scale = diagonalTerms(s)
 	for _, a := range s.Axes {
-		b.charges = append(b.charges, axisCharges(a))
+		b.charges = append(b.charges, a.Charges())
 	}
 	// How long is each site waited for?
 	until := make([]int, len(s.Axes))
@@ -218,17 +218,6 @@ func tableDiagonals(t *ladder.OpTable) [][]complex128 {
 		}
 		if any {
 			out[i] = diag
-		}
-	}
-	return out
-}
-
-// axisCharges lists the charge of every state of an axis.
-func axisCharges(a block.Axis) []block.Charge {
-	var out []block.Charge
-	for _, s := range a.Sectors {
-		for range s.Dim {
-			out = append(out, s.Charge)
 		}
 	}
 	return out

@@ -35,7 +35,7 @@ func diagonalEnergy(s *ladder.Strings, states []int) float64 {
 func totalOf(s *ladder.Strings, states []int) block.Charge {
 	var q block.Charge
 	for i, k := range states {
-		q = s.Group.Add(q, axisCharges(s.Axes[i])[k])
+		q = s.Group.Add(q, s.Axes[i].Charges()[k])
 	}
 	return q
 }

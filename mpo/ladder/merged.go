@@ -120,7 +120,7 @@ type pairState struct {
 }
 
 func newPairBasis(g block.Group, site block.Axis) *pairBasis {
-	q := axisCharges(site)
+	q := site.Charges()
 	p := &pairBasis{}
 	for s := range q {
 		p.states = append(p.states, pairState{s, s, 0, g.Add(q[s], q[s])})
@@ -152,17 +152,6 @@ func newPairBasis(g block.Group, site block.Axis) *pairBasis {
 	}
 	p.axis = block.NewAxis(block.In, sectors...)
 	return p
-}
-
-// axisCharges lists the charge of every state of an axis.
-func axisCharges(a block.Axis) []block.Charge {
-	var out []block.Charge
-	for _, s := range a.Sectors {
-		for range s.Dim {
-			out = append(out, s.Charge)
-		}
-	}
-	return out
 }
 
 // mergeWriter writes strings on merged sites.

@@ -67,6 +67,17 @@ func NewAxis(flow Flow, sectors ...Sector) Axis {
 	return Axis{Flow: flow, Sectors: s[:n:n]}
 }
 
+// Charges lists the charge of every state.
+func (a Axis) Charges() []Charge {
+	out := make([]Charge, 0, a.Dim())
+	for _, s := range a.Sectors {
+		for range s.Dim {
+			out = append(out, s.Charge)
+		}
+	}
+	return out
+}
+
 // Dim returns the number of states.
 func (a Axis) Dim() int { return a.Offset(len(a.Sectors)) }
 
